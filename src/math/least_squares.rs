@@ -285,16 +285,16 @@ fn ending<P: Problem>(reason: &TerminationReason, watch: &Watch<'_, P>) -> Resul
 fn finish<P: Problem>(watch: Watch<'_, P>, ending: Ending, rank_tolerance: f64) -> Result<Solution, LeastSquaresError> {
     let evaluations = watch.evaluations.get() + 1;
     let refused_steps = watch.refused.get();
-    let best = watch.best.into_inner().map(|(parameters, _)| parameters);
-    // the best place may have residuals but no derivatives; then the last one that has both stands
-    let places = [best, watch.differentiable.into_inner()];
     let take_apart = |parameters: DVector<f64>| {
         let (residuals, jacobian) = watch.problem.residuals_and_jacobian(&parameters)?;
         let normal_inverse = NormalInverse::new(&jacobian, rank_tolerance)?;
         Some((parameters, residuals, jacobian, normal_inverse))
     };
+    let best = watch.best.into_inner().and_then(|(parameters, _)| take_apart(parameters));
+    // the best place may have residuals but no derivatives; then the last one that has both stands
+    let ending = if best.is_some() { ending } else { Ending::DerivativeUndefined };
     let (parameters, residuals, jacobian, normal_inverse) =
-        places.into_iter().flatten().find_map(take_apart).ok_or(LeastSquaresError::StartOutsideDomain)?;
+        best.or_else(|| watch.differentiable.into_inner().and_then(take_apart)).ok_or(LeastSquaresError::StartOutsideDomain)?;
     Ok(Solution {
         parameters,
         residuals,
