@@ -1,5 +1,12 @@
 //! In: numbers. Out: numbers. Least squares, covariance, GUM combination, robust statistics, rotation.
 //! Must never know: optics, photos, units.
-//! Start reading at `least_squares`.
+//! Start reading at [`least_squares()`].
 
+pub mod finite_difference;
+pub mod least_squares;
+pub mod normal_inverse;
 pub mod rotation;
+pub mod singular_values;
+
+pub use least_squares::{Ending, LeastSquaresError, Options, Problem, Solution, least_squares};
+pub use normal_inverse::NormalInverse;
