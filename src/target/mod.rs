@@ -1,0 +1,35 @@
+//! In: a photo of the printed dot target. Out: its dots, each with its place on the print. Also draws the print.
+//! Must never know: the pattern, the sample, the bench.
+//! Start reading at [`read`] and [`Reading`]; the print comes later.
+//!
+//! ```text
+//!   o  o  o  o  o      dots at (i, j) pitches, X to the right, Y up as printed
+//!   o  O  o  o  o      three larger ones: origin (0,0), X direction (2,0), handedness (0,1)
+//!   o  O  o  O  o
+//!   o  o  o  o  o
+//! ```
+
+mod blobs;
+mod centroid;
+mod error;
+mod grid;
+mod homography;
+mod marks;
+mod paper;
+mod reading;
+mod view;
+
+#[cfg(test)]
+mod corpus_check;
+#[cfg(test)]
+mod painter;
+
+pub use error::TargetError;
+pub use reading::{Dot, Marks, ReadOptions, Reading, read};
+
+/// Median; the values are put in order. `None` for no values.
+fn median(values: &mut [f64]) -> Option<f64> {
+    let middle = values.len() / 2;
+    let (_, at, _) = (!values.is_empty()).then(|| values.select_nth_unstable_by(middle, f64::total_cmp))?;
+    Some(*at)
+}
