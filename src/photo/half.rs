@@ -62,7 +62,7 @@ fn rows_of<T>(codes: &[T], half_row: usize, stride: usize) -> (&[T], &[T]) {
     codes[2 * half_row * stride..(2 * half_row + 2) * stride].split_at(stride)
 }
 
-fn fill_row<T: Copy + Into<u16>, const CHANNELS: usize>(mut to: [&mut [f32]; CHANNELS], (upper, lower): (&[T], &[T]), table: &[f32]) {
+fn fill_row<T: Copy + Into<u16>, const CHANNELS: usize>(to: [&mut [f32]; CHANNELS], (upper, lower): (&[T], &[T]), table: &[f32]) {
     let light = |code: T| table[usize::from(code.into()).min(table.len() - 1)];
     let pairs = upper.as_chunks::<CHANNELS>().0.as_chunks::<2>().0.iter().zip(lower.as_chunks::<CHANNELS>().0.as_chunks::<2>().0);
     for (cell, (upper, lower)) in pairs.enumerate() {
@@ -73,7 +73,38 @@ fn fill_row<T: Copy + Into<u16>, const CHANNELS: usize>(mut to: [&mut [f32]; CHA
     }
 }
 
+impl HalfPlanes {
+    /// Sum of `weights[c]` times plane c (a grey photo has one plane and ignores the weights).
+    #[must_use]
+    #[expect(clippy::cast_possible_truncation, reason = "rounding to f32 is meant")]
+    pub fn mixed(&self, weights: [f64; 3]) -> Plane {
+        let weights = weights.map(|weight| weight as f32);
+        match self.planes.as_slice() {
+            [red, green, blue] => {
+                let mut value = vec![0.0; red.value.len()];
+                value.par_chunks_mut(ROW_TASK).enumerate().for_each(|(task, to)| {
+                    for (plane, &weight) in [red, green, blue].into_iter().zip(&weights).filter(|(_, weight)| **weight != 0.0) {
+                        to.iter_mut().zip(&plane.value[task * ROW_TASK..]).for_each(|(to, from)| *to += weight * from);
+                    }
+                });
+                Plane { width: red.width, height: red.height, value }
+            }
+            [grey, ..] => grey.clone(),
+            [] => Plane { width: 0, height: 0, value: Vec::new() },
+        }
+    }
+}
+
+/// Cells that one task takes.
+const ROW_TASK: usize = 1 << 14;
+
 impl Plane {
+    /// Noise of one pixel from these cells, each the mean of `pixels_per_cell` pixels.
+    #[must_use]
+    pub fn noise(&self, pixels_per_cell: f64) -> super::Noise {
+        super::noise::of_cells(self, pixels_per_cell)
+    }
+
     /// Means of 2×2 cells; an odd last row or column is left out.
     #[must_use]
     pub fn halved(&self) -> Self {
