@@ -9,6 +9,13 @@ pub enum Note {
     /// The photo is stored with a tone curve that is only known roughly.
     ToneCurveAssumed,
     // spots
+    /// More spots than are returned.
+    SpotsLeftOut {
+        /// Number found.
+        found: usize,
+        /// Number returned, the brightest.
+        kept: usize,
+    },
     // lattice
     // target
     // bench
@@ -21,6 +28,7 @@ impl Note {
     pub fn code(&self) -> &'static str {
         match self {
             Self::ToneCurveAssumed => "tone-curve-assumed",
+            Self::SpotsLeftOut { .. } => "spots-left-out",
         }
     }
 }
@@ -30,6 +38,10 @@ impl std::fmt::Display for Note {
         match self {
             Self::ToneCurveAssumed => f.write_str(
                 "8-bit photo without a colour profile: the sRGB curve was undone; brightness is approximate, places are not affected",
+            ),
+            Self::SpotsLeftOut { found, kept } => write!(
+                f,
+                "{found} spots were found and the {kept} brightest are used; a ruled or textured screen gives many false ones: use plain card"
             ),
         }
     }
