@@ -29,8 +29,12 @@ fn numbers(line: &str) -> Vec<f64> {
 fn read(name: &str) -> Certified {
     let path = format!("{}/tests/data/nist/{name}.dat", env!("CARGO_MANIFEST_DIR"));
     let text = std::fs::read_to_string(&path).unwrap_or_else(|e| panic!("{path}: {e}"));
-    let table: Vec<Vec<f64>> =
-        text.lines().filter(|line| line.trim_start().starts_with('b') && line.contains(" = ")).map(numbers).filter(|v| v.len() == 4).collect();
+    let table: Vec<Vec<f64>> = text
+        .lines()
+        .filter(|line| line.trim_start().starts_with('b') && line.contains(" = "))
+        .map(numbers)
+        .filter(|v| v.len() == 4)
+        .collect();
     let column = |k: usize| table.iter().map(|row| row[k]).collect::<Vec<f64>>();
     let after = |label: &str| {
         let line = text.lines().find(|line| line.starts_with(label)).unwrap();
@@ -80,7 +84,8 @@ impl<const N: usize> Problem for Regression<'_, N> {
 
 /// Correct digits of the worst of several values.
 fn digits<'a>(got: impl IntoIterator<Item = f64>, want: impl IntoIterator<Item = &'a f64>) -> f64 {
-    let one = |(got, want): (f64, &f64)| if got.to_bits() == want.to_bits() { CERTIFIED_DIGITS } else { -((got - want) / want).abs().log10() };
+    let one =
+        |(got, want): (f64, &f64)| if got.to_bits() == want.to_bits() { CERTIFIED_DIGITS } else { -((got - want) / want).abs().log10() };
     got.into_iter().zip(want).map(one).fold(CERTIFIED_DIGITS, f64::min)
 }
 
