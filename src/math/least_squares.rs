@@ -38,6 +38,10 @@ pub struct Options {
     pub first_step_bound: f64,
     /// Give up after this many evaluations of the residuals per (parameter + 1).
     pub patience: usize,
+    /// After the solver has settled, full Gauss-Newton steps follow until the next one would move the fitted
+    /// values by less than this fraction of their noise, `‖J δ‖ ≤ f ‖r‖ / √(m - n)`. The solver's own tests
+    /// look at the sum of squares, which is flat at its minimum and stops half the digits early.
+    pub polish_fraction: f64,
     /// A singular value of the scaled Jacobian below this fraction of the largest marks an open direction.
     pub rank_tolerance: f64,
 }
@@ -52,6 +56,7 @@ impl Default for Options {
             gradient_tolerance: tight,
             first_step_bound: 100.0,
             patience: 200,
+            polish_fraction: 1e-9,
             rank_tolerance: 1e-12,
         }
     }
@@ -63,6 +68,7 @@ impl Options {
             ("objective_tolerance", self.objective_tolerance),
             ("step_tolerance", self.step_tolerance),
             ("gradient_tolerance", self.gradient_tolerance),
+            ("polish_fraction", self.polish_fraction),
             ("rank_tolerance", self.rank_tolerance),
         ];
         for (name, value) in not_negative {
@@ -257,7 +263,7 @@ pub fn least_squares(problem: &impl Problem, start: DVector<f64>, options: &Opti
         .with_patience(options.patience);
     let (watch, report) = engine.minimize(Watch::new(problem, start));
     let ending = ending(&report.termination, &watch)?;
-    finish(watch, ending, options.rank_tolerance)
+    finish(watch, ending, options)
 }
 
 /// Translates the engine's word; what leaves no solution becomes an error.
@@ -281,20 +287,19 @@ fn ending<P: Problem>(reason: &TerminationReason, watch: &Watch<'_, P>) -> Resul
     }
 }
 
-/// Evaluates everything once more at the best place seen.
-fn finish<P: Problem>(watch: Watch<'_, P>, ending: Ending, rank_tolerance: f64) -> Result<Solution, LeastSquaresError> {
-    let evaluations = watch.evaluations.get() + 1;
+/// Evaluates everything once more at the best place seen, and polishes it.
+fn finish<P: Problem>(watch: Watch<'_, P>, ending: Ending, options: &Options) -> Result<Solution, LeastSquaresError> {
+    let mut evaluations = watch.evaluations.get() + 1;
     let refused_steps = watch.refused.get();
-    let take_apart = |parameters: DVector<f64>| {
-        let (residuals, jacobian) = watch.problem.residuals_and_jacobian(&parameters)?;
-        let normal_inverse = NormalInverse::new(&jacobian, rank_tolerance)?;
-        Some((parameters, residuals, jacobian, normal_inverse))
-    };
-    let best = watch.best.into_inner().and_then(|(parameters, _)| take_apart(parameters));
+    let at = |parameters| Place::new(watch.problem, parameters, options.rank_tolerance);
+    let best = watch.best.into_inner().and_then(|(parameters, _)| at(parameters));
     // the best place may have residuals but no derivatives; then the last one that has both stands
     let ending = if best.is_some() { ending } else { Ending::DerivativeUndefined };
-    let (parameters, residuals, jacobian, normal_inverse) =
-        best.or_else(|| watch.differentiable.into_inner().and_then(take_apart)).ok_or(LeastSquaresError::StartOutsideDomain)?;
+    let mut place = best.or_else(|| watch.differentiable.into_inner().and_then(at)).ok_or(LeastSquaresError::StartOutsideDomain)?;
+    if ending.was_successful() {
+        evaluations += place.polish(watch.problem, options);
+    }
+    let Place { parameters, residuals, jacobian, normal_inverse } = place;
     Ok(Solution {
         parameters,
         residuals,
@@ -307,6 +312,47 @@ fn finish<P: Problem>(watch: Watch<'_, P>, ending: Ending, rank_tolerance: f64) 
         evaluations,
         refused_steps,
     })
+}
+
+/// Parameters with everything that is evaluated there.
+struct Place {
+    parameters: DVector<f64>,
+    residuals: DVector<f64>,
+    jacobian: DMatrix<f64>,
+    normal_inverse: NormalInverse,
+}
+
+impl Place {
+    fn new(problem: &impl Problem, parameters: DVector<f64>, rank_tolerance: f64) -> Option<Self> {
+        let (residuals, jacobian) = problem.residuals_and_jacobian(&parameters)?;
+        let normal_inverse = NormalInverse::new(&jacobian, rank_tolerance)?;
+        residuals.norm_squared().is_finite().then_some(Self { parameters, residuals, jacobian, normal_inverse })
+    }
+
+    /// Full Gauss-Newton steps as long as each is shorter than 0.9 of the one before; gives the evaluations used.
+    ///
+    /// The first must already be small against the noise (10 %), so that this never leaves the minimum
+    /// the solver found; a step that raises the sum of squares by more than rounding is taken back.
+    fn polish(&mut self, problem: &impl Problem, options: &Options) -> usize {
+        const MOST_STEPS: usize = 100;
+        let free = self.residuals.len().saturating_sub(self.normal_inverse.rank).max(1);
+        let noise = self.residuals.norm() / crate::math::count(free).sqrt();
+        let mut longest = 0.1 * noise;
+        for used in 0..MOST_STEPS {
+            let step = &self.normal_inverse.covariance * self.jacobian.tr_mul(&self.residuals);
+            let length = (&self.jacobian * &step).norm();
+            // written so that a NaN stops too
+            if !(length > options.polish_fraction * noise && length <= longest) {
+                return used;
+            }
+            match Self::new(problem, &self.parameters - step, options.rank_tolerance) {
+                Some(next) if next.residuals.norm() <= self.residuals.norm() * (1.0 + 1e-12) => *self = next,
+                _ => return used + 1,
+            }
+            longest = 0.9 * length;
+        }
+        MOST_STEPS
+    }
 }
 
 /// Stands between problem and engine: refuses steps out of the domain, remembers the best place seen.

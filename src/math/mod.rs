@@ -10,3 +10,10 @@ pub mod singular_values;
 
 pub use least_squares::{Ending, LeastSquaresError, Options, Problem, Solution, least_squares};
 pub use normal_inverse::NormalInverse;
+
+/// A count as a number; exact below 2^53, which no count of ours reaches.
+#[must_use]
+#[expect(clippy::cast_precision_loss, reason = "counts stay far below 2^53")]
+pub fn count(n: usize) -> f64 {
+    n as f64
+}
