@@ -2,7 +2,7 @@
 //! exit code they deserve.
 
 use crate::{
-    bench::BenchError, fit::FitError, lattice::LatticeError, photo::PhotoError, quantity::QuantityError, spots::SpotError,
+    bench::BenchError, fit::FitError, lattice::LatticeError, measure::MeasureError, photo::PhotoError, quantity::QuantityError, spots::SpotError,
     target::TargetError,
 };
 
@@ -28,6 +28,9 @@ pub enum Error {
     /// The dot target cannot be read.
     #[error(transparent)]
     Target(#[from] TargetError),
+    /// Photos and bench file do not go together, or do not suffice.
+    #[error(transparent)]
+    Measure(#[from] MeasureError),
     /// The fit cannot fix the pitch.
     #[error(transparent)]
     Fit(#[from] FitError),

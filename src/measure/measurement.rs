@@ -2,6 +2,7 @@
 
 use crate::{
     Note,
+    budget::{BudgetLine, Value},
     bench::Mode,
     frames::{PixelCovariance, PixelPoint},
     photo::Exif,
@@ -30,27 +31,6 @@ pub struct Measurement {
     pub mode: Mode,
     /// What a reader of the result must know.
     pub notes: Vec<Note>,
-}
-
-/// A value with its uncertainty, SI.
-#[derive(Debug, Clone, Copy, PartialEq)]
-pub struct Value {
-    /// Best estimate.
-    pub value: f64,
-    /// Standard uncertainty.
-    pub u: f64,
-    /// Coverage factor for about 95 % (Student's t at 95.45 % for the effective degrees of freedom).
-    pub coverage_factor: f64,
-    /// Effective degrees of freedom (Welch-Satterthwaite); infinite when nothing was estimated from scatter.
-    pub effective_degrees_of_freedom: f64,
-}
-
-impl Value {
-    /// Expanded uncertainty U = k u.
-    #[must_use]
-    pub fn expanded(&self) -> f64 {
-        self.coverage_factor * self.u
-    }
 }
 
 /// What was found of one sample.
@@ -98,19 +78,6 @@ pub struct KindStatement {
     pub p_value: f64,
     /// A sentence for the report.
     pub sentence: String,
-}
-
-/// One line of the uncertainty budget.
-#[derive(Debug, Clone, PartialEq)]
-pub struct BudgetLine {
-    /// Name of the source.
-    pub source: String,
-    /// Exact share of each pitch's variance; over all lines they add up to 1.
-    pub share: Vec<f64>,
-    /// Standard uncertainty that this source alone gives each pitch, m.
-    pub u_pitch_m: Vec<f64>,
-    /// Its share of the variance of the lattice angle; `None` for a line grating.
-    pub angle_share: Option<f64>,
 }
 
 /// The zero order in a photo.

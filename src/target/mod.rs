@@ -25,6 +25,7 @@ mod corpus_check;
 mod painter;
 
 pub use error::TargetError;
+pub use homography::homography;
 pub use reading::{Dot, Marks, ReadOptions, Reading, read};
 
 /// Median; the values are put in order. `None` for no values.
