@@ -1,0 +1,1 @@
+//! Made patterns: noise, missing orders, junk, distortion, absent zero order, rows of few spots, chance.
