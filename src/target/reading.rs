@@ -145,12 +145,17 @@ struct Scaled {
 
 fn read_at_scale(grey: &Light, bin: usize, options: &ReadOptions) -> Result<Scaled, TargetError> {
     let needed = options.least_dots.max(LEAST_DOTS);
+    let mut t = std::time::Instant::now();
     let plane = Binned::new(grey, bin);
+    timing::lap("bin", &mut t);
     let paper = PaperLevel::of(&plane);
+    timing::lap("paper", &mut t);
     let automatic = ink_threshold(&plane, &paper);
+    timing::lap("otsu", &mut t);
     let mut failed = TargetError::NoDots { round: 0, needed };
     for threshold in [automatic, 0.5, 0.7] {
         let blobs = round_blobs(&plane, &paper, threshold);
+    timing::lap("blobs", &mut t);
         match read_blobs(grey, &blobs, options, needed) {
             Ok(reading) => {
                 let mut areas: Vec<f64> = blobs.iter().map(|blob| blob.area_px2).collect();
@@ -170,7 +175,9 @@ fn read_blobs(grey: &Light, blobs: &[Blob], options: &ReadOptions, needed: usize
         return Err(TargetError::NoDots { round: blobs.len(), needed });
     }
     let no_grid = |on_grid: usize| TargetError::NoGrid { round: blobs.len(), on_grid, needed };
+    let mut t = std::time::Instant::now();
     let mut places = largest_grid(blobs);
+    timing::lap("grid", &mut t);
     if places.len() < needed {
         return Err(no_grid(places.len()));
     }
@@ -178,6 +185,7 @@ fn read_blobs(grey: &Light, blobs: &[Blob], options: &ReadOptions, needed: usize
     if places.len() < needed {
         return Err(no_grid(places.len()));
     }
+    timing::lap("settle", &mut t);
     let radius = radii(&places, blobs, &view);
     let print = find_orientation(&places, blobs, &view, &radius, grey, options)?;
     let marks = matches!(options.marks, Marks::Required);
@@ -213,6 +221,7 @@ fn settle(places: &mut Places, blobs: &[Blob], grey: &Light) -> Option<View> {
         let dots: Vec<Seen> = seen.iter().map(|(_, dot)| *dot).collect();
         let fitted = View::fit(&dots, width, height)?;
         let scatter = fitted.scatter(&dots);
+        let before = places.len();
         for (place, dot) in &seen {
             let [x, y] = fitted.residual_px(dot);
             let step = shorter_step(fitted.steps(dot.index));
@@ -220,8 +229,12 @@ fn settle(places: &mut Places, blobs: &[Blob], grey: &Light) -> Option<View> {
                 places.remove(place);
             }
         }
+        let removed = before - places.len();
         take_in(places, blobs, &fitted);
         view = Some(fitted);
+        if removed == 0 && places.len() == before {
+            break;
+        }
     }
     view
 }
@@ -306,7 +319,9 @@ fn refine(grey: &Light, coarse: &[Coarse], marks: bool, needed: usize) -> Option
         .iter()
         .map(|dot| Seen { index: grid_point(dot.index), radius_pitches: of_index(dot.index), at: dot.blob.at, u_px: 1.0 })
         .collect();
+    let mut t = std::time::Instant::now();
     let view = View::fit(&seen, width, height)?;
+    timing::lap("view", &mut t);
     let measure = |blur_px: f64, indices: &[((i32, i32), PixelPoint)]| -> Vec<((i32, i32), Darkness)> {
         use rayon::prelude::*;
         indices
@@ -332,7 +347,9 @@ fn refine(grey: &Light, coarse: &[Coarse], marks: bool, needed: usize) -> Option
     let sample: Vec<_> = starts.iter().step_by(every).copied().collect();
     let mut blurs: Vec<f64> = measure(1.5, &sample).iter().map(|(_, d)| d.blur_px).collect();
     let blur_px = median(&mut blurs)?.clamp(0.4, 12.0);
+    timing::lap("blur", &mut t);
     let found = measure(blur_px, &starts);
+    timing::lap("centroids", &mut t);
     finish(&found, marks, needed, width, height)
 }
 
@@ -358,11 +375,13 @@ fn finish(found: &[((i32, i32), Darkness)], marks: bool, needed: usize, width: f
     };
     let all: Vec<Seen> = found.iter().map(|(index, d)| seen(*index, d)).collect();
     let view = View::fit(&all, width, height)?;
-    let scale = view.scatter(&all).max(1.0);
+    let local = Residuals::of(found, &all, &view);
+    let scale = local.scatter().unwrap_or_else(|| view.scatter(&all)).max(1.0);
+    #[cfg(test)]
+    println!("   scale {scale:.2} global {:.2}", view.scatter(&all));
     let mut dots: Vec<Dot> = Vec::new();
     for ((index, d), dot) in found.iter().zip(&all) {
-        let [x, y] = view.residual_px(dot);
-        if x.hypot(y) <= 5.0 * scale * dot.u_px + 0.01 {
+        if local.off_px(*index, dot) <= OUTLIER * scale * dot.u_px + 0.01 {
             let c = d.covariance;
             let s2 = scale * scale;
             let covariance = PixelCovariance { xx: c.xx * s2, xy: c.xy * s2, yy: c.yy * s2 };
@@ -378,9 +397,67 @@ fn finish(found: &[((i32, i32), Darkness)], marks: bool, needed: usize, width: f
     Some(Reading { dots, dot_radius_pitches, mark_radius_pitches, pixel_from_pitches, notes: Vec::new() })
 }
 
+/// Farther than this many standard uncertainties from its neighbours' trend a dot is left out.
+const OUTLIER: f64 = 5.0;
+
+/// Residuals about the smooth view, seen against those of the neighbours: what a real lens does beyond
+/// the view's few terms is smooth and cancels there, noise and glare do not.
+struct Residuals {
+    at: HashMap<(i32, i32), ([f64; 2], f64)>,
+}
+
+impl Residuals {
+    fn of(found: &[((i32, i32), Darkness)], seen: &[Seen], view: &View) -> Self {
+        let at = found.iter().zip(seen).map(|((index, _), dot)| (*index, (view.residual_px(dot), dot.u_px))).collect();
+        Self { at }
+    }
+
+    fn neighbours(&self, (i, j): (i32, i32)) -> impl Iterator<Item = &([f64; 2], f64)> {
+        let around = [(-1, 0), (1, 0), (0, -1), (0, 1), (-1, -1), (1, 1), (-1, 1), (1, -1)];
+        around.into_iter().filter_map(move |(di, dj)| self.at.get(&(i + di, j + dj)))
+    }
+
+    /// Robust scatter of the differences to the mean of the neighbours, in units of their stated uncertainty.
+    fn scatter(&self) -> Option<f64> {
+        let mut sizes: Vec<f64> = Vec::new();
+        for (index, (residual, u_px)) in &self.at {
+            let (mut n, mut mean, mut u2) = (0.0, [0.0; 2], 0.0);
+            for (other, u) in self.neighbours(*index) {
+                n += 1.0;
+                mean = [mean[0] + other[0], mean[1] + other[1]];
+                u2 += u * u;
+            }
+            if n >= 5.0 {
+                let expected = (u_px * u_px + u2 / (n * n)).sqrt();
+                sizes.extend([0, 1].map(|c| ((residual[c] - mean[c] / n) / expected).abs()));
+            }
+        }
+        (sizes.len() >= 30).then(|| median(&mut sizes))?.map(|m| 1.4826 * m)
+    }
+
+    /// Distance from the median of the neighbours' residuals, or from the view where there are too few.
+    fn off_px(&self, index: (i32, i32), dot: &Seen) -> f64 {
+        let trend = [0, 1].map(|c| {
+            let mut values: Vec<f64> = self.neighbours(index).map(|(r, _)| r[c]).collect();
+            if values.len() < 5 { None } else { median(&mut values) }
+        });
+        let own = self.at.get(&index).map_or([0.0; 2], |(r, _)| *r);
+        let _ = dot;
+        (own[0] - trend[0].unwrap_or(0.0)).hypot(own[1] - trend[1].unwrap_or(0.0))
+    }
+}
+
 /// Contrast of ink and paper, from the larger dots where there are any: their cores are least blurred.
 fn typical_contrast(found: &[((i32, i32), Darkness)], marks: bool) -> Option<f64> {
     let mut of_marks: Vec<f64> = found.iter().filter(|(index, _)| marks && is_mark(*index)).map(|(_, d)| d.contrast).collect();
     let mut of_all: Vec<f64> = found.iter().map(|(_, d)| d.contrast).collect();
     Some(median(&mut of_all)?.max(median(&mut of_marks).unwrap_or(0.0)))
+}
+
+#[cfg(test)]
+mod timing {
+    pub(super) fn lap(what: &str, start: &mut std::time::Instant) {
+        println!("   {what} {:.1} ms", start.elapsed().as_secs_f64() * 1e3);
+        *start = std::time::Instant::now();
+    }
 }
