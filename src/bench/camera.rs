@@ -33,12 +33,18 @@ fn focal_length(section: &Section<'_>) -> Result<Option<FocalLength>, BenchError
     if let Content::Table(_) = node.content {
         return section.table("focal_length", "a table")?.map(|table| in_metres(&table)).transpose();
     }
-    match section.quantity("focal_length", Dimension::Pixel) {
-        Ok(stated) => Ok(stated.map(|stated| stated.sensible_and_known(&PIXELS)).transpose()?.map(FocalLength::Pixels)),
-        Err(BenchError::Quantity { place, reason: QuantityError::WrongDimension { seen, unit, found: "length", .. } }) => {
-            Err(BenchError::PixelSizeNeeded { place, seen, unit })
-        }
-        Err(error) => Err(error),
+    let stated = section.quantity("focal_length", Dimension::Pixel).map_err(ask_for_pixel_size)?;
+    Ok(stated.map(|stated| stated.sensible_and_known(&PIXELS)).transpose()?.map(FocalLength::Pixels))
+}
+
+/// A focal length in millimetres is half of what is needed, not a unit gone wrong.
+fn ask_for_pixel_size(error: BenchError) -> BenchError {
+    match error {
+        BenchError::Quantity { place, reason } => match *reason {
+            QuantityError::WrongDimension { seen, unit, found: "length", .. } => BenchError::PixelSizeNeeded { place, seen, unit },
+            other => BenchError::Quantity { place, reason: Box::new(other) },
+        },
+        other => other,
     }
 }
 

@@ -71,7 +71,7 @@ pub enum BenchError {
         place: Place,
         /// Why.
         #[source]
-        reason: QuantityError,
+        reason: Box<QuantityError>,
     },
     /// A word that is none of the choices.
     #[error("{place} = \"{seen}\" is not known; {advice}")]

@@ -67,6 +67,19 @@ impl Overrides {
         Ok(())
     }
 
+    /// Whether anything is said about a section.
+    pub(super) fn names_section(&self, name: &str) -> bool {
+        self.flags().iter().any(|(section, _, _, text)| *section == name && text.is_some())
+    }
+
+    /// What is said about a key, as it stands in a bench file.
+    pub(super) fn written_value(&self, section: &str, key: &str) -> Option<String> {
+        let (_, _, flag, text) = self.flags().into_iter().find(|flag| flag.0 == section && flag.1 == key)?;
+        let text = text.as_deref()?;
+        // An answer that cannot be taken apart is written whole, and refused when the file is read.
+        Some(node(key, flag, text).map_or_else(|_| toml_text(text), |node| written(&node.content)))
+    }
+
     fn flags(&self) -> [Flag<'_>; 19] {
         [
             ("laser", "wavelength", "--wavelength", &self.wavelength),
@@ -139,4 +152,34 @@ fn scale(flag: &'static str, text: &str) -> Result<Node, BenchError> {
 fn table_node(flag: &'static str, entries: [(&str, Node); 2]) -> Node {
     let table = Table(entries.map(|(key, node)| (key.to_owned(), node)).into());
     Node { origin: Origin::Flag(flag), content: Content::Table(table) }
+}
+
+/// A value as TOML.
+fn written(content: &Content) -> String {
+    let joined = |parts: Vec<String>| parts.join(", ");
+    match content {
+        Content::Text(text) => toml_text(text),
+        Content::Number(value) => format!("{value:?}"),
+        Content::List(items) => format!("[{}]", joined(items.iter().map(|item| written(&item.content)).collect())),
+        Content::Table(table) => {
+            format!("{{ {} }}", joined(table.0.iter().map(|(key, node)| format!("{key} = {}", written(&node.content))).collect()))
+        }
+        Content::Other(text) => text.clone(),
+    }
+}
+
+/// A text in quotes, with what TOML would misread escaped.
+fn toml_text(text: &str) -> String {
+    let mut quoted = String::with_capacity(text.len() + 2);
+    quoted.push('"');
+    for c in text.chars() {
+        match c {
+            '"' => quoted.push_str("\\\""),
+            '\\' => quoted.push_str("\\\\"),
+            c if c.is_control() => quoted.push_str(&format!("\\u{:04X}", u32::from(c))),
+            c => quoted.push(c),
+        }
+    }
+    quoted.push('"');
+    quoted
 }

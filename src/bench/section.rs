@@ -130,14 +130,6 @@ impl<'a> Section<'a> {
             _ => Err(BenchError::WrongKind { place: self.place(key), seen: node.seen(), needed }),
         }
     }
-
-    /// Two plain numbers.
-    pub(super) fn point(&self, key: &str) -> Result<[f64; 2], BenchError> {
-        match self.node(key) {
-            Some(node) => point(node, &self.path_of(key)),
-            None => Err(BenchError::Missing { key: self.path_of(key), advice: format!("write {POINT}") }),
-        }
-    }
 }
 
 impl Stated {
@@ -166,7 +158,7 @@ pub(super) fn stated(node: &Node, path: &str, dimension: Dimension) -> Result<St
     };
     match Quantity::parse(text, dimension) {
         Ok(quantity) => Ok(Stated { quantity, place, text: text.trim().to_owned() }),
-        Err(reason) => Err(BenchError::Quantity { place, reason }),
+        Err(reason) => Err(BenchError::Quantity { place, reason: Box::new(reason) }),
     }
 }
 
