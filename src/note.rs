@@ -19,6 +19,19 @@ pub enum Note {
     // lattice
     // target
     // bench
+    /// A wavelength is stated in vacuum and the state of the air is not fully stated.
+    StandardAirAssumed,
+    /// The state of the air is stated but no wavelength needs it.
+    AirNotUsed,
+    /// A wavelength said to be in air has the number of a laser line in vacuum, or the other way round.
+    WavelengthInOtherMedium {
+        /// The stated wavelength, m.
+        wavelength_m: f64,
+        /// Name of the line.
+        line: String,
+        /// Where the number belongs.
+        belongs_to: crate::bench::Medium,
+    },
     // fit
 }
 
@@ -29,6 +42,9 @@ impl Note {
         match self {
             Self::ToneCurveAssumed => "tone-curve-assumed",
             Self::SpotsLeftOut { .. } => "spots-left-out",
+            Self::StandardAirAssumed => "standard-air-assumed",
+            Self::AirNotUsed => "air-not-used",
+            Self::WavelengthInOtherMedium { .. } => "wavelength-in-other-medium",
         }
     }
 }
@@ -43,6 +59,17 @@ impl std::fmt::Display for Note {
                 f,
                 "{found} spots were found and the {kept} brightest are used; a ruled or textured screen gives many false ones: use plain card"
             ),
+            Self::StandardAirAssumed => f.write_str(
+                "wavelength stated in vacuum, air not fully stated: 20(3) degC, 1013(30) hPa, 50(20) % humidity assumed for what is missing; state [air], above all the pressure at more than 300 m above the sea",
+            ),
+            Self::AirNotUsed => f.write_str("[air] is not used: every wavelength is stated in air; state it in vacuum (medium = \"vacuum\") to use it"),
+            Self::WavelengthInOtherMedium { wavelength_m, line, belongs_to } => {
+                let place = match belongs_to {
+                    crate::bench::Medium::Air => "air",
+                    crate::bench::Medium::Vacuum => "vacuum",
+                };
+                write!(f, "{:.4} nm is the {line} in {place}; state medium = \"{place}\", or the pitch comes out wrong by 0.027 %", wavelength_m * 1e9)
+            }
         }
     }
 }

@@ -1,9 +1,9 @@
 //! Looks at every photo: decoded, spots found, target read. The heavy part; photos are worked on side by side.
 
+use super::Refusal;
 use crate::{
-    Error, Note,
+    Error,
     bench::{Bench, TargetKind},
-    frames::PixelPoint,
     photo::{self, Exif, Photo},
     spots::{self, Spots},
     target::{self, Reading},
@@ -54,13 +54,17 @@ pub(super) struct Seen {
 }
 
 /// Decodes and reads all photos.
-pub(super) fn look(inputs: &Inputs<'_>, bench: &Bench) -> Result<Seen, Error> {
+pub(super) fn look(inputs: &Inputs<'_>, bench: &Bench) -> Result<Seen, Refusal> {
     let dots_in_pattern = matches!(bench.target.as_ref().map(|target| &target.kind), Some(TargetKind::Dots { photo: None, .. }));
     let (patterns, targets) = rayon::join(
-        || inputs.patterns.par_iter().map(|file| look_at_pattern(file, dots_in_pattern)).collect::<Result<Vec<_>, Error>>(),
-        || inputs.targets.par_iter().map(look_at_target).collect::<Result<Vec<_>, Error>>(),
+        || inputs.patterns.par_iter().map(|file| look_at_pattern(file, dots_in_pattern).map_err(|error| blaming(file, error))).collect::<Result<Vec<_>, Refusal>>(),
+        || inputs.targets.par_iter().map(|file| look_at_target(file).map_err(|error| blaming(file, error))).collect::<Result<Vec<_>, Refusal>>(),
     );
     Ok(Seen { patterns: patterns?, targets: targets? })
+}
+
+fn blaming(file: &PhotoFile<'_>, error: Error) -> Refusal {
+    Refusal { file: Some(file.name.to_owned()), error }
 }
 
 fn look_at_pattern(file: &PhotoFile<'_>, dots_in_pattern: bool) -> Result<SeenPattern, Error> {
