@@ -60,8 +60,10 @@ pub(super) fn measure(linear: &LinearPhoto, colour: &Colour, noise: Noise, found
     let mix = Mix { linear, weights: colour.weights };
     let alone = |peak: &Peak| fit_alone(&mix, peak, noise);
     let first: Vec<Found> = found.peaks.par_iter().filter_map(alone).filter(Found::is_spot).collect();
+    if std::env::var_os("DBG").is_some() { eprintln!("weights {:?} share {:?} noise {noise:?} peaks {} thr {} first {}", colour.weights, colour.share, found.peaks.len(), found.threshold, first.len()); }
     let first = one_per_place(first, linear);
     let speckle = speckle_of(&mix, &first).unwrap_or_default();
+    if std::env::var_os("DBG").is_some() { eprintln!("unique {} speckle {:?} strength {}", first.len(), speckle, speckle.strength()); }
     let grid = grid_of(&first, linear);
     let again = |index: usize| fit_among(&mix, &first, index, &grid, noise, speckle);
     let second: Vec<Found> = (0..first.len()).into_par_iter().filter_map(again).filter(Found::is_spot).collect();
@@ -69,7 +71,7 @@ pub(super) fn measure(linear: &LinearPhoto, colour: &Colour, noise: Noise, found
 }
 
 fn pixel_noise(peak: &Peak, noise: Noise, speckle: Speckle) -> PixelNoise {
-    PixelNoise { background: peak.pixel_variance.max(1e-12), per_light: noise.b, speckle: speckle.strength() }
+    PixelNoise { background: peak.pixel_variance.max(1e-12), per_light: noise.b, speckle: std::env::var("KAP").ok().and_then(|k| k.parse().ok()).unwrap_or(speckle.strength()) }
 }
 
 fn reach_px(sigma_px: f64) -> f64 {
@@ -144,7 +146,7 @@ fn one_per_place(mut all: Vec<Found>, linear: &LinearPhoto) -> Vec<Found> {
 
 fn speckle_of(mix: &Mix, all: &[Found]) -> Option<Speckle> {
     let is_clear = |found: &&Found| {
-        found.clipped_px == 0 && found.missing_px == 0 && found.peak.signal_to_noise > 40.0 && found.sigma_px() > 1.2 && found.sigma_px() < 8.0
+        found.clipped_px == 0 && found.missing_px == 0 && found.fitted.profile.height > 30.0 * found.peak.pixel_variance.sqrt() && found.sigma_px() > 1.2 && found.sigma_px() < 8.0
     };
     let variograms: Vec<Variogram> = all
         .iter()
@@ -155,7 +157,7 @@ fn speckle_of(mix: &Mix, all: &[Found]) -> Option<Speckle> {
             let window = Window::cut(mix, found.at_px(), 1.0, 2.0 * found.sigma_px() + 2.0);
             let at = found.at_px();
             let profile = Profile { x_px: at[0] - window.middle_px[0], y_px: at[1] - window.middle_px[1], ..found.fitted.profile };
-            Variogram::of_spot(&window, &profile, found.peak.pixel_variance)
+            Variogram::of_spot(&window, &profile)
         })
         .collect();
     speckle::pooled(&variograms)

@@ -38,21 +38,21 @@ impl Variogram {
     ///
     /// Differences over few pixels are free of what the fit has absorbed, which the scatter of the residuals is not.
     ///
-    /// - `pixel_variance`: of the sensor, taken off
-    pub(super) fn of_spot(window: &Window, profile: &Profile, pixel_variance: f64) -> Self {
+    /// The noise of the sensor is not taken off: in spots that are strong enough to be asked it is small against speckle.
+    pub(super) fn of_spot(window: &Window, profile: &Profile) -> Self {
         let mut variogram = Self::default();
-        let relative: Vec<Option<(f64, f64)>> = window
+        let relative: Vec<Option<f64>> = window
             .cells
             .iter()
             .map(|cell| {
                 let spot = profile.spot(cell.x_px, cell.y_px);
                 let background = profile.background + profile.slope[0] * cell.x_px + profile.slope[1] * cell.y_px;
-                (spot > 0.35 * profile.height).then(|| ((cell.value - background) / spot, pixel_variance / (spot * spot)))
+                (spot > 0.4 * profile.height).then(|| (cell.value - background) / spot)
             })
             .collect();
         let side = 2 * window.reach_px as usize;
         let index = |x: f64, y: f64| ((y + window.reach_px) as usize) * side + (x + window.reach_px) as usize;
-        let mut raster = vec![None; side * side];
+        let mut raster: Vec<Option<f64>> = vec![None; side * side];
         for (cell, value) in window.cells.iter().zip(&relative) {
             if let Some(slot) = raster.get_mut(index(cell.x_px, cell.y_px)) {
                 *slot = *value;
@@ -65,7 +65,7 @@ impl Variogram {
                     let right = (x + lag < side).then(|| raster[y * side + x + lag]).flatten();
                     let below = (y + lag < side).then(|| raster[(y + lag) * side + x]).flatten();
                     for there in [right, below].into_iter().flatten() {
-                        variogram.sum[lag - 1] += 0.5 * ((here.0 - there.0).powi(2) - here.1 - there.1);
+                        variogram.sum[lag - 1] += 0.5 * (here - there).powi(2);
                         variogram.count[lag - 1] += 1.0;
                     }
                 }
