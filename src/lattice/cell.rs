@@ -52,7 +52,7 @@ impl Cell {
         self.signed_area().abs().atan2(dot(self.a, self.b))
     }
 
-    /// Distances between neighbouring lattice rows: rows along b (spacing 1/|g_1|), rows along a (spacing 1/|g_2|).
+    /// Distances between neighbouring lattice rows: rows along b (spacing `1/|g_1|`), rows along a (spacing `1/|g_2|`).
     /// Not defined (infinite) for a flat cell; use on cells that [`dual`] accepts.
     #[must_use]
     pub fn row_spacings(&self) -> [f64; 2] {
@@ -90,7 +90,7 @@ impl Reduction {
         self.rows[0][0] * self.rows[1][1] - self.rows[0][1] * self.rows[1][0]
     }
 
-    /// The 4×4 Jacobian of (a_x, a_y, b_x, b_y) new against old, for carrying a covariance: C' = J C Jᵀ.
+    /// The 4×4 Jacobian of (`a_x`, `a_y`, `b_x`, `b_y`) new against old, for carrying a covariance: C' = J C Jᵀ.
     #[must_use]
     #[expect(clippy::cast_precision_loss, reason = "reduction integers are far below 2^53")]
     pub fn jacobian(&self) -> [[f64; 4]; 4] {
@@ -105,9 +105,9 @@ impl Reduction {
     }
 }
 
-/// Dual basis: a_i · g_j = δ_ij (no factor 2π). Maps a direct cell to its reciprocal one and back.
+/// Dual basis: `a_i · g_j = δ_ij` (no factor 2π). Maps a direct cell to its reciprocal one and back.
 ///
-/// g_1 = (b_y, -b_x)/A, g_2 = (-a_y, a_x)/A with the signed area A. Lengths come out in the inverse unit.
+/// `g_1 = (b_y, -b_x)/A`, `g_2 = (-a_y, a_x)/A` with the signed area A. Lengths come out in the inverse unit.
 ///
 /// # Errors
 /// [`LatticeError::FlatCell`] if the vectors are parallel (area below 1e-12 of |a||b|) or not finite.

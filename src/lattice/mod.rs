@@ -7,6 +7,7 @@ mod evidence;
 mod grow;
 mod indexed;
 mod indexing;
+mod kind;
 mod point;
 mod rejected;
 mod relatives;
@@ -23,6 +24,7 @@ pub use cell::{Cell, Reduced, Reduction, dual, reduce};
 pub use indexed::{Evidence, Indexed, Reason, RunnerUp, Shape, Warning};
 pub use indexing::index;
 
+pub use kind::{CellEstimate, KindOptions, KindStatement, LatticeKind, SymmetryTest, kind_of_lattice};
 pub use point::{Expected, IndexOptions, Point, ZeroHint};
 
 /// Why points form no lattice.

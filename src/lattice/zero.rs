@@ -34,6 +34,9 @@ const CANDIDATES: usize = 60;
 const PAIR_SPREAD: f64 = 0.6;
 /// Cost of a zero order that should be visible and is not.
 const UNSEEN: f64 = 4.0;
+/// Cost of lying one rms extent of the pattern away from the middle of brightness, and its bound.
+const OFF_MIDDLE: f64 = 1.0;
+const FARTHEST: f64 = 6.0;
 /// Further cost of a middle between the nodes: the numbering must be doubled for it.
 const BETWEEN: f64 = 4.0;
 /// Brightness and symmetry of neighbouring orders are not independent: their joint evidence is tempered.
@@ -63,6 +66,8 @@ struct Field {
     brightest: [f64; 2],
     fill: f64,
     line: bool,
+    middle: [f64; 2],
+    extent: f64,
 }
 
 impl Field {
@@ -77,7 +82,10 @@ impl Field {
         let spread = (1.4826 * median(strong.iter().map(|s| (s.1 - middle).abs()))).max(PAIR_SPREAD);
         let nodes = super::evidence::nodes_in_region(scene, growth, 1_000_000)?.len();
         let fill = (super::evidence::real(point.len()) / super::evidence::real(nodes.max(1))).clamp(0.05, 0.95);
-        Some(Self { point, strong, faint_limit, spread, brightest, fill, line: growth.line })
+        let middle_at = middle_of_brightness(scene, growth);
+        let squares = point.values().map(|&i| norm(minus(scene.at[i], middle_at)).powi(2)).sum::<f64>();
+        let extent = (squares / super::evidence::real(point.len())).sqrt().max(1e-12);
+        Some(Self { middle: middle_at, extent, point, strong, faint_limit, spread, brightest, fill, line: growth.line })
     }
 
     /// Brightest nodes, nodes nearest to the middle, half nodes nearest to the middle; all doubled.
@@ -111,14 +119,15 @@ impl Field {
         let brightness = match seen {
             Some(i) => {
                 let rest = if scene.ln_weight[i] >= self.brightest[0] { self.brightest[1] } else { self.brightest[0] };
-                (2.0 * (scene.ln_weight[i] - rest)).clamp(-8.0, 8.0) + scene.zero_log_odds[i]
+                (2.0 * (scene.ln_weight[i] - rest)).clamp(-UNSEEN, 8.0) + scene.zero_log_odds[i]
             }
             None if (scene.visible)(place) => -UNSEEN,
             None => -0.5 * UNSEEN,
         };
         let between = if whole { 0.0 } else { -BETWEEN };
         let hint = scene.options.zero_hint.map_or(0.0, |h| (-0.5 * (norm(minus(place, h.at)) / h.u.max(1e-12)).powi(2)).max(-30.0));
-        brightness + between + hint + TEMPER * self.symmetry(scene, growth, doubled)
+        let off_middle = (OFF_MIDDLE * (norm(minus(place, self.middle)) / self.extent).powi(2)).min(FARTHEST);
+        brightness + between + hint - off_middle + TEMPER * self.symmetry(scene, growth, doubled)
     }
 
     /// Log likelihood ratio of the pairs about a middle, symmetric against unrelated.
