@@ -1,6 +1,6 @@
 //! Solves the joint problem: robust first, then plain least squares on what belongs to the model, so that the covariance is honest.
 
-use super::{FitError, joint::Joint, source::Source};
+use super::{FitError, cell::Derived, joint::Joint, source::Source};
 use crate::math::{self, least_squares};
 use nalgebra::{DMatrix, DVector};
 use std::collections::BTreeMap;
@@ -169,12 +169,7 @@ impl Fit {
     /// share of whoever owns the row. Source: generalised least squares with the priors as extra rows, `[methods C.6]`.
     #[must_use]
     pub fn variance_by_source(&self, slopes: &[(usize, f64)]) -> (f64, BTreeMap<Source, f64>) {
-        let mut gradient = DVector::zeros(self.covariance.nrows());
-        for &(place, slope) in slopes {
-            if let Some(column) = self.joint.layout.column(place) {
-                gradient[column] += slope;
-            }
-        }
+        let gradient = self.gradient(slopes);
         let along = &self.covariance * &gradient;
         let rows = &self.jacobian * &along;
         let mut parts = BTreeMap::new();
@@ -182,5 +177,21 @@ impl Fit {
             *parts.entry(source).or_insert(0.0) += row * row;
         }
         (gradient.dot(&along), parts)
+    }
+
+    /// Covariance of two derived values.
+    #[must_use]
+    pub fn covariance_of(&self, a: &Derived, b: &Derived) -> f64 {
+        self.gradient(&a.slopes).dot(&(&self.covariance * self.gradient(&b.slopes)))
+    }
+
+    fn gradient(&self, slopes: &[(usize, f64)]) -> DVector<f64> {
+        let mut gradient = DVector::zeros(self.covariance.nrows());
+        for &(place, slope) in slopes {
+            if let Some(column) = self.joint.layout.column(place) {
+                gradient[column] += slope;
+            }
+        }
+        gradient
     }
 }

@@ -84,6 +84,9 @@ pub(super) fn assemble(seen: &Seen, bench: &Bench, cameras: &Cameras, ordered: &
     let mut joint = bare_joint(cameras, bench);
     free_the_print(&mut joint, bench);
     let zero_order = if cameras.screen_known { ZeroOrderStart::OnPrint(ordered[0].rough.print.zero_order_m) } else { ZeroOrderStart::Origin };
+    if !cameras.screen_known {
+        move_bare_cameras(&mut joint, ordered);
+    }
     let nothing_has_a_length = !cameras.screen_known && bench.camera.scale.is_none();
     let throw = if nothing_has_a_length { ThrowStart::Gauge(GAUGE_THROW_M) } else { ThrowStart::FromPattern(GAUGE_THROW_M) };
     setup::add_screen(&mut joint.layout, bench, throw, zero_order);
@@ -102,6 +105,18 @@ pub(super) fn assemble(seen: &Seen, bench: &Bench, cameras: &Cameras, ordered: &
     add_scale(&mut joint, bench);
     add_square_on(&mut joint, bench, cameras.screen_known);
     joint
+}
+
+/// Without a print its origin is the zero order: cameras that were set up before another spot move with it.
+fn move_bare_cameras(joint: &mut Joint, ordered: &[Ordered]) {
+    let [x, y] = ordered[0].rough.print.zero_order_m;
+    for view in 0..joint.shape.references.len() {
+        let shift = joint.shape.references[view] * nalgebra::Vector3::new(x, y, 0.0);
+        for axis in 0..3 {
+            let parameter = Parameter::CameraPlace { view, axis };
+            joint.layout.set(parameter, joint.layout.value(parameter).unwrap_or(0.0) + shift[axis]);
+        }
+    }
 }
 
 /// On its own the print had to take its nominal pitch as exact; in the joint problem it is what the bench file says.

@@ -5,6 +5,7 @@ use crate::{
     budget::{BudgetLine, Value},
     bench::Mode,
     frames::{PixelCovariance, PixelPoint},
+    lattice::LatticeKind,
     photo::Exif,
 };
 
@@ -52,21 +53,6 @@ pub struct SampleResult {
     pub kind: Option<KindStatement>,
     /// One line per source, largest first.
     pub budget: Vec<BudgetLine>,
-}
-
-/// The kinds of plane lattice.
-#[derive(Debug, Clone, Copy, PartialEq, Eq)]
-pub enum LatticeKind {
-    /// No symmetry beyond the half turn.
-    Oblique,
-    /// Right angle, two pitches.
-    Rectangular,
-    /// Two equal pitches at a general angle.
-    CentredRectangular,
-    /// Right angle, equal pitches.
-    Square,
-    /// 120°, equal pitches.
-    Hexagonal,
 }
 
 /// A lattice kind and how well the data support it.

@@ -15,12 +15,16 @@ mod scan;
 mod statement;
 mod strays;
 mod view;
+mod zero_order;
 
-pub use crate::budget::{BudgetLine, Value};
+pub use crate::{
+    budget::{BudgetLine, Value},
+    lattice::LatticeKind,
+};
 pub use error::{MeasureError, Refusal};
 pub use look::{Inputs, PhotoFile};
 pub use measurement::{
-    FitSummary, KindStatement, LatticeKind, Measurement, OrderRow, ParameterRow, ParameterUnit, PhotoSummary, RejectedSpot, SampleResult,
+    FitSummary, KindStatement, Measurement, OrderRow, ParameterRow, ParameterUnit, PhotoSummary, RejectedSpot, SampleResult,
     ZeroOrder,
 };
 
@@ -49,6 +53,7 @@ pub fn measure(inputs: &Inputs<'_>, bench: &Bench) -> Result<Measurement, Refusa
     let joint = assemble::assemble(&seen, bench, &cameras, &ordered, &wavelengths_m);
     statement::enough_spots(&joint)?;
     let fit = solve(joint, Outliers::Rejected)?;
+    let (ordered, fit) = zero_order::best_zero_order(&seen, bench, &cameras, ordered, &wavelengths_m, fit)?;
     let fit = strays::taken_in(&seen, fit)?;
     notes.extend(statement::numbering_notes(&ordered));
     conclude::conclude(inputs, bench, &seen, &ordered, &fit, notes).map_err(Refusal::from)

@@ -53,7 +53,7 @@ fn brightest(spots: &[Spot]) -> Option<PixelPoint> {
 }
 
 /// Light in a spot: peak times area of the profile.
-fn light_of(spot: &Spot) -> f64 {
+pub(super) fn light_of(spot: &Spot) -> f64 {
     spot.peak * (spot.shape.xx * spot.shape.yy - spot.shape.xy.powi(2)).max(0.0).sqrt()
 }
 

@@ -10,6 +10,7 @@ use crate::{
     Note,
     bench::Bench,
     fit::{Cell, Fit, FitError, Joint},
+    lattice::{CellEstimate, KindOptions, LatticeKind, Warning, kind_of_lattice},
     quantity::Quantity,
 };
 
@@ -65,12 +66,62 @@ pub(super) fn enough_spots(joint: &Joint) -> Result<(), FitError> {
     Ok(())
 }
 
-/// The kind of plane lattice.
-pub(super) fn kind_statement(_fit: &Fit, _found: &Cell) -> Option<KindStatement> {
-    None
+/// The kind of plane lattice, as a statistical statement; `None` for a line grating.
+pub(super) fn kind_statement(fit: &Fit, found: &Cell) -> Option<KindStatement> {
+    let [p1, p2] = found.pitch_m.as_slice() else { return None };
+    let values = [p1, p2, found.angle_rad.as_ref()?];
+    let covariance = values.map(|a| values.map(|b| fit.covariance_of(a, b)));
+    let estimate = CellEstimate { p1: p1.value, p2: p2.value, angle_rad: values[2].value, covariance, degrees_of_freedom: f64::INFINITY };
+    let options = KindOptions::default();
+    let statement = kind_of_lattice(&estimate, &options).ok()?;
+    let test = statement.tests.iter().find(|test| test.kind == statement.kind);
+    let name = kind_name(statement.kind);
+    let sentence = match test {
+        None => "oblique: every higher symmetry is rejected at the 1 % level".to_owned(),
+        Some(test) if statement.telling => format!(
+            "{name} within its uncertainty (p = {:.2}); a deviation of {} would have shown",
+            test.p_value,
+            percent(test.detectable)
+        ),
+        Some(test) => format!(
+            "{name} is not contradicted, but the uncertainty is too wide to tell: only a deviation beyond {} would have shown",
+            percent(test.detectable)
+        ),
+    };
+    Some(KindStatement { kind: statement.kind, p_value: test.map_or(1.0, |test| test.p_value), sentence })
+}
+
+fn percent(share: f64) -> String {
+    if share < 1e-3 { format!("{:.3} %", share * 100.0) } else { format!("{:.1} %", share * 100.0) }
+}
+
+/// Name of a lattice kind in reports.
+fn kind_name(kind: LatticeKind) -> &'static str {
+    match kind {
+        LatticeKind::Oblique => "oblique",
+        LatticeKind::Rectangular => "rectangular",
+        LatticeKind::CentredRectangular => "centred rectangular",
+        LatticeKind::Square => "square",
+        LatticeKind::Hexagonal => "hexagonal",
+    }
 }
 
 /// Doubts about the numbering.
-pub(super) fn numbering_notes(_ordered: &[Ordered]) -> Vec<Note> {
-    Vec::new()
+pub(super) fn numbering_notes(ordered: &[Ordered]) -> Vec<Note> {
+    ordered.iter().flat_map(|photo| &photo.indexed.warnings).filter_map(numbering_note).collect()
+}
+
+fn numbering_note(warning: &Warning) -> Option<Note> {
+    Some(match *warning {
+        Warning::ThinNumbering { cell_ratio, lead } => Note::ThinNumbering { cell_ratio, lead },
+        Warning::FewDeciders { factor, deciders } => Note::FewDeciders { factor, deciders },
+        Warning::FaintBetween { factor, brightness_ratio } => Note::FaintBetween { factor, brightness_ratio },
+        Warning::ZeroUnseen => Note::ZeroOrderUnseen,
+        Warning::ZeroUncertain { lead, other } => Note::ZeroOrderUncertain { lead, other },
+        Warning::FewPoints { explained } => Note::FewSpots { indexed: explained },
+        Warning::SecondLattice { points, .. } => Note::SecondLattice { spots: points },
+        Warning::Ghosts { points } => Note::Ghosts { spots: points },
+        Warning::ShapeUncertain { lead } => Note::ShapeUncertain { lead },
+        _ => return None,
+    })
 }
