@@ -85,7 +85,7 @@ pub struct Sample {
     pub mode: Mode,
     /// Line or plane, if the operator knows.
     pub pattern: Pattern,
-    /// Turns (a_x, a_y) of the sample's normal against the zero order, rad.
+    /// Turns (`a_x`, `a_y`) of the sample's normal against the zero order, rad.
     pub incidence_rad: Option<[Quantity; 2]>,
     /// Known pitches of a reference (one for a line grating, two for a plane lattice), m.
     pub pitch_m: Vec<Quantity>,
@@ -118,7 +118,7 @@ pub enum Pattern {
 pub struct Screen {
     /// Sample to zero-order spot along the beam, m.
     pub throw_m: Option<Quantity>,
-    /// Turns (t_x, t_y) of the screen, rad.
+    /// Turns (`t_x`, `t_y`) of the screen, rad.
     pub tilt_rad: Option<[Quantity; 2]>,
     /// From where the camera looks.
     pub seen_from: Side,

@@ -49,10 +49,10 @@ impl<'a> Section<'a> {
     }
 
     /// The table at a key of this section.
-    pub(super) fn table(&self, key: &str, needed: &'static str) -> Result<Option<Section<'a>>, BenchError> {
+    pub(super) fn table(&self, key: &str, needed: &'static str) -> Result<Option<Self>, BenchError> {
         let Some(node) = self.node(key) else { return Ok(None) };
         let path = self.path_of(key);
-        Ok(Some(Section { table: Some(table_of(node, &path, needed)?), path }))
+        Ok(Some(Self { table: Some(table_of(node, &path, needed)?), path }))
     }
 
     pub(super) fn is_given(&self) -> bool {
