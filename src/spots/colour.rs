@@ -7,6 +7,8 @@ use crate::photo::{HalfPlanes, Plane};
 
 /// Share of the channels' own variance that is added before the inversion, so that no weight rests on a rounding error.
 const LOADING: f64 = 0.1;
+/// A channel of less relative weight is not worth reading.
+const LEAST_WEIGHT: f64 = 0.03;
 /// Cells that enter the covariance of the channels.
 const NOISE_SAMPLES: usize = 40_000;
 /// Light of a cell above which its colour is not trusted: part of it may clip.
@@ -56,7 +58,7 @@ fn weigh(light: [f64; 3], noise: Matrix3<f64>) -> Colour {
     Colour { share, weights: non_negative_weights(share, main, loaded).into(), main }
 }
 
-/// The best weights of which none is negative: the channel with the most negative one is left out until none is.
+/// The best weights of which none is negative or tiny: the channel with the lowest one is left out until none is.
 ///
 /// A difference of channels would see the laser alone in theory; in practice it brings in what tone curves and chroma
 /// rounding do to each of them.
@@ -69,11 +71,12 @@ fn non_negative_weights(share: [f64; 3], main: usize, noise: Matrix3<f64>) -> Ve
         let only_main = Vector3::from_fn(|i, _| f64::from(u8::from(i == main)));
         let Some(best) = noise.cholesky().map(|factor| factor.solve(&shares)) else { return only_main };
         let scale = share[main] / best.dot(&shares);
-        let lowest = best.imin();
+        let unused_last = Vector3::from_fn(|i, _| if used[i] { best[i] } else { f64::INFINITY });
+        let lowest = unused_last.imin();
         if !scale.is_finite() || scale <= 0.0 {
             return only_main;
         }
-        if best[lowest] >= 0.0 {
+        if best[lowest] >= LEAST_WEIGHT * best.amax() {
             return best * scale;
         }
         used[lowest] = false;

@@ -8,7 +8,7 @@ mod error;
 mod measure;
 mod profile;
 mod scale;
-mod speckle;
+mod scatter;
 mod window;
 
 pub use error::SpotError;

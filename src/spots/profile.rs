@@ -52,8 +52,8 @@ pub(super) struct Fitted {
     pub(super) profile: Profile,
     /// Covariance of the centre (xx, xy, yy), px², before any scaling.
     pub(super) covariance: [f64; 3],
-    /// Standard uncertainty of the height.
-    pub(super) u_height: f64,
+    /// Standard uncertainties of xx - yy and 2 xy of the inverse shape, per px².
+    pub(super) u_departure: [f64; 2],
     /// Sum of squared residuals over their variance, per degree of freedom.
     pub(super) chi2: f64,
 }
@@ -224,8 +224,8 @@ fn finish(window: &Window, profile: Profile, state: &State) -> Option<Fitted> {
     let fitted = Fitted {
         profile,
         covariance: [covariance(X, X), covariance(X, Y), covariance(Y, Y)],
-        u_height: covariance(0, 0).sqrt(),
+        u_departure: [(covariance(3, 3) + covariance(5, 5) - 2.0 * covariance(3, 5)).sqrt(), 2.0 * covariance(4, 4).sqrt()],
         chi2: state.cost / (window.cells.len() - COUNT) as f64,
     };
-    (fitted.covariance.iter().all(|c| c.is_finite()) && fitted.u_height.is_finite()).then_some(fitted)
+    (fitted.covariance.iter().all(|c| c.is_finite()) && fitted.u_departure.iter().all(|u| u.is_finite() && *u > 0.0)).then_some(fitted)
 }
