@@ -349,7 +349,8 @@ fn window_sums(light: &Light, window: &Window, ground: &Ground, expected: &Expec
     let covariance = spread_of_centroid(&sums, &noise, ground, contrast);
     let [sx, sy] = expected.steps_px;
     // Sum of s (1 - s), s = share of ink, freed from what noise adds to it on average.
-    let edge = sums.d / contrast - (sums.dd - (sums.w - sums.d / contrast) * noise.paper - sums.d / contrast * noise.ink) / (contrast * contrast);
+    let edge =
+        sums.d / contrast - (sums.dd - (sums.w - sums.d / contrast) * noise.paper - sums.d / contrast * noise.ink) / (contrast * contrast);
     let perimeter = 2.0 * (std::f64::consts::PI * sums.d / contrast).sqrt();
     let at = PixelPoint { x_px: window.at.x_px + sums.dx / sums.d, y_px: window.at.y_px + sums.dy / sums.d };
     let found = Darkness {
@@ -385,8 +386,7 @@ impl PixelNoise {
 fn spread_of_centroid(sums: &Sums, noise: &PixelNoise, ground: &Ground, contrast: f64) -> PixelCovariance {
     let darker = (noise.ink - noise.paper) / contrast;
     let s2 = sums.d * sums.d;
-    let [xx, xy, yy]: [f64; 3] =
-        std::array::from_fn(|n| (noise.paper * sums.second[n] + darker * sums.dark_second[n]) / s2);
+    let [xx, xy, yy]: [f64; 3] = std::array::from_fn(|n| (noise.paper * sums.second[n] + darker * sums.dark_second[n]) / s2);
     let slope = |axis: usize| (sums.lever[axis] * ground.u_slope[axis]).powi(2) / s2;
     PixelCovariance { xx: xx + slope(0), xy, yy: yy + slope(1) }
 }

@@ -8,6 +8,7 @@ use super::{
     error::TargetError,
     grid::{Places, largest_grid},
     homography::homography,
+    is_mark,
     marks::{Hand, Orientation, orientation},
     median,
     paper::{Binned, PaperLevel, small_f64},
@@ -145,17 +146,12 @@ struct Scaled {
 
 fn read_at_scale(grey: &Light, bin: usize, options: &ReadOptions) -> Result<Scaled, TargetError> {
     let needed = options.least_dots.max(LEAST_DOTS);
-    let mut t = std::time::Instant::now();
     let plane = Binned::new(grey, bin);
-    timing::lap("bin", &mut t);
     let paper = PaperLevel::of(&plane);
-    timing::lap("paper", &mut t);
     let automatic = ink_threshold(&plane, &paper);
-    timing::lap("otsu", &mut t);
     let mut failed = TargetError::NoDots { round: 0, needed };
     for threshold in [automatic, 0.5, 0.7] {
         let blobs = round_blobs(&plane, &paper, threshold);
-    timing::lap("blobs", &mut t);
         match read_blobs(grey, &blobs, options, needed) {
             Ok(reading) => {
                 let mut areas: Vec<f64> = blobs.iter().map(|blob| blob.area_px2).collect();
@@ -175,9 +171,7 @@ fn read_blobs(grey: &Light, blobs: &[Blob], options: &ReadOptions, needed: usize
         return Err(TargetError::NoDots { round: blobs.len(), needed });
     }
     let no_grid = |on_grid: usize| TargetError::NoGrid { round: blobs.len(), on_grid, needed };
-    let mut t = std::time::Instant::now();
     let mut places = largest_grid(blobs);
-    timing::lap("grid", &mut t);
     if places.len() < needed {
         return Err(no_grid(places.len()));
     }
@@ -185,7 +179,6 @@ fn read_blobs(grey: &Light, blobs: &[Blob], options: &ReadOptions, needed: usize
     if places.len() < needed {
         return Err(no_grid(places.len()));
     }
-    timing::lap("settle", &mut t);
     let radius = radii(&places, blobs, &view);
     let print = find_orientation(&places, blobs, &view, &radius, grey, options)?;
     let marks = matches!(options.marks, Marks::Required);
@@ -300,11 +293,6 @@ fn find_orientation(
     }
 }
 
-/// The three larger dots.
-fn is_mark(index: (i32, i32)) -> bool {
-    [(0, 0), (2, 0), (0, 1)].contains(&index)
-}
-
 /// Full-resolution centroids, weeded and with covariances that match their scatter about a smooth view.
 fn refine(grey: &Light, coarse: &[Coarse], marks: bool, needed: usize) -> Option<Reading> {
     let (width, height) = (small_f64(grey.width), small_f64(grey.height));
@@ -319,9 +307,7 @@ fn refine(grey: &Light, coarse: &[Coarse], marks: bool, needed: usize) -> Option
         .iter()
         .map(|dot| Seen { index: grid_point(dot.index), radius_pitches: of_index(dot.index), at: dot.blob.at, u_px: 1.0 })
         .collect();
-    let mut t = std::time::Instant::now();
     let view = View::fit(&seen, width, height)?;
-    timing::lap("view", &mut t);
     let measure = |blur_px: f64, indices: &[((i32, i32), PixelPoint)]| -> Vec<((i32, i32), Darkness)> {
         use rayon::prelude::*;
         indices
@@ -347,9 +333,7 @@ fn refine(grey: &Light, coarse: &[Coarse], marks: bool, needed: usize) -> Option
     let sample: Vec<_> = starts.iter().step_by(every).copied().collect();
     let mut blurs: Vec<f64> = measure(1.5, &sample).iter().map(|(_, d)| d.blur_px).collect();
     let blur_px = median(&mut blurs)?.clamp(0.4, 12.0);
-    timing::lap("blur", &mut t);
     let found = measure(blur_px, &starts);
-    timing::lap("centroids", &mut t);
     finish(&found, marks, needed, width, height)
 }
 
@@ -377,8 +361,6 @@ fn finish(found: &[((i32, i32), Darkness)], marks: bool, needed: usize, width: f
     let view = View::fit(&all, width, height)?;
     let local = Residuals::of(found, &all, &view);
     let scale = local.scatter().unwrap_or_else(|| view.scatter(&all)).max(1.0);
-    #[cfg(test)]
-    println!("   scale {scale:.2} global {:.2}", view.scatter(&all));
     let mut dots: Vec<Dot> = Vec::new();
     for ((index, d), dot) in found.iter().zip(&all) {
         if local.off_px(*index, dot) <= OUTLIER * scale * dot.u_px + 0.01 {
@@ -452,12 +434,4 @@ fn typical_contrast(found: &[((i32, i32), Darkness)], marks: bool) -> Option<f64
     let mut of_marks: Vec<f64> = found.iter().filter(|(index, _)| marks && is_mark(*index)).map(|(_, d)| d.contrast).collect();
     let mut of_all: Vec<f64> = found.iter().map(|(_, d)| d.contrast).collect();
     Some(median(&mut of_all)?.max(median(&mut of_marks).unwrap_or(0.0)))
-}
-
-#[cfg(test)]
-mod timing {
-    pub(super) fn lap(what: &str, start: &mut std::time::Instant) {
-        println!("   {what} {:.1} ms", start.elapsed().as_secs_f64() * 1e3);
-        *start = std::time::Instant::now();
-    }
 }
