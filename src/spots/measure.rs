@@ -51,7 +51,10 @@ impl Found {
 
     fn is_spot(&self) -> bool {
         let [long, short] = self.fitted.profile.axes_px();
-        short >= MIN_SIGMA_PX && long <= MAX_SIGMA_PX && long <= MAX_ELONGATION * short && self.fitted.profile.height > 3.0 * self.fitted.u_height
+        short >= MIN_SIGMA_PX
+            && long <= MAX_SIGMA_PX
+            && long <= MAX_ELONGATION * short
+            && self.fitted.profile.height > 3.0 * self.fitted.u_height
     }
 }
 
@@ -144,7 +147,11 @@ fn one_per_place(mut all: Vec<Found>, linear: &LinearPhoto) -> Vec<Found> {
 
 fn speckle_of(mix: &Mix, all: &[Found]) -> Option<Speckle> {
     let is_clear = |found: &&Found| {
-        found.clipped_px == 0 && found.missing_px == 0 && found.peak.signal_to_noise > 40.0 && found.sigma_px() > 1.2 && found.sigma_px() < 8.0
+        found.clipped_px == 0
+            && found.missing_px == 0
+            && found.peak.signal_to_noise > 40.0
+            && found.sigma_px() > 1.2
+            && found.sigma_px() < 8.0
     };
     let variograms: Vec<Variogram> = all
         .iter()

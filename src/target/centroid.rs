@@ -223,11 +223,7 @@ fn robust_plane(samples: &[[f64; 3]], stride: usize) -> Option<Ground> {
         let level = plane[0];
         // Thinned samples: all pixels would carry `stride²` times as many.
         let thinning = small_f64(stride);
-        ground = Some(Ground {
-            plane,
-            variance: fit.variance / (level * level),
-            u_slope: fit.u_slope.map(|u| u / level / thinning),
-        });
+        ground = Some(Ground { plane, variance: fit.variance / (level * level), u_slope: fit.u_slope.map(|u| u / level / thinning) });
     }
     ground
 }
@@ -350,14 +346,7 @@ fn ink_and_paper_noise(cells: &[Cellule], light: &Light, ground: &Ground, contra
 }
 
 /// Covariance of the centroid: noise of each pixel with its lever, and the slope of the paper level.
-fn spread_of_centroid(
-    cells: &[Cellule],
-    mean: [f64; 2],
-    sum: f64,
-    noise: &PixelNoise,
-    ground: &Ground,
-    contrast: f64,
-) -> PixelCovariance {
+fn spread_of_centroid(cells: &[Cellule], mean: [f64; 2], sum: f64, noise: &PixelNoise, ground: &Ground, contrast: f64) -> PixelCovariance {
     let (mut xx, mut xy, mut yy, mut lever_x, mut lever_y) = (0.0, 0.0, 0.0, 0.0, 0.0);
     for c in cells {
         let (dx, dy) = (c.dx - mean[0], c.dy - mean[1]);

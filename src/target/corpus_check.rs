@@ -7,8 +7,8 @@ use crate::photo::{Light, Noise};
 
 /// The folder with the photos, or `None` (and a printed line) where it is absent.
 fn shared(what: &str) -> Option<PathBuf> {
-    let root = std::env::var_os("SPOTRULE_SHARED")
-        .map_or_else(|| PathBuf::from(env!("CARGO_MANIFEST_DIR")).join("../shared"), PathBuf::from);
+    let root =
+        std::env::var_os("SPOTRULE_SHARED").map_or_else(|| PathBuf::from(env!("CARGO_MANIFEST_DIR")).join("../shared"), PathBuf::from);
     let path = root.join(what);
     if path.exists() {
         return Some(path);
@@ -191,8 +191,17 @@ fn targets_of_known_truth() {
         let s = score(&reading, &truth);
         println!(
             "{name} {}x{} {:4} of {:4} wrong {} rms {:.4} u {:.4} pull {:.2} worst {:.1} radii {:.4} {:.4} {took_ms:.0} ms",
-            truth.size[0], truth.size[1], s.found, truth.expected_inside, s.wrong, s.rms_px, s.mean_u_px, s.pull_rms, s.worst_pull,
-            reading.dot_radius_pitches, reading.mark_radius_pitches
+            truth.size[0],
+            truth.size[1],
+            s.found,
+            truth.expected_inside,
+            s.wrong,
+            s.rms_px,
+            s.mean_u_px,
+            s.pull_rms,
+            s.worst_pull,
+            reading.dot_radius_pitches,
+            reading.mark_radius_pitches
         );
         if s.wrong > 0 || s.found * 100 < truth.expected_inside * 95 || !(0.3..1.5).contains(&s.pull_rms) {
             failures.push(format!("{name}: wrong {}, found {} of {}, pull {}", s.wrong, s.found, truth.expected_inside, s.pull_rms));

@@ -5,7 +5,9 @@
 #[non_exhaustive]
 pub enum TargetError {
     /// The plane of light is too small or does not hold the samples that its size promises.
-    #[error("the target photo is {width} x {height} px with {samples} samples: too small or incomplete; at least {needed_px} px on each side are needed")]
+    #[error(
+        "the target photo is {width} x {height} px with {samples} samples: too small or incomplete; at least {needed_px} px on each side are needed"
+    )]
     PhotoTooSmall {
         /// Width, px.
         width: usize,

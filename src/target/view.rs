@@ -119,11 +119,8 @@ impl View {
     /// Robust standard deviation of the residuals in units of their stated uncertainty (1.4826 × median
     /// absolute value; the fitted parameters are allowed for).
     pub(super) fn scatter(&self, seen: &[Seen]) -> f64 {
-        let mut sizes: Vec<f64> = seen
-            .iter()
-            .flat_map(|dot| self.residual_px(dot).map(|r| (r / dot.u_px).abs()))
-            .filter(|v| v.is_finite())
-            .collect();
+        let mut sizes: Vec<f64> =
+            seen.iter().flat_map(|dot| self.residual_px(dot).map(|r| (r / dot.u_px).abs())).filter(|v| v.is_finite()).collect();
         let spare = (2.0 * super::paper::small_f64(seen.len()) - 12.0).max(2.0);
         1.4826 * super::median(&mut sizes).unwrap_or(0.0) * (2.0 * super::paper::small_f64(seen.len()) / spare).sqrt()
     }
