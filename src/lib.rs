@@ -9,7 +9,7 @@
 
 pub mod bench;
 pub mod budget;
-//pub mod cli;
+pub mod cli;
 pub mod error;
 pub mod fit;
 pub mod frames;

@@ -3,13 +3,18 @@
 //! Start reading at [`least_squares()`].
 
 pub mod finite_difference;
+pub mod gum;
 pub mod least_squares;
 pub mod normal_inverse;
+pub mod robust;
 pub mod rotation;
 pub mod singular_values;
+pub mod statistics;
+pub mod variance_split;
 
 pub use least_squares::{Ending, LeastSquaresError, Options, Problem, Solution, least_squares};
 pub use normal_inverse::NormalInverse;
+pub use variance_split::VarianceSplit;
 
 /// A count as a number; exact below 2^53, which no count of ours reaches.
 #[must_use]

@@ -95,7 +95,7 @@ fn unscaled_inverse(singular: &RightSingular, rank: usize, column_scales: &DVect
 mod tests {
     use super::*;
 
-    /// A 2x2 case by hand: JᵀJ = [[2, 1], [1, 2]], inverse = [[2, -1], [-1, 2]] / 3.
+    /// A 2x2 case by hand: `JᵀJ = [[2, 1], [1, 2]]`, its inverse `[[2, -1], [-1, 2]] / 3`.
     #[test]
     fn inverse_by_hand_in_two_unit_scales() {
         let j = DMatrix::from_row_slice(3, 2, &[1.0, 0.0, 0.0, 1.0, 1.0, 1.0]);

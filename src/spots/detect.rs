@@ -110,7 +110,8 @@ impl Grid {
     pub(super) fn near(&self, x_px: f64, y_px: f64, reach_px: f64) -> impl Iterator<Item = usize> {
         let span = |at: f64, count: usize| bucket(at - reach_px).min(count - 1)..=bucket(at + reach_px).min(count - 1);
         let columns = span(x_px, self.columns);
-        span(y_px, self.rows).flat_map(move |row| columns.clone().flat_map(move |column| self.buckets[row * self.columns + column].iter().copied()))
+        span(y_px, self.rows)
+            .flat_map(move |row| columns.clone().flat_map(move |column| self.buckets[row * self.columns + column].iter().copied()))
     }
 }
 

@@ -108,8 +108,17 @@ impl Profile {
         let bell = (-0.5 * (px * dx + py * dy)).exp();
         let spot = self.height * bell;
         let value = spot + self.background + self.slope[0] * cell.x_px + self.slope[1] * cell.y_px;
-        let gradient =
-            Vector::from([bell, spot * px, spot * py, -0.5 * spot * dx * dx, -spot * dx * dy, -0.5 * spot * dy * dy, 1.0, cell.x_px, cell.y_px]);
+        let gradient = Vector::from([
+            bell,
+            spot * px,
+            spot * py,
+            -0.5 * spot * dx * dx,
+            -spot * dx * dy,
+            -0.5 * spot * dy * dy,
+            1.0,
+            cell.x_px,
+            cell.y_px,
+        ]);
         (value, spot, gradient)
     }
 }

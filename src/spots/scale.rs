@@ -71,7 +71,10 @@ impl Level {
         if self.width < 3 || self.height < 3 {
             return Vec::new();
         }
-        (1..self.height - 1).into_par_iter().flat_map_iter(|y| (1..self.width - 1).filter_map(move |x| self.peak_at(x, y, threshold, floor))).collect()
+        (1..self.height - 1)
+            .into_par_iter()
+            .flat_map_iter(|y| (1..self.width - 1).filter_map(move |x| self.peak_at(x, y, threshold, floor)))
+            .collect()
     }
 
     fn peak_at(&self, x: usize, y: usize, threshold: f64, floor: &impl Fn(f64) -> f64) -> Option<Peak> {
