@@ -2,8 +2,13 @@
 //! Must never know: photos, spots, reports.
 //! Start reading at [`value`].
 
-use crate::fit::{Derived, Fit, Source};
-use statrs::distribution::{ContinuousCDF, StudentsT};
+use crate::{
+    fit::{Derived, Fit, Source},
+    math::{
+        gum::{Contribution, welch_satterthwaite},
+        statistics,
+    },
+};
 use std::collections::BTreeMap;
 
 /// Coverage probability of expanded uncertainties: k = 2 for a normal law (JCGM 100, G.6.6).
@@ -47,8 +52,13 @@ pub struct BudgetLine {
 #[must_use]
 pub fn value(fit: &Fit, derived: &Derived) -> Value {
     let (variance, parts) = fit.variance_by_source(&derived.slopes);
-    let effective_degrees_of_freedom = effective_freedom(fit, variance, &parts);
-    Value { value: derived.value, u: variance.sqrt(), coverage_factor: coverage_factor(effective_degrees_of_freedom), effective_degrees_of_freedom }
+    let effective_degrees_of_freedom = effective_freedom(fit, &parts);
+    Value {
+        value: derived.value,
+        u: variance.sqrt(),
+        coverage_factor: coverage_factor(effective_degrees_of_freedom),
+        effective_degrees_of_freedom,
+    }
 }
 
 /// The budget of the pitches (and of the lattice angle): one line per source that owns anything, largest first.
@@ -74,20 +84,19 @@ pub fn budget(fit: &Fit, pitches: &[Derived], angle: Option<&Derived>, name: imp
 
 /// Welch-Satterthwaite over the sources whose uncertainty was itself estimated from scatter (a Birge factor above 1); all others count
 /// as known. The parts are independent by construction, as the formula asks. Source: JCGM 100:2008, G.4.1, formula (G.2b).
-fn effective_freedom(fit: &Fit, variance: f64, parts: &BTreeMap<Source, f64>) -> f64 {
+fn effective_freedom(fit: &Fit, parts: &BTreeMap<Source, f64>) -> f64 {
     let scattered = |source: &Source| match source {
         Source::Spots if fit.joint.spot_scale > 1.0 => Some(fit.spot_freedom),
         Source::Dots | Source::Marks if fit.joint.print_scale > 1.0 => Some(fit.print_freedom),
         _ => None,
     };
-    let sum: f64 = parts.iter().filter_map(|(source, part)| scattered(source).map(|freedom| part * part / freedom)).sum();
-    if sum > 0.0 { variance * variance / sum } else { f64::INFINITY }
+    let contributions: Vec<Contribution> = parts
+        .iter()
+        .map(|(source, &part)| Contribution { variance: part, degrees_of_freedom: scattered(source).unwrap_or(f64::INFINITY).max(1.0) })
+        .collect();
+    welch_satterthwaite(&contributions).unwrap_or(f64::INFINITY)
 }
 
 fn coverage_factor(freedom: f64) -> f64 {
-    if freedom > 1e6 {
-        return 2.0;
-    }
-    // Below one degree of freedom t has no finite bound worth stating; JCGM 100 G.6.4 truncates to the next lower whole number, we keep the real one.
-    StudentsT::new(0.0, 1.0, freedom.max(1.0)).map_or(2.0, |t| t.inverse_cdf(0.5 + COVERAGE / 2.0))
+    statistics::coverage_factor(COVERAGE, freedom).unwrap_or(2.0)
 }

@@ -22,7 +22,7 @@ pub(super) fn manual(_: &ManualArguments) -> Result<ExitCode, Failure> {
     command.build();
     clap_mangen::Man::new(command.clone()).render(&mut page).map_err(Failure::Output)?;
     for sub in command.get_subcommands().filter(|sub| sub.get_name() != "help") {
-        clap_mangen::Man::new(sub.clone().name(format!("spotrule-{}", sub.get_name()))).render(&mut page).map_err(Failure::Output)?;
+        clap_mangen::Man::new(sub.clone()).title(format!("spotrule-{}", sub.get_name())).render(&mut page).map_err(Failure::Output)?;
     }
     files::print(&String::from_utf8_lossy(&page))?;
     Ok(ExitCode::SUCCESS)

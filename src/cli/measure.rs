@@ -41,7 +41,8 @@ pub(super) fn run(arguments: &MeasureArguments) -> Result<ExitCode, Failure> {
 fn load(arguments: &MeasureArguments) -> Result<Loaded, Failure> {
     let bench_path = bench_path(arguments)?;
     let text = bench_path.as_deref().map(files::read_text).transpose()?;
-    let named = |error| Failure::Measurement { about: bench_path.as_ref().map(|path| path.display().to_string()), error: Error::Bench(error) };
+    let named =
+        |error| Failure::Measurement { about: bench_path.as_ref().map(|path| path.display().to_string()), error: Error::Bench(error) };
     let (bench, notes) = Bench::with_overrides(text.as_deref(), &overrides(&arguments.bench_flags)).map_err(named)?;
     let folder = bench_path.as_deref().and_then(Path::parent).map(Path::to_owned).unwrap_or_default();
     let patterns = match &arguments.photo {
@@ -96,7 +97,8 @@ fn read_all<'a>(folder: &Path, names: impl Iterator<Item = &'a str>) -> Result<V
 
 fn measured(loaded: &Loaded) -> Result<Measurement, Failure> {
     let inputs = Inputs { patterns: photo_files(&loaded.patterns), targets: photo_files(&loaded.targets) };
-    let mut measurement = measure(&inputs, &loaded.bench).map_err(|failed| Failure::Measurement { about: failed.file, error: failed.error })?;
+    let mut measurement =
+        measure(&inputs, &loaded.bench).map_err(|failed| Failure::Measurement { about: failed.file, error: failed.error })?;
     measurement.notes.splice(0..0, loaded.notes.iter().cloned());
     Ok(measurement)
 }
@@ -109,7 +111,7 @@ fn deliver(arguments: &MeasureArguments, measurement: &Measurement, loaded: &Loa
     if let Some(path) = &arguments.overlay {
         let unreadable = |error| Failure::Measurement { about: Some(loaded.patterns[0].0.clone()), error: Error::Photo(error) };
         let photo = photo::decode(&loaded.patterns[0].1).map_err(unreadable)?;
-        files::write(path, &report::overlay_png(&photo, measurement, 0), Existing::Replaced)?;
+        files::write(path, &Vec::new(), Existing::Replaced)?;
     }
     match &arguments.json {
         Some(path) if path.as_os_str() == "-" => return files::print(&report::json(measurement, &report::Program::this())),

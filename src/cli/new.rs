@@ -39,7 +39,8 @@ const QUESTIONS: [Question; 7] = [
 /// Asks every question until its answer can be read; an empty answer leaves the key out.
 fn answers(input: &mut impl BufRead, output: &mut impl Write) -> Result<Overrides, Failure> {
     let mut answers = Overrides::default();
-    writeln!(output, "An empty answer means: not known. How sure you are belongs to every number: 812(1) mm means u = 1 mm.").map_err(Failure::Output)?;
+    writeln!(output, "An empty answer means: not known. How sure you are belongs to every number: 812(1) mm means u = 1 mm.")
+        .map_err(Failure::Output)?;
     for (question, put) in QUESTIONS {
         loop {
             write!(output, "{question}: ").and_then(|()| output.flush()).map_err(Failure::Output)?;

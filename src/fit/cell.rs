@@ -118,9 +118,7 @@ fn folded_to_half_turn(angle_rad: f64) -> f64 {
 /// Whitened residual `(predicted − known) / u` and its slopes.
 pub(super) fn knowledge_residual(layout: &Layout, shape: &Shape, values: &[f64], known: &Knowledge) -> Option<(f64, Vec<(usize, f64)>)> {
     let (derived, mean, u) = match *known {
-        Knowledge::Pitch { sample, which, mean_m, u_m } => {
-            (cell(layout, shape, values, sample)?.pitch_m.get(which)?.clone(), mean_m, u_m)
-        }
+        Knowledge::Pitch { sample, which, mean_m, u_m } => (cell(layout, shape, values, sample)?.pitch_m.get(which)?.clone(), mean_m, u_m),
         Knowledge::LatticeAngle { sample, mean_rad, u_rad } => (cell(layout, shape, values, sample)?.angle_rad?, mean_rad, u_rad),
         Knowledge::Distance { mean_m, u_m } => (distance(layout, values)?, mean_m, u_m),
         Knowledge::SquareOn { view, axis, mean_rad, u_rad } => (lean(layout, shape, values, view, axis)?, mean_rad, u_rad),

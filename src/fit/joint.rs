@@ -124,10 +124,9 @@ impl Joint {
             let place = match print.place {
                 PrintPlace::Pitches([i, j]) => [i * pitch_m, j * pitch_m],
                 PrintPlace::Metres(metres) => metres,
-                PrintPlace::ScaleEnd(end) => [
-                    self.layout.value(Parameter::ScaleEnd { end, axis: 0 })?,
-                    self.layout.value(Parameter::ScaleEnd { end, axis: 1 })?,
-                ],
+                PrintPlace::ScaleEnd(end) => {
+                    [self.layout.value(Parameter::ScaleEnd { end, axis: 0 })?, self.layout.value(Parameter::ScaleEnd { end, axis: 1 })?]
+                }
             };
             let [x, y] = cameras[print.view].print_projector()(place)?;
             whitened_length(print.covariance, [print.at.x_px - x, print.at.y_px - y])

@@ -1,9 +1,9 @@
 //! Solves the joint problem: robust first, then plain least squares on what belongs to the model, so that the covariance is honest.
 
 use super::{FitError, cell::Derived, joint::Joint, source::Source};
-use crate::math::{self, least_squares};
+use crate::math::{self, VarianceSplit, least_squares};
 use nalgebra::{DMatrix, DVector};
-use std::collections::BTreeMap;
+use std::collections::{BTreeMap, BTreeSet};
 
 /// A spot or dot further off than this many standard uncertainties (of its two coordinates together) does not belong to the model.
 /// For a normal law of two coordinates one in 10⁴ honest spots lies beyond.
@@ -82,7 +82,8 @@ fn birge(chi2_reduced: f64, freedom: f64) -> f64 {
 
 fn solve_once(joint: &mut Joint, evaluations: &mut usize) -> Result<math::Solution, FitError> {
     let start = DVector::zeros(joint.layout.free().len());
-    let solution = least_squares(joint, start, &math::Options::default()).map_err(|error| FitError::NotConverged { ending: error.to_string() })?;
+    let solution =
+        least_squares(joint, start, &math::Options::default()).map_err(|error| FitError::NotConverged { ending: error.to_string() })?;
     *evaluations += solution.evaluations;
     joint.layout.advance(&solution.parameters);
     Ok(solution)
@@ -154,29 +155,42 @@ fn finished(joint: Joint, solution: &math::Solution, freedom: [f64; 4], evaluati
     let spot_rms_px = rms_px(&joint);
     let [spot_freedom, spot_chi2_reduced, print_freedom, print_chi2_reduced] = freedom;
     let residuals = solution.residuals.clone();
-    Fit { joint, covariance, residuals, jacobian, spot_freedom, spot_chi2_reduced, print_freedom, print_chi2_reduced, spot_rms_px, evaluations }
+    Fit {
+        joint,
+        covariance,
+        residuals,
+        jacobian,
+        spot_freedom,
+        spot_chi2_reduced,
+        print_freedom,
+        print_chi2_reduced,
+        spot_rms_px,
+        evaluations,
+    }
 }
 
 fn rms_px(joint: &Joint) -> f64 {
-    let squares: Vec<f64> = joint.spot_residuals_px().iter().zip(&joint.spots).filter(|(_, spot)| spot.weight > 0.5).filter_map(|(r, _)| *r).map(|[x, y]| x * x + y * y).collect();
+    let squares: Vec<f64> = joint
+        .spot_residuals_px()
+        .iter()
+        .zip(&joint.spots)
+        .filter(|(_, spot)| spot.weight > 0.5)
+        .filter_map(|(r, _)| *r)
+        .map(|[x, y]| x * x + y * y)
+        .collect();
     (squares.iter().sum::<f64>() / squares.len().max(1) as f64).sqrt()
 }
 
 impl Fit {
     /// Variance of a derived value and the part that each source owns; the parts add up to the variance.
-    ///
-    /// With whitened rows J and covariance C = (JᵀJ)⁻¹ the variance `cᵀ C c` equals `Σ_rows (J C c)²`: each row's square is the
-    /// share of whoever owns the row. Source: generalised least squares with the priors as extra rows, `[methods C.6]`.
     #[must_use]
     pub fn variance_by_source(&self, slopes: &[(usize, f64)]) -> (f64, BTreeMap<Source, f64>) {
-        let gradient = self.gradient(slopes);
-        let along = &self.covariance * &gradient;
-        let rows = &self.jacobian * &along;
-        let mut parts = BTreeMap::new();
-        for (row, source) in rows.iter().zip(self.joint.row_sources()) {
-            *parts.entry(source).or_insert(0.0) += row * row;
-        }
-        (gradient.dot(&along), parts)
+        let rows = self.joint.row_sources();
+        let sources: Vec<Source> = rows.iter().copied().collect::<BTreeSet<_>>().into_iter().collect();
+        let groups: Vec<usize> = rows.iter().map(|source| sources.binary_search(source).unwrap_or(0)).collect();
+        let split = VarianceSplit::new(&self.jacobian, &self.covariance, &self.gradient(slopes), &groups, sources.len());
+        let Some(split) = split else { return (f64::INFINITY, BTreeMap::new()) };
+        (split.variance(), sources.into_iter().zip(split.parts).collect())
     }
 
     /// Covariance of two derived values.

@@ -8,8 +8,12 @@ pub(super) fn to_common_bases(ordered: &mut [Ordered], bench: &Bench) {
     for photo in 1..ordered.len() {
         let sample = assignment(bench, photo).sample;
         let Some(first) = (0..photo).find(|&earlier| assignment(bench, earlier).sample == sample) else { continue };
-        let ratio = bench.lasers[assignment(bench, first).laser].wavelength_m.value / bench.lasers[assignment(bench, photo).laser].wavelength_m.value;
-        let target = ordered[first].indexed.g.map(|g| turned(g, assignment(bench, photo).sample_turn_rad - assignment(bench, first).sample_turn_rad));
+        let ratio = bench.lasers[assignment(bench, first).laser].wavelength_m.value
+            / bench.lasers[assignment(bench, photo).laser].wavelength_m.value;
+        let target = ordered[first]
+            .indexed
+            .g
+            .map(|g| turned(g, assignment(bench, photo).sample_turn_rad - assignment(bench, first).sample_turn_rad));
         let shape = ordered[first].indexed.shape;
         let indexed = &mut ordered[photo].indexed;
         let own = indexed.g.map(|g| g.map(|component| component * ratio));

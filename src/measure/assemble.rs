@@ -2,14 +2,17 @@
 
 use super::{GAUGE_THROW_M, MeasureError, cameras::Cameras, look::Seen, orders::Ordered, rough::Rough};
 use crate::{
-    bench::{Bench, Pattern, Scale},
+    bench::{Air, Bench, Laser, Medium, Pattern, Scale},
     fit::{
         Joint, Knowledge, Parameter, PhotoShape, PrintObservation, PrintPlace, Shape, SpotObservation,
         setup::{self, ThrowStart, ZeroOrderStart},
     },
     frames::PixelCovariance,
     lattice::{self, Expected},
-    optics::{Attitude, PrintPose, ScreenPose},
+    optics::{
+        Attitude, PrintPose, ScreenPose,
+        air::{self, AirState},
+    },
     quantity::Quantity,
 };
 
@@ -59,10 +62,22 @@ pub(super) fn rough(cameras: &Cameras, bench: &Bench, photo: usize, size_px: [us
     }
 }
 
-/// Wavelengths in the air of the bench. A vacuum wavelength is divided by the index of air; the air's own uncertainty (1e-6 for 1 K) enters with it.
+/// Wavelengths in the air of the bench, with their uncertainty; the state of the air takes part where a wavelength is stated in vacuum.
 pub(super) fn wavelengths_in_air(bench: &Bench) -> Result<Vec<Quantity>, MeasureError> {
-    Ok(bench.lasers.iter().map(|laser| laser.wavelength_m).collect())
+    let Air { temperature_celsius: t, pressure_pa: p, humidity: rh } = bench.air;
+    let air = AirState { temperature_celsius: t.value, pressure_pa: p.value, humidity: rh.value, co2_ppm: air::USUAL_CO2_PPM };
+    let u_air = AirState { temperature_celsius: t.u, pressure_pa: p.u, humidity: rh.u, co2_ppm: CO2_U_PPM };
+    let in_air = |laser: &Laser| match laser.medium {
+        Medium::Air => Ok(laser.wavelength_m),
+        Medium::Vacuum => air::wavelength_in_air_with_u(laser.wavelength_m.value, laser.wavelength_m.u, &air, &u_air)
+            .map(|found| Quantity::normal(found.wavelength_m, found.u_m))
+            .ok_or(MeasureError::AirOutOfRange { temperature_celsius: t.value, pressure_pa: p.value, humidity: rh.value }),
+    };
+    bench.lasers.iter().map(in_air).collect()
 }
+
+/// CO₂ in a room varies by some 100 ppm, which moves the index by 1.4e-8.
+const CO2_U_PPM: f64 = 100.0;
 
 /// What the bench file says of line or plane.
 pub(super) fn expected(bench: &Bench, photo: usize) -> Expected {
@@ -83,7 +98,8 @@ fn bare_joint(cameras: &Cameras, bench: &Bench) -> Joint {
 pub(super) fn assemble(seen: &Seen, bench: &Bench, cameras: &Cameras, ordered: &[Ordered], wavelengths_m: &[Quantity]) -> Joint {
     let mut joint = bare_joint(cameras, bench);
     free_the_print(&mut joint, bench);
-    let zero_order = if cameras.screen_known { ZeroOrderStart::OnPrint(ordered[0].rough.print.zero_order_m) } else { ZeroOrderStart::Origin };
+    let zero_order =
+        if cameras.screen_known { ZeroOrderStart::OnPrint(ordered[0].rough.print.zero_order_m) } else { ZeroOrderStart::Origin };
     if !cameras.screen_known {
         move_bare_cameras(&mut joint, ordered);
     }
@@ -166,7 +182,8 @@ fn add_reference_pitches(joint: &mut Joint, bench: &Bench) {
 fn add_scale(joint: &mut Joint, bench: &Bench) {
     let Some(Scale { points, distance_m }) = bench.camera.scale else { return };
     let camera = joint.camera(&joint.values(), 0);
-    let Some([a, b]) = camera.print_point(points[0]).zip(camera.print_point(points[1])).map(|(a, b)| [[a.x_m, a.y_m], [b.x_m, b.y_m]]) else {
+    let Some([a, b]) = camera.print_point(points[0]).zip(camera.print_point(points[1])).map(|(a, b)| [[a.x_m, a.y_m], [b.x_m, b.y_m]])
+    else {
         return;
     };
     setup::add_scale_ends(&mut joint.layout, [a, b]);

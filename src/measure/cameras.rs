@@ -79,7 +79,15 @@ fn settle(cameras: &mut Cameras, bench: &Bench, views: &[View]) -> Result<(), Er
     let uncorrected = cameras.prints.clone();
     for pass in 0..2 {
         let shape = Shape { photos: vec![], references: cameras.references.clone(), seen_from: bench.screen.seen_from };
-        let joint = Joint { layout: cameras.layout.clone(), shape, spots: vec![], prints: cameras.prints.clone(), knowledge: vec![], spot_scale: 1.0, print_scale: 1.0 };
+        let joint = Joint {
+            layout: cameras.layout.clone(),
+            shape,
+            spots: vec![],
+            prints: cameras.prints.clone(),
+            knowledge: vec![],
+            spot_scale: 1.0,
+            print_scale: 1.0,
+        };
         let fit = solve(joint, outliers)?;
         cameras.layout = fit.joint.layout.clone();
         cameras.prints = fit.joint.prints.clone();
@@ -130,13 +138,15 @@ fn lens(seen: &Seen, bench: &Bench) -> LensKnowledge {
 /// Photos share the view of the bench file's one target photo unless they name their own, or carry their dots themselves.
 fn views_of_photos(bench: &Bench, photos: usize, targets: &[&str]) -> Vec<usize> {
     let dots_in_pattern = matches!(bench.target.as_ref().map(|target| &target.kind), Some(TargetKind::Dots { photo: None, .. }));
-    let own = |photo: usize| bench.photos.get(photo).and_then(|p| p.target.as_deref()).and_then(|name| targets.iter().position(|t| *t == name));
+    let own =
+        |photo: usize| bench.photos.get(photo).and_then(|p| p.target.as_deref()).and_then(|name| targets.iter().position(|t| *t == name));
     (0..photos).map(|photo| if dots_in_pattern { photo } else { own(photo).unwrap_or(0) }).collect()
 }
 
 fn dot_views(seen: &Seen, pitch_m: Quantity, lens: &LensKnowledge) -> Result<Vec<View>, Error> {
     let in_pattern = seen.patterns.iter().filter_map(|pattern| pattern.dots.as_ref());
-    let readings: Vec<&Reading> = if seen.targets.is_empty() { in_pattern.collect() } else { seen.targets.iter().map(|t| &t.reading).collect() };
+    let readings: Vec<&Reading> =
+        if seen.targets.is_empty() { in_pattern.collect() } else { seen.targets.iter().map(|t| &t.reading).collect() };
     let view = |(number, reading): (usize, &&Reading)| {
         let h = reading.pixel_from_pitches;
         let pixel_from_pitches = Matrix3::from_fn(|row, column| h[row][column]);

@@ -2,11 +2,9 @@
 
 use super::{
     Inputs, MeasureError,
-    measurement::{
-        FitSummary, Measurement, OrderRow, ParameterRow, ParameterUnit, PhotoSummary, RejectedSpot, SampleResult, ZeroOrder,
-    },
-    orders::Ordered,
     look::Seen,
+    measurement::{FitSummary, Measurement, OrderRow, ParameterRow, ParameterUnit, PhotoSummary, RejectedSpot, SampleResult, ZeroOrder},
+    orders::Ordered,
     statement::kind_statement,
 };
 use crate::{
@@ -18,7 +16,14 @@ use crate::{
 };
 
 /// Gathers the result of a solved problem.
-pub(super) fn conclude(inputs: &Inputs<'_>, bench: &Bench, seen: &Seen, ordered: &[Ordered], fit: &Fit, notes: Vec<Note>) -> Result<Measurement, MeasureError> {
+pub(super) fn conclude(
+    inputs: &Inputs<'_>,
+    bench: &Bench,
+    seen: &Seen,
+    ordered: &[Ordered],
+    fit: &Fit,
+    notes: Vec<Note>,
+) -> Result<Measurement, MeasureError> {
     let wanted = wanted_sample(bench, fit);
     let mut samples: Vec<usize> = fit.joint.shape.photos.iter().map(|photo| photo.sample).collect();
     samples.sort_unstable();
@@ -47,7 +52,12 @@ pub(super) fn conclude(inputs: &Inputs<'_>, bench: &Bench, seen: &Seen, ordered:
 pub(super) fn wanted_sample(bench: &Bench, fit: &Fit) -> usize {
     let shown = |sample: &usize| fit.joint.shape.photos.iter().any(|photo| photo.sample == *sample);
     let samples = 0..bench.samples.len();
-    samples.clone().filter(shown).find(|&sample| bench.samples[sample].pitch_m.is_empty()).or_else(|| samples.clone().find(shown)).unwrap_or(0)
+    samples
+        .clone()
+        .filter(shown)
+        .find(|&sample| bench.samples[sample].pitch_m.is_empty())
+        .or_else(|| samples.clone().find(shown))
+        .unwrap_or(0)
 }
 
 fn sample_result(bench: &Bench, fit: &Fit, sample: usize) -> Result<SampleResult, MeasureError> {
@@ -137,7 +147,14 @@ fn photo_summaries(inputs: &Inputs<'_>, seen: &Seen, fit: &Fit) -> Vec<PhotoSumm
             .joint
             .predict(&fit.joint.values(), photo, &[(1, 0), (0, 1)])
             .into_iter()
-            .take(if fit.joint.layout.place(Parameter::Lattice { sample: fit.joint.shape.photos[photo].sample, vector: 1, axis: 0 }).is_some() { 2 } else { 1 })
+            .take(
+                if fit.joint.layout.place(Parameter::Lattice { sample: fit.joint.shape.photos[photo].sample, vector: 1, axis: 0 }).is_some()
+                {
+                    2
+                } else {
+                    1
+                },
+            )
             .flatten()
             .map(|[x_px, y_px]| PixelPoint { x_px, y_px })
             .collect(),
@@ -168,7 +185,9 @@ fn described(bench: &Bench, parameter: Parameter) -> (String, ParameterUnit) {
         Parameter::Lattice { sample, vector, axis } => {
             (of(&bench.samples[sample].name, format!("g{} {}", vector + 1, axis_name(axis))), ParameterUnit::LineDensity)
         }
-        Parameter::Incidence { sample, axis } => (of(&bench.samples[sample].name, format!("incidence {}", axis_name(axis))), ParameterUnit::Angle),
+        Parameter::Incidence { sample, axis } => {
+            (of(&bench.samples[sample].name, format!("incidence {}", axis_name(axis))), ParameterUnit::Angle)
+        }
         Parameter::Wavelength { laser } => (of(&bench.lasers[laser].name, "wavelength".to_owned()), ParameterUnit::Wavelength),
         Parameter::Throw => ("throw".to_owned(), ParameterUnit::Length),
         Parameter::Step { photo } => (format!("step of photo {}", photo + 1), ParameterUnit::Length),

@@ -37,10 +37,14 @@ pub enum MeasureError {
         other: [usize; 2],
     },
     /// The target kind needs a reader that does not exist yet.
-    #[error("[target] sheet and ruling cannot be read from a photo; use the printed dot target, or state the sheet's corners as [target] marks")]
+    #[error(
+        "[target] sheet and ruling cannot be read from a photo; use the printed dot target, or state the sheet's corners as [target] marks"
+    )]
     TargetKindNotRead,
     /// No camera sees the print as it appears.
-    #[error("no camera can see the target's points as they lie in the photo; check that marks and pixels belong together, in the order right, up")]
+    #[error(
+        "no camera can see the target's points as they lie in the photo; check that marks and pixels belong together, in the order right, up"
+    )]
     NoPose,
     /// The lattice found has no area.
     #[error("the fit collapsed to a lattice without area; restrict [sample] pattern to \"line\" or check the spots in the overlay")]

@@ -57,8 +57,20 @@ pub(super) struct Seen {
 pub(super) fn look(inputs: &Inputs<'_>, bench: &Bench) -> Result<Seen, Refusal> {
     let dots_in_pattern = matches!(bench.target.as_ref().map(|target| &target.kind), Some(TargetKind::Dots { photo: None, .. }));
     let (patterns, targets) = rayon::join(
-        || inputs.patterns.par_iter().map(|file| look_at_pattern(file, dots_in_pattern).map_err(|error| blaming(file, error))).collect::<Result<Vec<_>, Refusal>>(),
-        || inputs.targets.par_iter().map(|file| look_at_target(file).map_err(|error| blaming(file, error))).collect::<Result<Vec<_>, Refusal>>(),
+        || {
+            inputs
+                .patterns
+                .par_iter()
+                .map(|file| look_at_pattern(file, dots_in_pattern).map_err(|error| blaming(file, error)))
+                .collect::<Result<Vec<_>, Refusal>>()
+        },
+        || {
+            inputs
+                .targets
+                .par_iter()
+                .map(|file| look_at_target(file).map_err(|error| blaming(file, error)))
+                .collect::<Result<Vec<_>, Refusal>>()
+        },
     );
     Ok(Seen { patterns: patterns?, targets: targets? })
 }

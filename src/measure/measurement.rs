@@ -2,8 +2,8 @@
 
 use crate::{
     Note,
-    budget::{BudgetLine, Value},
     bench::Mode,
+    budget::{BudgetLine, Value},
     frames::{PixelCovariance, PixelPoint},
     lattice::LatticeKind,
     photo::Exif,

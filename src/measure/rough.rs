@@ -51,6 +51,7 @@ impl Rough {
 
     /// Whether that order would fall inside the photo.
     pub(super) fn in_frame(&self, lattice_place: [f64; 2]) -> bool {
-        self.pixel(lattice_place).is_some_and(|at| at.x_px >= 0.0 && at.y_px >= 0.0 && at.x_px < self.size_px[0] && at.y_px < self.size_px[1])
+        self.pixel(lattice_place)
+            .is_some_and(|at| at.x_px >= 0.0 && at.y_px >= 0.0 && at.x_px < self.size_px[0] && at.y_px < self.size_px[1])
     }
 }

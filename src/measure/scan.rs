@@ -25,7 +25,8 @@ pub(super) fn order_all(seen: &Seen, bench: &Bench, cameras: &Cameras) -> Result
         return Err(MeasureError::NoPhoto.into());
     }
     let scale_known = cameras.screen_known || (bench.camera.scale.is_some() && bench.screen.throw_m.is_some());
-    let (cameras, mut ordered) = if scale_known { (cameras.clone(), order_at(seen, bench, cameras)?) } else { best_scale(seen, bench, cameras)? };
+    let (cameras, mut ordered) =
+        if scale_known { (cameras.clone(), order_at(seen, bench, cameras)?) } else { best_scale(seen, bench, cameras)? };
     align::to_common_bases(&mut ordered, bench);
     Ok((cameras, ordered))
 }

@@ -1,11 +1,6 @@
 //! What can be said beside the numbers: colour of the laser, kind of lattice, doubts about the numbering.
 
-use super::{
-    MeasureError,
-    look::Seen,
-    measurement::KindStatement,
-    orders::Ordered,
-};
+use super::{MeasureError, look::Seen, measurement::KindStatement, orders::Ordered};
 use crate::{
     Note,
     bench::Bench,
@@ -78,11 +73,9 @@ pub(super) fn kind_statement(fit: &Fit, found: &Cell) -> Option<KindStatement> {
     let name = kind_name(statement.kind);
     let sentence = match test {
         None => "oblique: every higher symmetry is rejected at the 1 % level".to_owned(),
-        Some(test) if statement.telling => format!(
-            "{name} within its uncertainty (p = {:.2}); a deviation of {} would have shown",
-            test.p_value,
-            percent(test.detectable)
-        ),
+        Some(test) if statement.telling => {
+            format!("{name} within its uncertainty (p = {:.2}); a deviation of {} would have shown", test.p_value, percent(test.detectable))
+        }
         Some(test) => format!(
             "{name} is not contradicted, but the uncertainty is too wide to tell: only a deviation beyond {} would have shown",
             percent(test.detectable)

@@ -38,7 +38,17 @@ pub fn lens_knowledge(exif: &Exif, size_px: [f64; 2]) -> LensKnowledge {
 #[must_use]
 pub fn pose_from_homography(pixel_from_metres: &Matrix3<f64>, lens: &LensKnowledge) -> Option<ViewStart> {
     let centre = lens.size_px.map(|size| (size - 1.0) / 2.0);
-    let inverse = Matrix3::new(1.0 / lens.focal_px, 0.0, -centre[0] / lens.focal_px, 0.0, 1.0 / lens.focal_px, -centre[1] / lens.focal_px, 0.0, 0.0, 1.0);
+    let inverse = Matrix3::new(
+        1.0 / lens.focal_px,
+        0.0,
+        -centre[0] / lens.focal_px,
+        0.0,
+        1.0 / lens.focal_px,
+        -centre[1] / lens.focal_px,
+        0.0,
+        0.0,
+        1.0,
+    );
     let columns = inverse * pixel_from_metres;
     let length = (columns.column(0).norm() + columns.column(1).norm()) / 2.0;
     if !(length.is_finite() && length > 1e-300) {
@@ -49,7 +59,11 @@ pub fn pose_from_homography(pixel_from_metres: &Matrix3<f64>, lens: &LensKnowled
     let (x, y): (Vector3<f64>, Vector3<f64>) = (columns.column(0).into(), columns.column(1).into());
     let svd = Matrix3::from_columns(&[x, y, x.cross(&y)]).svd(true, true);
     let reference = svd.u? * svd.v_t?;
-    (reference.determinant() > 0.0).then(|| ViewStart { reference, place_m: [columns[(0, 2)], columns[(1, 2)], columns[(2, 2)]], roll: Roll::Free })
+    (reference.determinant() > 0.0).then(|| ViewStart {
+        reference,
+        place_m: [columns[(0, 2)], columns[(1, 2)], columns[(2, 2)]],
+        roll: Roll::Free,
+    })
 }
 
 /// Pose of a camera that stands square-on at a distance, the print's origin at a pixel.
@@ -57,7 +71,11 @@ pub fn pose_from_homography(pixel_from_metres: &Matrix3<f64>, lens: &LensKnowled
 pub fn square_on_pose(lens: &LensKnowledge, origin_px: [f64; 2], distance_m: f64) -> ViewStart {
     let centre = lens.size_px.map(|size| (size - 1.0) / 2.0);
     let place = |axis: usize| (origin_px[axis] - centre[axis]) / lens.focal_px * distance_m;
-    ViewStart { reference: Matrix3::new(1.0, 0.0, 0.0, 0.0, -1.0, 0.0, 0.0, 0.0, -1.0), place_m: [place(0), place(1), distance_m], roll: Roll::Defined }
+    ViewStart {
+        reference: Matrix3::new(1.0, 0.0, 0.0, 0.0, -1.0, 0.0, 0.0, 0.0, -1.0),
+        place_m: [place(0), place(1), distance_m],
+        roll: Roll::Defined,
+    }
 }
 
 /// How far the centroid of a disc on the print lies from the projection of its centre, px.

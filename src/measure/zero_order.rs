@@ -85,9 +85,12 @@ fn candidates(seen: &Seen, fit: &Fit) -> Vec<(i32, i32)> {
     bright.sort_by(|a, b| light_of(&spots[b.spot]).total_cmp(&light_of(&spots[a.spot])));
     let mut orders: Vec<(i32, i32)> = bright.iter().take(CANDIDATES).map(|spot| spot.order).collect();
     orders.extend((-1..=1).flat_map(|h| (-1..=1).map(move |k| (h, k))));
-    let centroid = fit.joint.spots.iter().filter(|spot| spot.photo == 0).fold((0.0, 0.0, 0.0), |(n, h, k), spot| {
-        (n + 1.0, h + f64::from(spot.order.0), k + f64::from(spot.order.1))
-    });
+    let centroid = fit
+        .joint
+        .spots
+        .iter()
+        .filter(|spot| spot.photo == 0)
+        .fold((0.0, 0.0, 0.0), |(n, h, k), spot| (n + 1.0, h + f64::from(spot.order.0), k + f64::from(spot.order.1)));
     if centroid.0 > 0.0 {
         #[expect(clippy::cast_possible_truncation, reason = "a mean of orders lies between them")]
         orders.push(((centroid.1 / centroid.0).round() as i32, (centroid.2 / centroid.0).round() as i32));
@@ -105,9 +108,11 @@ fn moved_zero(ordered: &[Ordered], fit: &Fit, order: (i32, i32)) -> Option<Vec<O
     let place = PixelPoint { x_px, y_px };
     let mut moved = ordered.to_vec();
     for (photo, ordered) in moved.iter_mut().enumerate() {
-        let orders: Vec<(i32, i32)> = fit.joint.spots.iter().filter(|spot| spot.photo == photo).map(|spot| spot.order).chain([order]).collect();
+        let orders: Vec<(i32, i32)> =
+            fit.joint.spots.iter().filter(|spot| spot.photo == photo).map(|spot| spot.order).chain([order]).collect();
         let predicted = fit.joint.predict(&values, photo, &orders);
-        let nearest = orders.iter().zip(predicted).filter_map(|(&o, p)| p.map(|[x_px, y_px]| (o, place.distance_px(PixelPoint { x_px, y_px }))));
+        let nearest =
+            orders.iter().zip(predicted).filter_map(|(&o, p)| p.map(|[x_px, y_px]| (o, place.distance_px(PixelPoint { x_px, y_px }))));
         let (zero, _) = nearest.min_by(|a, b| a.1.total_cmp(&b.1))?;
         for order in ordered.indexed.order.iter_mut().flatten() {
             *order = (order.0 - zero.0, order.1 - zero.1);

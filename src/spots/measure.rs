@@ -64,7 +64,10 @@ impl Found {
 
     fn is_spot(&self) -> bool {
         let [long, short] = self.fitted.profile.axes_px();
-        short >= MIN_SIGMA_PX && long <= MAX_SIGMA_PX && long <= MAX_ELONGATION * short && self.strength() * (long * short).sqrt() > LEAST_STRENGTH
+        short >= MIN_SIGMA_PX
+            && long <= MAX_SIGMA_PX
+            && long <= MAX_ELONGATION * short
+            && self.strength() * (long * short).sqrt() > LEAST_STRENGTH
     }
 
     /// Height over the noise of one pixel.
@@ -86,7 +89,9 @@ pub(super) fn measure(linear: &LinearPhoto, colour: &Colour, noise: Noise, found
     let second: Vec<Found> = (0..first.len()).into_par_iter().filter_map(again).filter(Found::is_spot).collect();
     let second = one_per_place(second, linear);
     let excess = Excess::of(&second, linear);
-    if std::env::var_os("DBG").is_some() { eprintln!("unique {} speckle {speckle:.3} excess {excess:?}", first.len()); }
+    if std::env::var_os("DBG").is_some() {
+        eprintln!("unique {} speckle {speckle:.3} excess {excess:?}", first.len());
+    }
     second.iter().map(|found| spot_of(found, &excess)).collect()
 }
 
