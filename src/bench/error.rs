@@ -101,6 +101,16 @@ pub enum BenchError {
         /// What was probably meant.
         advice: String,
     },
+    /// A vacuum wavelength where the index of air is not known.
+    #[error(
+        "{place}: {seen} in vacuum cannot be carried into air: the index is known from 300 nm to 1.7 um; state the wavelength in air (medium = \"air\")"
+    )]
+    NoIndexOfAir {
+        /// Where.
+        place: Place,
+        /// As written.
+        seen: String,
+    },
     /// A value outside the range in which it makes sense.
     #[error("{place}: {seen} is no {what}, which lies between {low} and {high}; check the number and the unit")]
     OutOfRange {

@@ -13,6 +13,8 @@ use crate::{
 
 const SHORTEST_M: f64 = 200e-9;
 const LONGEST_M: f64 = 2e-6;
+/// Where the refractive index of air is known.
+const VACUUM_M: std::ops::RangeInclusive<f64> = 300e-9..=1.7e-6;
 
 /// All lasers, in the order of the file.
 pub(super) fn read_lasers(root: &Table) -> Result<Vec<Laser>, BenchError> {
@@ -28,7 +30,13 @@ fn read_laser(name: String, section: &Section<'_>) -> Result<Laser, BenchError> 
         });
     };
     let medium = section.choice("medium", &[("air", Medium::Air), ("vacuum", Medium::Vacuum)])?.unwrap_or(Medium::Air);
-    Ok(Laser { name, wavelength_m: wavelength(stated)?, medium })
+    let place = stated.place.clone();
+    let text = stated.text.clone();
+    let wavelength_m = wavelength(stated)?;
+    if medium == Medium::Vacuum && !VACUUM_M.contains(&wavelength_m.value) {
+        return Err(BenchError::NoIndexOfAir { place, seen: text });
+    }
+    Ok(Laser { name, wavelength_m, medium })
 }
 
 fn wavelength(stated: Stated) -> Result<Quantity, BenchError> {

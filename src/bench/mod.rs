@@ -5,6 +5,7 @@
 mod camera;
 mod error;
 mod laser;
+mod laser_lines;
 mod overrides;
 mod photos;
 mod sample;
@@ -22,6 +23,7 @@ use crate::{
 };
 
 pub use error::{BenchError, Place};
+pub use laser_lines::{LaserLine, laser_lines};
 pub use overrides::Overrides;
 pub use sheet::SheetFormat;
 pub use template::{template, template_with};
@@ -251,6 +253,7 @@ impl Bench {
         section::Section::of(String::new(), root).allow_only(SECTIONS)?;
         let mut notes = Vec::new();
         let lasers = laser::read_lasers(root)?;
+        notes.extend(lasers.iter().filter_map(laser_lines::wrong_medium));
         let air = laser::read_air(root, &lasers, &mut notes)?;
         let samples = sample::read_samples(root)?;
         let screen = screen::read_screen(root)?;

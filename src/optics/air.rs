@@ -40,7 +40,8 @@ pub struct AirWavelength {
 /// Phase refractive index of air.
 ///
 /// Densities of dry air and of water vapour, each from the BIPM 1981/91 equation of density, scale the refractivities
-/// that were measured at reference states: n - 1 = (ρ_a/ρ_axs)(n_axs - 1) + (ρ_w/ρ_ws)(n_ws - 1).
+/// that were measured at reference states: `n - 1 = (ρ_a/ρ_axs)(n_axs - 1) + (ρ_w/ρ_ws)(n_ws - 1)`,
+/// a for dry air and w for vapour here, axs and ws for each at its reference state.
 ///
 /// - `wavelength_vacuum_m`: vacuum wavelength, m, within [`WAVELENGTH_RANGE_M`]
 /// - `air`: its state, within the ranges given at [`AirState`]
@@ -50,7 +51,7 @@ pub struct AirWavelength {
 /// `None` outside the ranges, for numbers that are not finite, and where the vapour would exceed the pressure.
 ///
 /// Holds to about 2e-8 (k=1) in the visible. Agrees with the published points of Ciddor's tables 1 and 3 to 1.5e-9
-/// and with those of Stone & Zimmerman to 1e-9 (`every_published_point`); saturation pressure over water is that of the BIPM
+/// and with those of Stone & Zimmerman to 6e-10 (`every_published_point`); saturation pressure over water is that of the BIPM
 /// equation, over ice that of IAPWS.
 ///
 /// Source: P. E. Ciddor, Applied Optics 35 (1996) 1566, eqs. (1) to (5) and appendices A to C.
@@ -79,7 +80,7 @@ pub fn wavelength_in_air<D: DualNum<f64> + Copy>(wavelength_vacuum_m: D, air: &A
 /// Wavelength in air with its standard uncertainty.
 ///
 /// `wavelength_vacuum_m` and `air` are the estimates, `u_wavelength_m` and `u_air` their standard uncertainties, taken as
-/// independent: u² = Σ (∂λ/∂x_i)² u_i² + (λ · [`EQUATION_U`])² (JCGM 100:2008, eq. 10); derivatives by dual numbers.
+/// independent: `u² = Σ (∂λ/∂x)² u(x)² + (λ u_eq)²` with [`EQUATION_U`] (JCGM 100:2008, eq. 10); derivatives by dual numbers.
 ///
 /// `None` as for [`refractive_index`], and for an uncertainty that is negative or not finite.
 ///
