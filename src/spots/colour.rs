@@ -3,7 +3,7 @@
 use nalgebra::{Matrix3, Vector3};
 
 use super::scale::{Level, Peak};
-use crate::photo::{HalfPlanes, Plane};
+use crate::photo::HalfPlanes;
 
 /// Share of the channels' own variance that is added before the inversion, so that no weight rests on a rounding error.
 const LOADING: f64 = 0.1;
@@ -29,21 +29,15 @@ pub(super) struct Colour {
 
 /// Colour of the spots in the photo, and the weights that show them best.
 ///
-/// Colour: the response of the matched filter at cells of 4 and 8 px, summed over the strong peaks that clip nowhere.
+/// Colour: the response of the matched filter at cells of 4 px, summed over the strong peaks that clip nowhere.
 pub(super) fn of_spots(half: &HalfPlanes) -> Colour {
     if half.planes.len() < 3 {
         return Colour { share: [0.0; 3], weights: [1.0, 0.0, 0.0], main: 0 };
     }
-    let levels = |planes: &[Plane], cell_px| planes.iter().map(|plane| Level::of(plane, cell_px)).collect::<Vec<_>>();
-    let fine: Vec<Plane> = half.planes.iter().map(Plane::halved).collect();
-    let coarse: Vec<Plane> = fine.iter().map(Plane::halved).collect();
-    let (fine, coarse) = (levels(&fine, 4.0), levels(&coarse, 8.0));
-    let [trusted, all] = light_of_spots(&fine);
-    let [more_trusted, more] = light_of_spots(&coarse);
-    let sum = |a: [f64; 3], b: [f64; 3]| [a[0] + b[0], a[1] + b[1], a[2] + b[2]];
-    let trusted = sum(trusted, more_trusted);
-    let light = if trusted.iter().sum::<f64>() > 0.0 { trusted } else { sum(all, more) };
-    weigh(light, noise_covariance(&fine))
+    let levels: Vec<Level> = half.planes.iter().map(|plane| Level::of(&plane.halved(), 4.0)).collect();
+    let [trusted, all] = light_of_spots(&levels);
+    let light = if trusted.iter().sum::<f64>() > 0.0 { trusted } else { all };
+    weigh(light, noise_covariance(&levels))
 }
 
 /// Weights `w = k N⁻¹ s` give the best signal-to-noise ratio for a spot of colour `s` in noise of covariance `N`

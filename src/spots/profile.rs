@@ -9,9 +9,9 @@ const COUNT: usize = 9;
 /// Position of the centre among them.
 const X: usize = 1;
 const Y: usize = 2;
-const MAX_STEPS: usize = 30;
+const MAX_STEPS: usize = 24;
 /// Weights follow the model for so many steps, then rest: a moving target never converges.
-const FREE_STEPS: usize = 10;
+const FREE_STEPS: usize = 8;
 /// Residuals beyond so many standard deviations lose weight (Huber): lines, dust and undetected neighbours.
 const HUBER: f64 = 4.0;
 
@@ -149,14 +149,14 @@ pub(super) fn fit(window: &Window, start: Profile, noise: &PixelNoise) -> Option
         let cost = tried.map(|tried| cost(window, &tried, &weights));
         match (tried, cost) {
             (Some(tried), Some(cost)) if cost <= state.cost => {
-                let is_settled = step[X].hypot(step[Y]) < 1e-4 && state.cost - cost < 1e-5 * state.cost;
+                let is_settled = step[X].hypot(step[Y]) < 2e-3 && state.cost - cost < 1e-4 * state.cost;
                 profile = tried;
                 damping = (damping * 0.2).max(1e-9);
                 if step_number < FREE_STEPS {
                     weights = self::weights(window, &profile, noise);
                 }
                 state = normal_equations(window, &profile, &weights);
-                if is_settled && step_number > 3 {
+                if is_settled && step_number > 2 {
                     break;
                 }
             }
