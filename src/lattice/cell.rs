@@ -176,7 +176,7 @@ pub(super) fn dot(p: [f64; 2], q: [f64; 2]) -> f64 {
 }
 
 pub(super) fn norm(p: [f64; 2]) -> f64 {
-    p[0].hypot(p[1])
+    dot(p, p).sqrt()
 }
 
 pub(super) fn minus(p: [f64; 2], q: [f64; 2]) -> [f64; 2] {

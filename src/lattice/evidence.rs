@@ -31,14 +31,27 @@ const NODES_PER_POINT: usize = 40;
 /// Rings over which occupancy is counted.
 const RINGS: usize = 6;
 
+/// Nodes beyond which a lattice among `total` points counts as hopelessly dense.
+pub(super) fn most_nodes(total: usize) -> usize {
+    NODES_PER_POINT * total + 400
+}
+
 /// Score of a grown lattice among `total` points. None where it is hopelessly dense or degenerate.
 pub(super) fn score(scene: &Scene<'_>, growth: &Growth, total: usize) -> Option<Score> {
-    let nodes = nodes_in_region(scene, growth, NODES_PER_POINT * total + 400)?;
+    let nodes = nodes_in_region(scene, growth, most_nodes(total))?;
+    score_with(scene, growth, total, &nodes)
+}
+
+/// [`score`] with the nodes of the region at hand.
+pub(super) fn score_with(scene: &Scene<'_>, growth: &Growth, total: usize, nodes: &[Node]) -> Option<Score> {
     let explained = growth.explained();
-    let k = real(explained);
-    let chance = k * scene.area.ln() - (ln_gamma(real(total) + 1.0) - ln_gamma(real(total.saturating_sub(explained)) + 1.0));
-    let log_evidence = growth.fit.log_likelihood + chance - occupancy_cost(&nodes);
+    let log_evidence = growth.fit.log_likelihood + chance(scene, explained, total) - occupancy_cost(nodes);
     log_evidence.is_finite().then_some(Score { log_evidence, explained, nodes: nodes.len() })
+}
+
+/// Minus the log density of `explained` of `total` points strewn evenly, unordered.
+pub(super) fn chance(scene: &Scene<'_>, explained: usize, total: usize) -> f64 {
+    real(explained) * scene.area.ln() - (ln_gamma(real(total) + 1.0) - ln_gamma(real(total.saturating_sub(explained)) + 1.0))
 }
 
 /// Evidence for even spacing along a row alone, nats: the same comparison in one dimension, against points strewn by chance
@@ -65,6 +78,7 @@ pub(super) fn row_evidence(scene: &Scene<'_>, growth: &Growth) -> Option<f64> {
 /// A node, its distance from the middle of brightness, and whether a point sits there.
 #[derive(Debug, Clone, Copy)]
 pub(super) struct Node {
+    pub order: (i32, i32),
     pub distance: f64,
     pub occupied: bool,
 }
@@ -89,7 +103,7 @@ pub(super) fn nodes_in_region(scene: &Scene<'_>, growth: &Growth, most: usize) -
             let occupied = found.contains(&(h, k));
             let (distance, place) = distance((h, k));
             if occupied || (distance <= reach && (scene.visible)(place)) {
-                nodes.push(Node { distance, occupied });
+                nodes.push(Node { order: (h, k), distance, occupied });
             }
         }
     }
@@ -116,15 +130,23 @@ pub(super) fn order_box(found: &std::collections::BTreeSet<(i32, i32)>) -> Optio
 
 /// log of the number of ways to choose which nodes carry a point, told ring by ring.
 fn occupancy_cost(nodes: &[Node]) -> f64 {
-    let ring = (nodes.len().div_ceil(RINGS)).max(8);
-    nodes
-        .chunks(ring)
-        .map(|c| {
-            let n = real(c.len());
-            let k = real(c.iter().filter(|node| node.occupied).count());
-            ln_gamma(n + 1.0) - ln_gamma(k + 1.0) - ln_gamma(n - k + 1.0) + (n + 1.0).ln()
-        })
-        .sum()
+    let mut occupied = vec![0];
+    for node in nodes {
+        occupied.push(occupied.last().copied().unwrap_or(0) + usize::from(node.occupied));
+    }
+    occupancy(&occupied)
+}
+
+/// The same from running counts of occupied nodes, outwards, starting with 0.
+pub(super) fn occupancy(occupied: &[usize]) -> f64 {
+    let nodes = occupied.len().saturating_sub(1);
+    let ring = nodes.div_ceil(RINGS).max(8);
+    let cost = |from: usize| {
+        let to = (from + ring).min(nodes);
+        let (n, k) = (real(to - from), real(occupied[to] - occupied[from]));
+        ln_gamma(n + 1.0) - ln_gamma(k + 1.0) - ln_gamma(n - k + 1.0) + (n + 1.0).ln()
+    };
+    (0..nodes).step_by(ring).map(cost).sum()
 }
 
 /// Orders along the row of all points that lie as near to the row as the explained ones do.

@@ -59,6 +59,10 @@ pub(super) struct Growth {
     pub node: Vec<Option<(i32, i32)>>,
     /// Points that lost a node to a better one: (point, winner).
     pub beaten: Vec<(usize, usize)>,
+    /// Points on a node beyond the end of the pattern (filled in by `trim`).
+    pub beyond: Vec<usize>,
+    /// Scale of the map's priors.
+    scale: WarpScale,
     /// The map.
     pub fit: WarpFit,
     /// Shortest step, the unit of slack.
@@ -72,16 +76,27 @@ impl Growth {
     pub(super) fn explained(&self) -> usize {
         self.node.iter().flatten().count()
     }
+
+    /// The start sits on a node and steps along the primitive steps there: growing it would find this lattice again.
+    pub(super) fn holds(&self, start: &Start) -> bool {
+        let Some(near) = nearest_node(&self.fit.warp, start.origin) else { return false };
+        let g = self.fit.warp.steps(near.order[0], near.order[1]);
+        let off = |v: [f64; 2], w: [f64; 2]| norm([v[0] - w[0], v[1] - w[1]]).min(norm([v[0] + w[0], v[1] + w[1]]));
+        let same = |v: [f64; 2], w: [f64; 2]| off(v, w) < 0.08 * self.step;
+        let [p, q] = start.steps;
+        let steps = if self.line { same(p, g[0]) } else { (same(p, g[0]) && same(q, g[1])) || (same(p, g[1]) && same(q, g[0])) };
+        steps && start.line == self.line && near.distance < 0.1 * self.step
+    }
 }
 
 /// Rounds of assigning and refitting; growth by a factor per round reaches any edge long before.
 const ROUNDS: usize = 14;
 /// A node is given only where the map's own standard deviation is below this share of the shortest step.
-const KNOWN_WELL: f64 = 0.13;
+pub(super) const KNOWN_WELL: f64 = 0.16;
 /// Acceptance radius in standard deviations: a true point is lost once in a thousand.
 const GATE: f64 = 3.7;
 /// Acceptance radius never exceeds this share of the shortest step.
-const WIDEST_GATE: f64 = 0.25;
+const WIDEST_GATE: f64 = 0.3;
 
 /// Grows a lattice over the points `among` (indices into the scene). None where the start is degenerate or fewer than two points join.
 pub(super) fn grow(scene: &Scene<'_>, among: &[usize], start: &Start) -> Option<Growth> {
@@ -94,7 +109,7 @@ pub(super) fn grow(scene: &Scene<'_>, among: &[usize], start: &Start) -> Option<
     };
     let anchors = anchors(start, scene.slack);
     let mut fit = Warp::fit(&anchors, &scale, start.line)?;
-    let mut growth = Growth { node: Vec::new(), beaten: Vec::new(), fit: fit.clone(), step, line: start.line };
+    let mut growth = Growth { node: Vec::new(), beaten: Vec::new(), beyond: Vec::new(), scale, fit: fit.clone(), step, line: start.line };
     for _ in 0..ROUNDS {
         let (node, beaten) = assign(scene, among, &fit.warp, step, start.line);
         if node == growth.node {
@@ -109,9 +124,22 @@ pub(super) fn grow(scene: &Scene<'_>, among: &[usize], start: &Start) -> Option<
         }
         fit = Warp::fit(&sightings, &scale, start.line)?;
     }
-    let seen = sightings(scene, &growth.node);
-    growth.fit = Warp::fit(&seen, &scale, start.line)?;
-    (growth.explained() >= 2).then_some(growth)
+    refit(scene, &growth)
+}
+
+/// The growth with its map fitted to exactly the points that have a node. None where these do not span the lattice.
+pub(super) fn refit(scene: &Scene<'_>, growth: &Growth) -> Option<Growth> {
+    let fit = Warp::fit(&sightings(scene, &growth.node), &growth.scale, growth.line)?;
+    spans(growth).then(|| Growth { fit, ..growth.clone() })
+}
+
+/// Three nodes not on one straight line; for a line two nodes.
+fn spans(growth: &Growth) -> bool {
+    let mut nodes = growth.node.iter().flatten();
+    let Some(first) = nodes.next() else { return false };
+    let from_first: Vec<(i64, i64)> = nodes.map(|n| (i64::from(n.0 - first.0), i64::from(n.1 - first.1))).collect();
+    let Some(along) = from_first.first() else { return false };
+    growth.line || from_first.iter().any(|n| n.0 * along.1 != n.1 * along.0)
 }
 
 /// Distance of a point from the nearest node and that node.

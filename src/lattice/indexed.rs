@@ -60,6 +60,11 @@ pub enum Reason {
     },
     /// It belongs to another lattice in the same picture.
     SecondLattice,
+    /// It lies at a node, but so far beyond the rest of the pattern that chance explains it as well.
+    BeyondPattern {
+        /// The order it would have.
+        order: (i32, i32),
+    },
     /// It lies at a node, but the geometry is not known well enough out there to number it.
     OutOfReach,
 }

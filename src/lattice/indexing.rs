@@ -3,12 +3,14 @@
 use super::{
     Evidence, Expected, IndexOptions, Indexed, LatticeError, Point, RunnerUp, Shape, Warning,
     cell::norm,
-    evidence::{Score, row_evidence, score},
+    contest::{Candidate, candidates, cell_size, nearest_whole},
+    evidence::{Score, row_evidence},
     grow::{Growth, Scene, Start, grow},
     rejected::explain_rejected,
-    relatives::{regrow, relative_starts},
-    seed::{median, starts},
-    zero::{ZeroChoice, choose_zero},
+    relatives::regrow,
+    seed::median,
+    trim::trimmed,
+    zero::choose_zero,
 };
 
 /// Gives points of a plane their lattice and each its order (h, k).
@@ -46,87 +48,6 @@ pub fn index(points: &[Point], options: &IndexOptions, visible: &dyn Fn([f64; 2]
     Ok(report(points, &usable, &scene, &settled, &ranked))
 }
 
-/// A grown lattice with its scores.
-#[derive(Debug, Clone)]
-pub(super) struct Candidate {
-    pub growth: Growth,
-    pub score: Score,
-    pub zero: ZeroChoice,
-}
-
-impl Candidate {
-    /// What candidates compete by: evidence of the places plus that of the zero order.
-    pub(super) fn total(&self) -> f64 {
-        self.score.log_evidence + self.zero.score.min(0.5 * self.score.log_evidence.max(0.0))
-    }
-}
-
-/// Lattices grown in full per shape before their relatives are tried.
-const FINALISTS: usize = 4;
-
-/// The best lattices over the points `among`, best first, distinct.
-pub(super) fn candidates(scene: &Scene<'_>, among: &[usize]) -> Vec<Candidate> {
-    let bright = &among[..among.len().min(scene.options.seed_points)];
-    let mut found = Vec::new();
-    for line in [true, false] {
-        let excluded = if line { Expected::Plane } else { Expected::Line };
-        if scene.options.expected == excluded || (!line && among.len() < 4) {
-            continue;
-        }
-        let mut grown: Vec<(f64, Growth)> = starts(scene, bright, line)
-            .iter()
-            .filter_map(|s| grow(scene, bright, s))
-            .filter_map(|g| score(scene, &g, bright.len()).map(|s| (s.log_evidence, g)))
-            .collect();
-        grown.sort_by(|a, b| b.0.total_cmp(&a.0));
-        let mut finalists: Vec<Growth> = Vec::new();
-        for (_, growth) in grown {
-            if finalists.len() < FINALISTS && !finalists.iter().any(|f| same_assignment(f, &growth)) {
-                finalists.push(growth);
-            }
-        }
-        for finalist in finalists {
-            found.extend(with_relatives(scene, bright, finalist));
-        }
-    }
-    found.sort_by(|a, b| b.total().total_cmp(&a.total()));
-    let mut distinct: Vec<Candidate> = Vec::new();
-    for candidate in found {
-        if distinct.len() < 12 && !distinct.iter().any(|d| same_assignment(&d.growth, &candidate.growth)) {
-            distinct.push(candidate);
-        }
-    }
-    distinct
-}
-
-/// A lattice and its relatives of index 2 and 3, climbing while a relative is better.
-fn with_relatives(scene: &Scene<'_>, among: &[usize], growth: Growth) -> Vec<Candidate> {
-    let Some(mut best) = judge(scene, growth, among.len()) else { return Vec::new() };
-    let mut seen = vec![best.clone()];
-    for _ in 0..3 {
-        let node = nearest_whole(best.zero.doubled);
-        let sd = scene.slack;
-        let relatives: Vec<Candidate> = relative_starts(&best.growth.fit.warp, node, best.growth.line, sd)
-            .iter()
-            .filter_map(|s: &Start| grow(scene, among, s))
-            .filter_map(|g| judge(scene, g, among.len()))
-            .collect();
-        let better = relatives.iter().filter(|r| r.total() > best.total()).max_by(|a, b| a.total().total_cmp(&b.total())).cloned();
-        seen.extend(relatives);
-        match better {
-            Some(next) => best = next,
-            None => break,
-        }
-    }
-    seen
-}
-
-fn judge(scene: &Scene<'_>, growth: Growth, total: usize) -> Option<Candidate> {
-    let score = score(scene, &growth, total)?;
-    let zero = choose_zero(scene, &growth)?;
-    Some(Candidate { growth, score, zero })
-}
-
 /// Numbers the winner from its zero order over all points, on the reduced basis there.
 fn settle(scene: &Scene<'_>, best: &Candidate, all: &[usize]) -> Option<Candidate> {
     let mut growth = regrow(scene, &best.growth, all, nearest_whole(best.zero.doubled))?;
@@ -144,7 +65,7 @@ fn settle(scene: &Scene<'_>, best: &Candidate, all: &[usize]) -> Option<Candidat
         growth = regrow(scene, &growth, all, node)?;
         zero = choose_zero(scene, &growth)?;
     }
-    let score = score(scene, &growth, all.len())?;
+    let (growth, score) = trimmed(scene, growth, all.len())?;
     Some(Candidate { growth, score, zero })
 }
 
@@ -243,19 +164,15 @@ fn zero_warnings(settled: &Candidate, flip: i32) -> Vec<Warning> {
 
 /// The best candidate that is another lattice than the chosen one.
 fn runner_up(settled: &Candidate, ranked: &[Candidate]) -> Option<RunnerUp> {
-    let cell = |g: &Growth| {
-        let [p, q] = g.fit.warp.steps(0.0, 0.0);
-        if g.line { norm(p) } else { (p[0] * q[1] - p[1] * q[0]).abs() }
-    };
-    let mine = cell(&settled.growth);
-    let differs = |c: &&Candidate| c.growth.line != settled.growth.line || (cell(&c.growth) / mine).ln().abs() > 0.2;
+    let mine = cell_size(&settled.growth);
+    let differs = |c: &&Candidate| c.growth.line != settled.growth.line || (cell_size(&c.growth) / mine).ln().abs() > 0.2;
     let rival = ranked.iter().find(differs)?;
     let line = rival.growth.line;
     let steps = rival.growth.fit.warp.steps(0.0, 0.0);
     Some(RunnerUp {
         shape: if line { Shape::Line } else { Shape::Plane },
         g: if line { [steps[0], [0.0; 2]] } else { steps },
-        cell_ratio: cell(&rival.growth) / mine,
+        cell_ratio: cell_size(&rival.growth) / mine,
         explained: rival.score.explained,
         // Compared on the seed points, where all candidates were judged.
         log_evidence: settled.score.log_evidence + rival.total() - ranked.first()?.total(),
@@ -319,15 +236,39 @@ fn typical_spacing(at: &[[f64; 2]]) -> f64 {
     median(head.iter().enumerate().map(nearest))
 }
 
-fn same_assignment(a: &Growth, b: &Growth) -> bool {
-    let cell = |g: &Growth| {
-        let [p, q] = g.fit.warp.steps(0.0, 0.0);
-        if g.line { norm(p) } else { (p[0] * q[1] - p[1] * q[0]).abs() }
-    };
-    let seen = |n: &Growth| n.node.iter().map(Option::is_some).collect::<Vec<bool>>();
-    a.line == b.line && (cell(a) / cell(b)).ln().abs() < 0.1 && seen(a) == seen(b)
-}
-
-fn nearest_whole(doubled: (i32, i32)) -> (i32, i32) {
-    (doubled.0.div_euclid(2), doubled.1.div_euclid(2))
+#[cfg(test)]
+pub(super) fn debug(points: &[Point], visible: &dyn Fn([f64; 2]) -> bool, truth: &[Option<(i32, i32)>]) {
+    let options = IndexOptions::default();
+    let usable = usable_in_canonical_order(points);
+    let scene = scene(points, &usable, &options, visible);
+    let all: Vec<usize> = (0..usable.len()).collect();
+    let bright = all.len().min(120);
+    println!(
+        "{} points, {} true in bright {}; slack {} area {} extent {}",
+        all.len(),
+        usable[..bright].iter().filter(|&&i| truth[i].is_some()).count(),
+        bright,
+        scene.slack,
+        scene.area,
+        scene.extent
+    );
+    for c in candidates(&scene, &all) {
+        let s = c.growth.fit.warp.steps(0.0, 0.0);
+        let good = c.growth.node.iter().enumerate().filter(|(i, n)| n.is_some() && truth[usable[*i]].is_some()).count();
+        println!(
+            "line {} total {:.1} ev {:.1} zero {:.1} {:?} explained {} (true {good}) nodes {} step {:.4} area {:.3e} u {:.5}",
+            c.growth.line,
+            c.total(),
+            c.score.log_evidence,
+            c.zero.score,
+            c.zero.doubled,
+            c.score.explained,
+            c.score.nodes,
+            c.growth.step,
+            (s[0][0] * s[1][1] - s[0][1] * s[1][0]).abs(),
+            scene.u[0]
+        );
+    }
+    let made = settle(&scene, &candidates(&scene, &all)[0], &all);
+    println!("settled {}", made.is_some());
 }

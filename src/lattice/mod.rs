@@ -3,6 +3,8 @@
 //! Start reading at [`index`].
 
 mod cell;
+mod contest;
+mod copies;
 mod evidence;
 mod grow;
 mod indexed;
@@ -12,6 +14,7 @@ mod point;
 mod rejected;
 mod relatives;
 mod seed;
+mod trim;
 mod warp;
 mod zero;
 

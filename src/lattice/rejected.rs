@@ -4,10 +4,10 @@ use std::collections::BTreeMap;
 
 use super::{
     Point, Reason, Warning,
-    cell::{minus, norm},
+    cell::{dot, minus, norm},
+    contest::{Candidate, candidates},
     evidence::real,
-    grow::{Growth, Nearest, Scene, nearest_node},
-    indexing::{Candidate, candidates},
+    grow::{Growth, KNOWN_WELL, Nearest, Scene, nearest_node},
     seed::median,
 };
 
@@ -28,7 +28,10 @@ pub(super) fn explain_rejected(points: &[Point], usable: &[usize], scene: &Scene
     let mut reason: BTreeMap<usize, Reason> = (0..points.len()).filter(|i| !usable.contains(i)).map(|i| (i, Reason::NotANumber)).collect();
     let beaten: BTreeMap<usize, usize> = growth.beaten.iter().copied().collect();
     let mut loose = Vec::new();
-    for i in (0..scene.at.len()).filter(|&i| growth.node[i].is_none()) {
+    let beyond: BTreeMap<usize, (i32, i32)> =
+        growth.beyond.iter().filter_map(|&i| nearest_node(&growth.fit.warp, scene.at[i]).map(|n| (i, n.node))).collect();
+    reason.extend(beyond.iter().map(|(&i, &order)| (usable[i], Reason::BeyondPattern { order })));
+    for i in (0..scene.at.len()).filter(|i| growth.node[*i].is_none() && !beyond.contains_key(i)) {
         match beaten.get(&i) {
             Some(&winner) => {
                 reason.insert(usable[i], Reason::Duplicate { of: usable[last_winner(&beaten, winner)] });
@@ -76,7 +79,7 @@ fn stray(scene: &Scene<'_>, growth: &Growth, i: usize) -> Reason {
         }
     }
     let offset = fraction(&near);
-    if near.map_variance.sqrt() > 0.13 * growth.step { Reason::OutOfReach } else { Reason::OffLattice { offset } }
+    if near.map_variance.sqrt() > KNOWN_WELL * growth.step { Reason::OutOfReach } else { Reason::OffLattice { offset } }
 }
 
 fn fraction(near: &Nearest) -> [f64; 2] {
@@ -86,15 +89,13 @@ fn fraction(near: &Nearest) -> [f64; 2] {
 /// Sets of loose points that share one offset from the nodes: displaced copies of the pattern.
 fn ghosts(scene: &Scene<'_>, growth: &Growth, loose: &[usize]) -> BTreeMap<usize, Reason> {
     let mut found = BTreeMap::new();
-    if growth.line {
-        return found;
-    }
-    let mut open: Vec<(usize, [f64; 2])> =
-        loose.iter().filter_map(|&i| nearest_node(&growth.fit.warp, scene.at[i]).map(|n| (i, fraction(&n)))).collect();
+    let mut open: Vec<(usize, [f64; 2])> = loose.iter().filter_map(|&i| Some((i, displacement(scene, growth, i)?))).collect();
     let brightest = scene.ln_weight.iter().zip(&growth.node).filter(|(_, n)| n.is_some()).map(|(w, _)| *w).fold(f64::MIN, f64::max);
-    let mean = real(open.len()) * std::f64::consts::PI * OFFSET_RADIUS * OFFSET_RADIUS;
+    let room = if growth.line { 2.0 * scene.extent / growth.step } else { 1.0 };
+    let mean = real(open.len()) * std::f64::consts::PI * OFFSET_RADIUS * OFFSET_RADIUS / room;
     loop {
-        let members = |f: [f64; 2]| open.iter().filter(|(_, o)| apart(f, *o) < OFFSET_RADIUS).map(|(i, _)| *i).collect::<Vec<usize>>();
+        let members =
+            |f: [f64; 2]| open.iter().filter(|(_, o)| apart(f, *o, growth.line) < OFFSET_RADIUS).map(|(i, _)| *i).collect::<Vec<usize>>();
         let best = open.iter().map(|(_, f)| (members(*f), *f)).max_by_key(|(m, _)| m.len());
         let Some((set, offset)) = best else { break };
         // Chance that so many of the loose points fall together, for any of them as the middle.
@@ -103,7 +104,10 @@ fn ghosts(scene: &Scene<'_>, growth: &Growth, loose: &[usize]) -> BTreeMap<usize
         if set.len() < FEWEST_COPIES || chance > 1e-2 || !faint {
             break;
         }
-        let [p, q] = growth.fit.warp.steps(0.0, 0.0);
+        let [p, mut q] = growth.fit.warp.steps(0.0, 0.0);
+        if growth.line {
+            q = [-p[1], p[0]];
+        }
         let place = [offset[0] * p[0] + offset[1] * q[0], offset[0] * p[1] + offset[1] * q[1]];
         found.extend(set.iter().map(|&i| (i, Reason::Ghost { offset: place, copies: set.len() })));
         open.retain(|(i, _)| !set.contains(i));
@@ -111,10 +115,23 @@ fn ghosts(scene: &Scene<'_>, growth: &Growth, loose: &[usize]) -> BTreeMap<usize
     found
 }
 
-/// Distance of two fractional orders on the torus of one cell.
-fn apart(f: [f64; 2], g: [f64; 2]) -> f64 {
+/// Displacement of a point from the nearest node, in steps: along both steps, or for a line along the row and across it.
+fn displacement(scene: &Scene<'_>, growth: &Growth, i: usize) -> Option<[f64; 2]> {
+    let near = nearest_node(&growth.fit.warp, scene.at[i])?;
+    if !growth.line {
+        return Some(fraction(&near));
+    }
+    let from_row = minus(scene.at[i], growth.fit.warp.place(near.order[0], 0.0));
+    let p = growth.fit.warp.steps(near.order[0], 0.0)[0];
+    let across = (p[0] * from_row[1] - p[1] * from_row[0]) / dot(p, p).max(f64::MIN_POSITIVE);
+    Some([fraction(&near)[0], across])
+}
+
+/// Distance of two displacements; whole orders make no difference, but rows of a line do not repeat.
+fn apart(f: [f64; 2], g: [f64; 2], line: bool) -> f64 {
     let wrap = |x: f64| x - x.round();
-    wrap(f[0] - g[0]).hypot(wrap(f[1] - g[1]))
+    let across = f[1] - g[1];
+    wrap(f[0] - g[0]).hypot(if line { across } else { wrap(across) })
 }
 
 /// P(at least n) of a Poisson distribution.

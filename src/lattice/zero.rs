@@ -31,16 +31,18 @@ const ORDERS: usize = 150;
 /// Nodes tried.
 const CANDIDATES: usize = 60;
 /// Spread of ln(brightness) between an order and its opposite.
-const PAIR_SPREAD: f64 = 0.6;
+const PAIR_SPREAD: f64 = 0.45;
 /// Cost of a zero order that should be visible and is not.
 const UNSEEN: f64 = 4.0;
+/// Cost of a zero order that is just as bright as the brightest other order; usually it is several times brighter.
+const NOT_BRIGHTER: f64 = 2.0;
 /// Cost of lying one rms extent of the pattern away from the middle of brightness, and its bound.
 const OFF_MIDDLE: f64 = 1.0;
 const FARTHEST: f64 = 6.0;
 /// Further cost of a middle between the nodes: the numbering must be doubled for it.
 const BETWEEN: f64 = 4.0;
 /// Brightness and symmetry of neighbouring orders are not independent: their joint evidence is tempered.
-const TEMPER: f64 = 0.5;
+const TEMPER: f64 = 0.7;
 
 /// Chooses the zero order. None where no point has a node.
 pub(super) fn choose_zero(scene: &Scene<'_>, growth: &Growth) -> Option<ZeroChoice> {
@@ -119,7 +121,7 @@ impl Field {
         let brightness = match seen {
             Some(i) => {
                 let rest = if scene.ln_weight[i] >= self.brightest[0] { self.brightest[1] } else { self.brightest[0] };
-                (2.0 * (scene.ln_weight[i] - rest)).clamp(-UNSEEN, 8.0) + scene.zero_log_odds[i]
+                (2.0 * (scene.ln_weight[i] - rest) - NOT_BRIGHTER).clamp(-UNSEEN, 8.0) + scene.zero_log_odds[i]
             }
             None if (scene.visible)(place) => -UNSEEN,
             None => -0.5 * UNSEEN,
