@@ -125,7 +125,7 @@ impl Window {
         let widest = [1, 3, 5, 7].iter().map(|n| expected.neighbours_pitches[*n]).fold(0.0, f64::max);
         let gap = ((1.0 + r - widest) / 2.0).max(r);
         let rim_pitches = (r + margin).min(gap);
-        let outer_pitches = (rim_pitches + (4.0 / px_per_pitch).max(0.12)).max(0.62).min(0.75);
+        let outer_pitches = (rim_pitches + (4.0 / px_per_pitch).max(0.12)).clamp(0.62, 0.75);
         let extent = |c: usize| x[c].hypot(y[c]);
         let (ex, ey) = (extent(0), extent(1));
         Self {

@@ -25,8 +25,10 @@ mod view;
 #[cfg(test)]
 mod corpus_check;
 #[cfg(test)]
+#[expect(clippy::cast_possible_truncation, reason = "test scenes are small")]
 mod painted_check;
 #[cfg(test)]
+#[expect(clippy::cast_possible_truncation, reason = "test scenes are small")]
 mod painter;
 
 pub use error::TargetError;
