@@ -18,6 +18,7 @@ mod marks;
 mod paper;
 mod pdf;
 mod reading;
+mod rim;
 mod sheet;
 mod svg;
 mod view;
