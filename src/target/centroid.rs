@@ -1,6 +1,9 @@
 //! Centroid of a dot's darkness at full resolution, with its covariance.
 
-use super::paper::small_f64;
+use super::{
+    paper::small_f64,
+    rim::{Disc, rim_place},
+};
 use crate::{
     frames::{PixelCovariance, PixelPoint},
     photo::Light,
@@ -34,21 +37,22 @@ pub(super) struct Darkness {
     pub(super) blur_px: f64,
     /// Area of one pitch square here, px².
     pub(super) cell_px2: f64,
+    noise: PixelNoise,
 }
 
 /// Paper around the dot as a plane, and its scatter.
-struct Ground {
+pub(super) struct Ground {
     /// Level at the expected place and slopes per px.
     plane: [f64; 3],
     /// Relative variance of one pixel of paper.
     variance: f64,
     /// Standard uncertainty of the relative slopes, per px.
-    u_slope: [f64; 2],
+    pub(super) u_slope: [f64; 2],
 }
 
 /// Map from displacement in px to displacement in pitches.
 #[derive(Debug, Clone, Copy)]
-struct ToPitches([f64; 4]);
+pub(super) struct ToPitches([f64; 4]);
 
 /// Most pixels of paper that are looked at for one dot; more are thinned out.
 const ENOUGH_PAPER_PX: f64 = 800.0;
@@ -81,11 +85,28 @@ pub(super) fn darkness(light: &Light, expected: &Expected) -> Option<Darkness> {
         }
         // The window ends where the darkness has ended: a small offset of its centre changes nothing.
         if found.at.distance_px(window.at) < 0.25 {
-            return Some(found);
+            return Some(found.at_its_rim(light, &window, &ground, expected));
         }
         window.at = found.at;
     }
     None
+}
+
+impl Darkness {
+    /// The same with the place from the rim, where the rim gives one.
+    fn at_its_rim(self, light: &Light, window: &Window, ground: &Ground, expected: &Expected) -> Self {
+        let disc = Disc {
+            start: self.at,
+            radius_pitches: (self.sum_px2 / (self.contrast * std::f64::consts::PI * self.cell_px2)).sqrt(),
+            contrast: self.contrast,
+            blur_px: expected.blur_px,
+            noise: &self.noise,
+        };
+        match rim_place(light, window, ground, &disc) {
+            Some((at, covariance)) => Self { at, covariance, ..self },
+            None => self,
+        }
+    }
 }
 
 impl ToPitches {
@@ -95,23 +116,27 @@ impl ToPitches {
         map.iter().all(|v| v.is_finite()).then_some(Self(map))
     }
 
-    fn apply(&self, dx: f64, dy: f64) -> [f64; 2] {
+    pub(super) fn transposed(&self, v: [f64; 2]) -> [f64; 2] {
+        [self.0[0] * v[0] + self.0[2] * v[1], self.0[1] * v[0] + self.0[3] * v[1]]
+    }
+
+    pub(super) fn apply(&self, dx: f64, dy: f64) -> [f64; 2] {
         [self.0[0] * dx + self.0[1] * dy, self.0[2] * dx + self.0[3] * dy]
     }
 }
 
 /// The places that are summed, as ellipses around `at`.
-struct Window {
-    at: PixelPoint,
-    map: ToPitches,
+pub(super) struct Window {
+    pub(super) at: PixelPoint,
+    pub(super) map: ToPitches,
     /// Rim of the darkness window and of the paper around it, pitches.
-    rim_pitches: f64,
+    pub(super) rim_pitches: f64,
     outer_pitches: f64,
     /// Short side of the cell as px per pitch, for margins.
     px_per_pitch: f64,
     radius_px: f64,
     /// Half width and height of the darkness window and of the outer ellipse, px.
-    half_px: [f64; 2],
+    pub(super) half_px: [f64; 2],
     outer_half_px: [f64; 2],
 }
 
@@ -125,7 +150,7 @@ impl Window {
         let widest = [1, 3, 5, 7].iter().map(|n| expected.neighbours_pitches[*n]).fold(0.0, f64::max);
         let gap = ((1.0 + r - widest) / 2.0).max(r);
         let rim_pitches = (r + margin).min(gap);
-        let outer_pitches = (rim_pitches + (4.0 / px_per_pitch).max(0.12)).max(0.62).min(0.75);
+        let outer_pitches = (rim_pitches + (4.0 / px_per_pitch).max(0.12)).clamp(0.62, 0.75);
         let extent = |c: usize| x[c].hypot(y[c]);
         let (ex, ey) = (extent(0), extent(1));
         Self {
@@ -156,7 +181,7 @@ fn least_stretch(x: [f64; 2], y: [f64; 2]) -> f64 {
 
 /// Whole pixels from `centre - half` to `centre + half`, inside the photo.
 #[expect(clippy::cast_possible_truncation, clippy::cast_sign_loss, reason = "clamped to 0..=size, NaN gives 0")]
-fn pixels(centre: f64, half: f64, size: usize) -> std::ops::Range<usize> {
+pub(super) fn pixels(centre: f64, half: f64, size: usize) -> std::ops::Range<usize> {
     let end = small_f64(size);
     let start = (centre - half).ceil().clamp(0.0, end) as usize;
     start..((centre + half).floor() + 1.0).clamp(0.0, end) as usize
@@ -300,8 +325,7 @@ impl Sums {
                 if rho2 >= end2 {
                     continue;
                 }
-                let paper = ground.plane[0] + ground.plane[1] * dx + ground.plane[2] * dy;
-                let dark = if paper > 0.0 { 1.0 - sample(light, x, y) / paper } else { 0.0 };
+                let dark = dark_share(light, ground, window, x, y);
                 // A soft rim, one pixel wide.
                 let weight = if rho2 <= full2 { 1.0 } else { (end - rho2.sqrt()) * window.px_per_pitch };
                 sums.add(dx, dy, dark, weight);
@@ -333,8 +357,16 @@ impl Sums {
     }
 }
 
+/// Darkness 1 - I / paper of one pixel.
+pub(super) fn dark_share(light: &Light, ground: &Ground, window: &Window, x: usize, y: usize) -> f64 {
+    let (dx, dy) = (small_f64(x) - window.at.x_px, small_f64(y) - window.at.y_px);
+    let paper = ground.plane[0] + ground.plane[1] * dx + ground.plane[2] * dy;
+    if paper > 0.0 { 1.0 - sample(light, x, y) / paper } else { 0.0 }
+}
+
 /// Variances of the darkness of one pixel of paper and of ink.
-struct PixelNoise {
+#[derive(Debug, Clone, Copy)]
+pub(super) struct PixelNoise {
     paper: f64,
     ink: f64,
 }
@@ -360,12 +392,18 @@ fn window_sums(light: &Light, window: &Window, ground: &Ground, expected: &Expec
         contrast,
         // The integral of s (1 - s) across a step blurred by a Gaussian of width b is b / √π.
         blur_px: (std::f64::consts::PI.sqrt() * edge / perimeter).max(0.0),
+        noise,
         cell_px2: (sx[0] * sy[1] - sx[1] * sy[0]).abs(),
     };
     [at.x_px, at.y_px, covariance.xx, covariance.yy, covariance.xy].iter().all(|v| v.is_finite()).then_some(found)
 }
 
 impl PixelNoise {
+    /// Variance of a pixel that is ink by this share.
+    pub(super) fn at(&self, share: f64) -> f64 {
+        self.paper + share * (self.ink - self.paper)
+    }
+
     fn of(sums: &Sums, light: &Light, ground: &Ground, contrast: f64) -> Self {
         let level = ground.plane[0];
         let (a, b) = (light.noise.a.max(0.0), light.noise.b.max(0.0));

@@ -90,7 +90,7 @@ fn truth(case: &serde_json::Value, size: [f64; 2]) -> Truth {
     let mut dots = HashMap::new();
     let mut expected_inside = 0;
     for dot in target["dots"].as_array().unwrap() {
-        let (i, j) = (dot["i"].as_i64().unwrap() as i32, dot["j"].as_i64().unwrap() as i32);
+        let (i, j) = ["i", "j"].map(|k| i32::try_from(dot[k].as_i64().unwrap()).unwrap()).into();
         let radius = dot["d_mm"].as_f64().unwrap() / 2.0;
         let stated: [f64; 2] = array(&dot["px"]);
         let centre = pixel(f64::from(i) * pitch, f64::from(j) * pitch);

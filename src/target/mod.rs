@@ -18,6 +18,7 @@ mod marks;
 mod paper;
 mod pdf;
 mod reading;
+mod rim;
 mod sheet;
 mod svg;
 mod view;
@@ -25,8 +26,10 @@ mod view;
 #[cfg(test)]
 mod corpus_check;
 #[cfg(test)]
+#[expect(clippy::cast_possible_truncation, reason = "test scenes are small")]
 mod painted_check;
 #[cfg(test)]
+#[expect(clippy::cast_possible_truncation, reason = "test scenes are small")]
 mod painter;
 
 pub use error::TargetError;

@@ -3,7 +3,7 @@
 use super::{
     Paper, ReadOptions, Reading, Sheet, TargetError, is_mark,
     painter::{PrintedDisc, Scene, paint},
-    read, svg,
+    pdf, read, svg,
 };
 use crate::photo::Light;
 
@@ -211,5 +211,21 @@ fn the_printed_sheet_reads_back() {
         let reading = read(&photo(&eye, &dots, 1.2, 0.015), &ReadOptions::default()).unwrap();
         assert_read(&reading, &eye, &dots, 0.2, &format!("{paper:?}"));
         assert_eq!(reading.dots.len(), discs.len(), "{paper:?}");
+    }
+}
+
+/// The ready-made targets are what the program draws today; `UPDATE=1` writes them anew.
+#[test]
+fn ready_made_targets_are_current() {
+    let folder = std::path::Path::new(env!("CARGO_MANIFEST_DIR")).join("calibration");
+    for (paper, pitch_mm) in [(Paper::A4, 10.0), (Paper::A3, 20.0), (Paper::Letter, 10.0)] {
+        let sheet = Sheet::new(paper, pitch_mm * 1e-3).unwrap();
+        for (ending, bytes) in [("svg", svg(&sheet).into_bytes()), ("pdf", pdf(&sheet))] {
+            let path = folder.join(format!("dot-target-{}.{ending}", paper.name()));
+            if std::env::var_os("UPDATE").is_some() {
+                std::fs::write(&path, &bytes).unwrap();
+            }
+            assert!(std::fs::read(&path).unwrap() == bytes, "{} differs from what is drawn; run the tests with UPDATE=1", path.display());
+        }
     }
 }

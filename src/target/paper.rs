@@ -55,6 +55,7 @@ impl Binned {
 }
 
 /// Adds each group of `bin` samples of `line` to its sum; NaN counts as no light.
+#[expect(clippy::manual_clamp, reason = "max and min turn NaN into 0, clamp would keep it")]
 fn add_groups(sums: &mut [f32], line: &[f32], bin: usize) {
     for (sum, group) in sums.iter_mut().zip(line.chunks_exact(bin)) {
         *sum += group.iter().map(|v| v.max(0.0).min(BRIGHTEST)).sum::<f32>();

@@ -105,12 +105,12 @@ pub fn read(grey: &Light, options: &ReadOptions) -> Result<Reading, TargetError>
         match read_at_scale(grey, bin, options) {
             Ok(Scaled { reading, small_blobs }) => {
                 // Tiny blobs lose their shape in binning: look closer, keep the better reading.
-                if small_blobs && bin > 1 {
-                    if let Ok(finer) = read_at_scale(grey, bin / 2, options) {
-                        if finer.reading.dots.len() >= reading.dots.len() {
-                            return Ok(finer.reading);
-                        }
-                    }
+                if small_blobs
+                    && bin > 1
+                    && let Ok(finer) = read_at_scale(grey, bin / 2, options)
+                    && finer.reading.dots.len() >= reading.dots.len()
+                {
+                    return Ok(finer.reading);
                 }
                 return Ok(reading);
             }

@@ -130,21 +130,21 @@ impl Sheet {
         for x in [left, left + along] {
             drawing.strokes.push(Stroke { from_mm: [x, y - 2.0], to_mm: [x, y + 2.0], width_mm: 0.2 });
         }
-        drawing.words.push(Words { at_mm: [left + 2.0, y + 0.9], turned: Turned::No, text: bar_text("X", along) });
+        drawing.words.push(Words { at_mm: [left + 2.0, y + 1.4], turned: Turned::No, text: bar_text("X", along) });
         let up = bar_length_mm(height - above - below);
         let x = width - 11.0;
         drawing.strokes.push(Stroke { from_mm: [x, below], to_mm: [x, below + up], width_mm: 0.2 });
         for y in [below, below + up] {
             drawing.strokes.push(Stroke { from_mm: [x - 2.0, y], to_mm: [x + 2.0, y], width_mm: 0.2 });
         }
-        drawing.words.push(Words { at_mm: [x - 0.9, below + 2.0], turned: Turned::Upwards, text: bar_text("Y", up) });
+        drawing.words.push(Words { at_mm: [x - 1.4, below + 2.0], turned: Turned::Upwards, text: bar_text("Y", up) });
     }
 
     fn add_words(&self, drawing: &mut Drawing) {
         let pitch_mm = self.pitch_m * 1e3;
         let lines = [
             format!(
-                "Dot target, nominal pitch {} mm. X to the right, Y up. The three larger dots mark (0,0), (2,0) and (0,1).",
+                "spotrule dot target, nominal pitch {} mm. X to the right, Y up. The three larger dots mark (0,0), (2,0) and (0,1).",
                 plain(pitch_mm)
             ),
             "Measure this print with a steel rule in both directions and put the result with its uncertainty into the bench file."
@@ -159,7 +159,7 @@ impl Sheet {
 }
 
 fn bar_text(axis: &str, length_mm: f64) -> String {
-    format!("{axis}: nominal {} mm, measured ____________ mm", plain(length_mm))
+    format!("{axis}: nominal {} mm, measured ____________________ mm", plain(length_mm))
 }
 
 /// Dots on one side of the middle that fit in half of `side_mm`.
