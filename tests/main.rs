@@ -7,6 +7,8 @@ mod layering;
 mod live;
 // NIST Statistical Reference Datasets against the least-squares solver
 mod nist;
+// OpenCV beside our rotations, camera and solver
+mod opencv;
 // worked examples and tables from the GUM, its supplement and textbooks
 mod published;
 // spots of photos with known truth, where those photos are at hand
