@@ -55,7 +55,16 @@ fn score_photo(case: &Path, truth: &Value, photo: &Value, score: &mut Score) {
     for (spot, _) in found.spots.iter().zip(&is_known).filter(|(_, known)| !**known) {
         score.false_spots += 1;
         if verbose {
-            println!("  false {file} {:.1} {:.1} peak {:.4} bg {:.4} snr {:.1} axes {:?} clipped {}", spot.at.x_px, spot.at.y_px, spot.peak, spot.background, spot.signal_to_noise, [spot.shape.xx.sqrt(), spot.shape.yy.sqrt()], spot.clipped_px);
+            println!(
+                "  false {file} {:.1} {:.1} peak {:.4} bg {:.4} snr {:.1} axes {:?} clipped {}",
+                spot.at.x_px,
+                spot.at.y_px,
+                spot.peak,
+                spot.background,
+                spot.signal_to_noise,
+                [spot.shape.xx.sqrt(), spot.shape.yy.sqrt()],
+                spot.clipped_px
+            );
         }
     }
     for order in photo["orders"].as_array().unwrap() {
@@ -92,7 +101,17 @@ fn score_photo(case: &Path, truth: &Value, photo: &Value, score: &mut Score) {
             score.by_strength[class].1 += 2.0;
         }
         if verbose && pull2 > 18.0 {
-            println!("  pull {file} {x:.1} {y:.1} dx {dx:.3} dy {dy:.3} u {:.3} {:.3} chi2 {:.2} sigma {sigma:.2} fit {:.2} {:.2} peak {} / {:.3} snr {snr} kind {kind} cut {}", c.xx.sqrt(), c.yy.sqrt(), spot.profile_chi2, spot.shape.xx.sqrt(), spot.shape.yy.sqrt(), order["peak"], spot.peak, spot.cut_by_frame);
+            println!(
+                "  pull {file} {x:.1} {y:.1} dx {dx:.3} dy {dy:.3} u {:.3} {:.3} chi2 {:.2} sigma {sigma:.2} fit {:.2} {:.2} peak {} / {:.3} snr {snr} kind {kind} cut {}",
+                c.xx.sqrt(),
+                c.yy.sqrt(),
+                spot.profile_chi2,
+                spot.shape.xx.sqrt(),
+                spot.shape.yy.sqrt(),
+                order["peak"],
+                spot.peak,
+                spot.cut_by_frame
+            );
         }
     }
 }
@@ -119,11 +138,18 @@ impl Score {
     fn print(&self, name: &str) {
         let rms = |sum: f64, kind: usize| (sum / self.number[kind].max(1) as f64).sqrt();
         println!(
-            "{name:6} open {:4}/{:4} error {:.3} px (speckle floor {:.3}) pull {:.2} ({}) beyond {:2} | clipped {:3}/{:3} error {:.3} px pull {:.2} beyond {:2} | false {:5.1} per photo",
-            self.seen[0], self.wanted[0], rms(self.error2[0], 0), rms(self.floor2[0], 0), rms(self.pull2[0], 0),
-            self.by_strength.map(|(sum, n)| format!("{:.2}", (sum / n.max(1.0)).sqrt())).join(" "),
+            "{name:8} open {:4}/{:4} error {:.3} px (speckle floor {:.3}) pull {:.2} beyond {:2} | clipped {:3}/{:3} error {:.3} px pull {:.2} beyond {:2} | false {:5.1} per photo",
+            self.seen[0],
+            self.wanted[0],
+            rms(self.error2[0], 0),
+            rms(self.floor2[0], 0),
+            rms(self.pull2[0], 0),
             self.beyond3[0],
-            self.seen[1], self.wanted[1], rms(self.error2[1], 1), rms(self.pull2[1], 1), self.beyond3[1],
+            self.seen[1],
+            self.wanted[1],
+            rms(self.error2[1], 1),
+            rms(self.pull2[1], 1),
+            self.beyond3[1],
             self.false_spots as f64 / self.photos.max(1) as f64
         );
     }

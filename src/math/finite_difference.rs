@@ -23,34 +23,12 @@ use nalgebra::{DMatrix, DVector};
 /// ```
 #[must_use]
 pub fn derivative(function: impl Fn(f64) -> Option<f64>, x: f64, step: f64) -> Option<(f64, f64)> {
-    const SHRINK: f64 = 1.4;
-    const ROUNDS: usize = 12;
-    if !(step > 0.0 && step.is_finite()) {
-        return None;
-    }
-    let mut previous: Vec<f64> = Vec::new();
-    let mut best = (f64::NAN, f64::INFINITY);
-    let mut width = step;
-    for _ in 0..ROUNDS {
-        let mut row = vec![(function(x + width)? - function(x - width)?) / (2.0 * width)];
-        let mut factor = SHRINK * SHRINK;
-        for (column, &above) in previous.iter().enumerate() {
-            let left = row[column];
-            let extrapolated = (left * factor - above) / (factor - 1.0);
-            let error = (extrapolated - left).abs().max((extrapolated - above).abs());
-            if error < best.1 {
-                best = (extrapolated, error);
-            }
-            row.push(extrapolated);
-            factor *= SHRINK * SHRINK;
-        }
-        previous = row;
-        width /= SHRINK;
-    }
-    best.0.is_finite().then_some(best)
+    let quotients: Option<Vec<f64>> =
+        widths(step)?.map(|width| Some((function(x + width)? - function(x - width)?) / (2.0 * width))).collect();
+    extrapolated(&quotients?)
 }
 
-/// Jacobian of a problem's residuals by [`derivative`], entry by entry; slow, for checks only.
+/// Jacobian of a problem's residuals as [`derivative`] would give it entry by entry; for checks, not for fits.
 ///
 /// - `steps`: first step per parameter, same units as `parameters`
 ///
@@ -63,16 +41,50 @@ pub fn jacobian(problem: &impl Problem, parameters: &DVector<f64>, steps: &DVect
     let rows = problem.residuals(parameters)?.len();
     let mut result = DMatrix::zeros(rows, parameters.len());
     for column in 0..parameters.len() {
+        let at = |value: f64| {
+            let mut moved = parameters.clone();
+            moved[column] = value;
+            problem.residuals(&moved).filter(|residuals| residuals.len() == rows)
+        };
+        let centre = parameters[column];
+        let quotients: Option<Vec<DVector<f64>>> =
+            widths(steps[column])?.map(|width| Some((at(centre + width)? - at(centre - width)?) / (2.0 * width))).collect();
+        let quotients = quotients?;
         for row in 0..rows {
-            let along = |value: f64| {
-                let mut moved = parameters.clone();
-                moved[column] = value;
-                problem.residuals(&moved)?.get(row).copied()
-            };
-            result[(row, column)] = derivative(along, parameters[column], steps[column])?.0;
+            let of_row: Vec<f64> = quotients.iter().map(|quotient| quotient[row]).collect();
+            result[(row, column)] = extrapolated(&of_row)?.0;
         }
     }
     Some(result)
+}
+
+const SHRINK: f64 = 1.4;
+
+/// The twelve steps of one derivative, largest first.
+fn widths(step: f64) -> Option<impl Iterator<Item = f64>> {
+    (step > 0.0 && step.is_finite()).then(|| std::iter::successors(Some(step), |width| Some(width / SHRINK)).take(12))
+}
+
+/// Neville's scheme on central quotients of shrinking width; the error of a quotient is even in its width.
+fn extrapolated(quotients: &[f64]) -> Option<(f64, f64)> {
+    let mut previous: Vec<f64> = Vec::new();
+    let mut best = (f64::NAN, f64::INFINITY);
+    for &quotient in quotients {
+        let mut row = vec![quotient];
+        let mut factor = SHRINK * SHRINK;
+        for (column, &above) in previous.iter().enumerate() {
+            let left = row[column];
+            let value = (left * factor - above) / (factor - 1.0);
+            let error = (value - left).abs().max((value - above).abs());
+            if error < best.1 {
+                best = (value, error);
+            }
+            row.push(value);
+            factor *= SHRINK * SHRINK;
+        }
+        previous = row;
+    }
+    best.0.is_finite().then_some(best)
 }
 
 #[cfg(test)]
