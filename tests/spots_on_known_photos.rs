@@ -19,6 +19,8 @@ struct Score {
     photos: usize,
     /// Per kind (0 unclipped, 1 clipped): error², floor², pull² and their number (two axes each).
     error2: [f64; 2],
+    /// Squared pulls and their number for signal-to-noise ratios 8..16, 16..40 and above, unclipped.
+    by_strength: [(f64, f64); 3],
     floor2: [f64; 2],
     pull2: [f64; 2],
     beyond3: [usize; 2],
@@ -39,6 +41,7 @@ fn score_photo(case: &Path, truth: &Value, photo: &Value, score: &mut Score) {
     let verbose = std::env::var_os("SPOTS_VERBOSE").is_some();
     let decoded = photo::decode(&std::fs::read(case.join(file)).unwrap()).unwrap();
     let Ok(found) = spots::find(&decoded, &spots::SpotOptions::default()) else { return };
+    if std::env::var_os("DBG").is_some() { println!("  truth contrast2 {:.3} grain {:.2} floor {:.3}", number(&truth["look"]["speckle"]).powi(2), number(&truth["look"]["grain"]), 0.3 * number(&truth["look"]["speckle"]) * number(&truth["look"]["grain"])); }
     score.photos += 1;
     let floor = 0.3 * number(&truth["look"]["speckle"]) * number(&truth["look"]["grain"]);
     let mut is_known = vec![false; found.spots.len()];
@@ -92,6 +95,11 @@ fn score_photo(case: &Path, truth: &Value, photo: &Value, score: &mut Score) {
         score.pull2[kind] += pull2;
         score.beyond3[kind] += usize::from(pull2 > 11.83);
         score.number[kind] += 2;
+        if kind == 0 {
+            let class = usize::from(snr > 16.0) + usize::from(snr > 40.0);
+            score.by_strength[class].0 += pull2;
+            score.by_strength[class].1 += 2.0;
+        }
         if verbose && pull2 > 18.0 {
             println!(
                 "  pull {file} {x:.1} {y:.1} dx {dx:.3} dy {dy:.3} u {:.3} {:.3} chi2 {:.2} sigma {sigma:.2} fit {:.2} {:.2} peak {} / {:.3} snr {snr} kind {kind} cut {}",
@@ -112,6 +120,10 @@ impl Score {
     fn add(&mut self, other: &Self) {
         self.false_spots += other.false_spots;
         self.photos += other.photos;
+        for (sum, more) in self.by_strength.iter_mut().zip(other.by_strength) {
+            sum.0 += more.0;
+            sum.1 += more.1;
+        }
         for kind in 0..2 {
             self.wanted[kind] += other.wanted[kind];
             self.seen[kind] += other.seen[kind];

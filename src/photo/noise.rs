@@ -7,7 +7,7 @@ const CLASSES: usize = 24;
 /// Fewest differences that make a class.
 const CLASS_MIN: usize = 40;
 /// Differences that are used at most; more would not change the second digit.
-const SAMPLES: usize = 200_000;
+const SAMPLES: usize = 50_000;
 
 /// Variance = a + b signal, from the scatter of `cells`, each the mean of `pixels_per_cell` pixels.
 ///

@@ -1,10 +1,16 @@
 //! Which channels carry the laser, found from the spots themselves.
 
+use nalgebra::{Matrix3, Vector3};
+
 use super::scale::{Level, Peak};
 use crate::photo::HalfPlanes;
 
-/// A channel that carries at least this share of the strongest one joins it in the plane of laser light.
-const JOIN_SHARE: f64 = 0.35;
+/// Share of the channels' own variance that is added before the inversion, so that no weight rests on a rounding error.
+const LOADING: f64 = 0.1;
+/// A channel of less relative weight is not worth reading.
+const LEAST_WEIGHT: f64 = 0.03;
+/// Cells that enter the covariance of the channels.
+const NOISE_SAMPLES: usize = 40_000;
 /// Light of a cell above which its colour is not trusted: part of it may clip.
 const TRUSTED_LIGHT: f64 = 0.6;
 /// Signal-to-noise ratio of a peak whose colour counts.
@@ -21,38 +27,75 @@ pub(super) struct Colour {
     pub(super) main: usize,
 }
 
-/// Colour of the spots in the photo.
+/// Colour of the spots in the photo, and the weights that show them best.
 ///
-/// The response of the matched filter at cells of 4 and 8 px, summed over the strong peaks that clip nowhere. The weights scale the sum so
-/// that a spot is as high as in its main channel: `w_c = s_c s_main / Σ s²` over the channels used.
+/// Colour: the response of the matched filter at cells of 4 px, summed over the strong peaks that clip nowhere.
 pub(super) fn of_spots(half: &HalfPlanes) -> Colour {
     if half.planes.len() < 3 {
         return Colour { share: [0.0; 3], weights: [1.0, 0.0, 0.0], main: 0 };
     }
-    let fine: Vec<_> = half.planes.iter().map(|plane| plane.halved()).collect();
-    let coarse: Vec<_> = fine.iter().map(|plane| plane.halved()).collect();
-    let light = |planes: &[crate::photo::Plane], cell_px| {
-        let levels: Vec<Level> = planes.iter().map(|plane| Level::of(plane, cell_px)).collect();
-        light_of_spots(&levels)
-    };
-    let (fine, coarse) = (light(&fine, 4.0), light(&coarse, 8.0));
-    let sum = |trusted: bool| {
-        let pick = |light: &[[f64; 3]; 2]| light[usize::from(!trusted)];
-        let (a, b) = (pick(&fine), pick(&coarse));
-        [a[0] + b[0], a[1] + b[1], a[2] + b[2]]
-    };
-    let trusted = sum(true);
-    let light = if trusted.iter().sum::<f64>() > 0.0 { trusted } else { sum(false) };
-    weigh(light)
+    let levels: Vec<Level> = half.planes.iter().map(|plane| Level::of(&plane.halved(), 4.0)).collect();
+    let [trusted, all] = light_of_spots(&levels);
+    let light = if trusted.iter().sum::<f64>() > 0.0 { trusted } else { all };
+    weigh(light, noise_covariance(&levels))
 }
 
-fn weigh(light: [f64; 3]) -> Colour {
+/// Weights `w = k N⁻¹ s` give the best signal-to-noise ratio for a spot of colour `s` in noise of covariance `N`
+/// between the channels; k keeps a spot as high as in its main channel, `Σ w s = s_main`.
+///
+/// The chroma rounding of a JPEG, for one, moves red against green and drops out of their sum.
+fn weigh(light: [f64; 3], noise: Matrix3<f64>) -> Colour {
     let total: f64 = light.iter().sum();
     let share = if total > 0.0 { light.map(|part| part / total) } else { [1.0 / 3.0; 3] };
     let main = (0..3).max_by(|&a, &b| share[a].total_cmp(&share[b])).unwrap_or(0);
-    let used = share.map(|part| if part >= JOIN_SHARE * share[main] { part } else { 0.0 });
-    let energy: f64 = used.iter().map(|part| part * part).sum();
-    Colour { share, weights: used.map(|part| part * share[main] / energy), main }
+    let loaded = noise + Matrix3::from_diagonal(&noise.diagonal()) * LOADING + Matrix3::identity() * (LOADING * noise.trace() / 3.0);
+    Colour { share, weights: non_negative_weights(share, main, loaded).into(), main }
+}
+
+/// The best weights of which none is negative or tiny: the channel with the lowest one is left out until none is.
+///
+/// A difference of channels would see the laser alone in theory; in practice it brings in what tone curves and chroma
+/// rounding do to each of them.
+fn non_negative_weights(share: [f64; 3], main: usize, noise: Matrix3<f64>) -> Vector3<f64> {
+    let mut used = [true; 3];
+    loop {
+        let kept = |i: usize| f64::from(u8::from(used[i]));
+        let shares = Vector3::from_fn(|i, _| share[i] * kept(i));
+        let noise = Matrix3::from_fn(|i, j| if i == j && !used[i] { 1.0 } else { noise[(i, j)] * kept(i) * kept(j) });
+        let only_main = Vector3::from_fn(|i, _| f64::from(u8::from(i == main)));
+        let Some(best) = noise.cholesky().map(|factor| factor.solve(&shares)) else { return only_main };
+        let scale = share[main] / best.dot(&shares);
+        let unused_last = Vector3::from_fn(|i, _| if used[i] { best[i] } else { f64::INFINITY });
+        let lowest = unused_last.imin();
+        if !scale.is_finite() || scale <= 0.0 {
+            return only_main;
+        }
+        if best[lowest] >= LEAST_WEIGHT * best.amax() {
+            return best * scale;
+        }
+        used[lowest] = false;
+    }
+}
+
+/// Covariance of the channels' responses, without their outliers.
+///
+/// Spots that remain do no harm: they add a multiple of `s s'`, which leaves the direction of `N⁻¹ s` alone.
+fn noise_covariance(levels: &[Level]) -> Matrix3<f64> {
+    let [red, green, blue] = levels else { return Matrix3::identity() };
+    let step = (red.response.len() / NOISE_SAMPLES).max(1) | 1;
+    let at = |i: usize| [red, green, blue].map(|level| f64::from(level.response[i]));
+    let samples: Vec<[f64; 3]> = (0..red.response.len()).step_by(step).map(at).collect();
+    let limit = [0, 1, 2].map(|channel| {
+        let mut scatter: Vec<f64> = samples.iter().map(|sample| sample[channel].abs()).collect();
+        let at = scatter.len() * 3 / 5;
+        if scatter.is_empty() { 0.0 } else { 25.0 * *scatter.select_nth_unstable_by(at, f64::total_cmp).1 }
+    });
+    let quiet = samples.iter().filter(|sample| (0..3).all(|c| sample[c].abs() <= limit[c]));
+    let (sum, count) = quiet.fold((Matrix3::zeros(), 0.0), |(sum, count), sample| {
+        let sample = Vector3::from(*sample);
+        (sum + sample * sample.transpose(), count + 1.0)
+    });
+    if count > 10.0 { sum / count } else { Matrix3::identity() }
 }
 
 /// Light of the strong peaks per channel: of those that clip nowhere, and of all.
@@ -89,7 +132,7 @@ mod tests {
     #[test]
     fn weights_keep_the_height_of_the_main_channel() {
         for light in [[0.0, 5.0, 0.0], [0.4, 0.1, 0.5], [1.0, 1.0, 1.0]] {
-            let colour = weigh(light);
+            let colour = weigh(light, nalgebra::Matrix3::new(2.0, -0.5, 0.1, -0.5, 1.0, 0.2, 0.1, 0.2, 3.0));
             let height: f64 = (0..3).map(|c| colour.weights[c] * colour.share[c]).sum();
             assert!((height - colour.share[colour.main]).abs() < 1e-12, "{colour:?}");
         }
@@ -97,6 +140,6 @@ mod tests {
 
     #[test]
     fn nothing_seen_is_treated_as_white() {
-        assert!((weigh([0.0; 3]).weights.iter().sum::<f64>() - 1.0).abs() < 1e-12);
+        assert!((weigh([0.0; 3], nalgebra::Matrix3::identity()).weights.iter().sum::<f64>() - 1.0).abs() < 1e-12);
     }
 }

@@ -11,6 +11,9 @@ const LEVELS: usize = 5;
 /// although its grains rise by half of it, and a field of spots is no blob although its mean rises.
 const LEVEL_FAVOUR: f64 = 0.5;
 
+/// Signal-to-noise ratio beyond which nothing is noise.
+const TAIL_END: f64 = 11.0;
+
 /// What was found, and what it took.
 pub(super) struct Detection {
     /// Strongest first.
@@ -23,26 +26,44 @@ pub(super) struct Detection {
 
 /// Searches a plane of cells of 2 px and its binnings.
 ///
-/// - `false_spots`: number of false spots per photo that normal noise may give; with `n` cells in all levels the threshold is the
-///   normal quantile at `1 - false_spots / n`
+/// - `false_spots`: number of false spots per photo that normal noise may give; with `n` cells in all levels the threshold starts at the
+///   normal quantile at `1 - false_spots / n`, and rises where the photo's own dips show that its noise has longer tails
 /// - `noise`: of one pixel of the photo, the least that is assumed anywhere
 pub(super) fn detect(half: &Plane, noise: Noise, false_spots: f64) -> Detection {
     let levels = levels(half);
     let cells: usize = levels.iter().map(|level| level.response.len()).sum();
-    let threshold = threshold(cells, false_spots);
-    let peaks_above = |threshold: f64| {
-        let floor = |cell_px: f64| move |light: f64| (noise.variance(light) * KERNEL_ENERGY).sqrt() / cell_px;
-        let mut peaks: Vec<Peak> = levels.iter().flat_map(|level| level.peaks(threshold, &floor(level.cell_px))).collect();
-        peaks.sort_by(|a, b| rank(b).total_cmp(&rank(a)));
-        peaks
-    };
-    let peaks = one_per_place(peaks_above(threshold), half);
+    let floor = |cell_px: f64| move |light: f64| (noise.variance(light) * KERNEL_ENERGY).sqrt() / cell_px;
+    let peaks_above = |threshold: f64| -> Vec<Peak> { levels.iter().flat_map(|level| level.peaks(threshold, &floor(level.cell_px))).collect() };
+    let normal = threshold(cells, false_spots);
+    let mut peaks = peaks_above(normal);
+    let dips: Vec<Peak> = levels.iter().flat_map(|level| level.dips(normal, &floor(level.cell_px))).collect();
+    let threshold = with_tails(normal, &peaks, &dips);
+    peaks.retain(|peak| peak.signal_to_noise > threshold);
+    peaks.sort_by(|a, b| rank(b).total_cmp(&rank(a)));
+    let peaks = one_per_place(peaks, half);
     let best_reject = if peaks.is_empty() {
-        peaks_above(0.5 * threshold).into_iter().max_by(|a, b| a.signal_to_noise.total_cmp(&b.signal_to_noise))
+        peaks_above(0.5 * normal).into_iter().max_by(|a, b| a.signal_to_noise.total_cmp(&b.signal_to_noise))
     } else {
         None
     };
     Detection { peaks, threshold, best_reject }
+}
+
+/// The lowest threshold above which dips are few: noise (JPEG blocks, demosaicing) makes as many dips as peaks.
+///
+/// At most two dips, or one for every twenty peaks, may remain between the threshold and `TAIL_END`; deeper ones are dark things
+/// (marks, dust, a ruler), not noise.
+fn with_tails(normal: f64, peaks: &[Peak], dips: &[Peak]) -> f64 {
+    let above = |list: &[Peak], threshold: f64, end: f64| list.iter().filter(|p| p.signal_to_noise > threshold && p.signal_to_noise < end).count();
+    let mut threshold = normal;
+    while threshold < TAIL_END {
+        let allowed = (above(peaks, threshold, f64::INFINITY) / 20).max(2);
+        if above(dips, threshold, TAIL_END) <= allowed {
+            break;
+        }
+        threshold += 0.25;
+    }
+    threshold
 }
 
 /// Level by level, each at half the resolution of the one before.

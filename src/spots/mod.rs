@@ -8,7 +8,7 @@ mod error;
 mod measure;
 mod profile;
 mod scale;
-mod speckle;
+mod scatter;
 mod window;
 
 pub use error::SpotError;
@@ -77,13 +77,14 @@ impl Default for SpotOptions {
 /// # Errors
 /// [`SpotError::NothingFound`] with the brightest thing seen.
 pub fn find(photo: &Photo, options: &SpotOptions) -> Result<Spots, SpotError> {
-    let linear = photo.linear();
-    let half = linear.half_planes();
-    let colour = colour::of_spots(&half);
+    let t0 = std::time::Instant::now(); let lap = |n: &str| if std::env::var_os("LAP").is_some() { eprintln!("{n} {:.1}", t0.elapsed().as_secs_f64()*1e3) };
+    let linear = photo.linear();lap("linear");
+    let half = linear.half_planes();lap("half");
+    let colour = colour::of_spots(&half);lap("colour");
     let plane = half.mixed(colour.weights);
-    let noise = plane.halved().noise(16.0);
-    let found = detect::detect(&plane, noise, options.false_spots);
-    let mut spots = measure::measure(&linear, &colour, noise, &found);
+    let noise = plane.halved().noise(16.0);lap("noise");
+    let found = detect::detect(&plane, noise, options.false_spots);lap("detect");
+    let mut spots = measure::measure(&linear, &colour, noise, &found);lap("measure");
     if spots.is_empty() {
         let best = found.peaks.first().copied().or(found.best_reject);
         return Err(SpotError::NothingFound {

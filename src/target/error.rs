@@ -70,4 +70,28 @@ pub enum TargetError {
          a printed face towards the camera cannot look like this: undo the mirroring of the photo, or turn the print's face to the camera"
     )]
     Mirrored,
+    /// The pitch of a target to be drawn is no positive number.
+    #[error("a target needs a pitch above zero, not {pitch_mm} mm; 10 mm suits an A4 sheet")]
+    PitchNotPositive {
+        /// Pitch asked for, mm.
+        pitch_mm: f64,
+    },
+    /// The pitch of a target to be drawn is too small for a printer.
+    #[error("a pitch of {pitch_mm} mm gives dots too small to print round; use {least_mm} mm or more")]
+    PitchTooSmall {
+        /// Pitch asked for, mm.
+        pitch_mm: f64,
+        /// Least pitch, mm.
+        least_mm: f64,
+    },
+    /// Too few dots fit the paper.
+    #[error("at a pitch of {pitch_mm} mm fewer than 5 x 5 dots fit on {paper}; use at most {most_mm:.1} mm or a larger sheet")]
+    PitchTooLarge {
+        /// Pitch asked for, mm.
+        pitch_mm: f64,
+        /// Name of the paper.
+        paper: &'static str,
+        /// Largest pitch that fits, mm.
+        most_mm: f64,
+    },
 }

@@ -55,6 +55,7 @@ impl Binned {
 }
 
 /// Adds each group of `bin` samples of `line` to its sum; NaN counts as no light.
+#[expect(clippy::manual_clamp, reason = "max and min turn NaN into 0, clamp would keep it")]
 fn add_groups(sums: &mut [f32], line: &[f32], bin: usize) {
     for (sum, group) in sums.iter_mut().zip(line.chunks_exact(bin)) {
         *sum += group.iter().map(|v| v.max(0.0).min(BRIGHTEST)).sum::<f32>();
@@ -89,13 +90,11 @@ impl PaperLevel {
     /// Fills `line` with the paper level along row `y` of the binned photo (bilinear between cell centres).
     pub(super) fn row(&self, y: usize, line: &mut [f32]) {
         let (top, below, v) = between(y, self.rows);
-        let cell = |column: usize| {
-            let upper = self.value[top * self.columns + column];
-            upper + v * (self.value[below * self.columns + column] - upper)
-        };
+        let line_of = |row: usize| &self.value[row * self.columns..(row + 1) * self.columns];
+        let cells: Vec<f32> = line_of(top).iter().zip(line_of(below)).map(|(a, b)| a + v * (b - a)).collect();
         for (x, out) in line.iter_mut().enumerate() {
             let (left, right, u) = between(x, self.columns);
-            let (a, b) = (cell(left), cell(right));
+            let (a, b) = (cells[left], cells[right]);
             *out = a + u * (b - a);
         }
     }
@@ -124,13 +123,13 @@ fn between(x: usize, cells: usize) -> (usize, usize, f32) {
 /// Brightest 2 × 2 mean of each cell: a bright paper pixel counts, a noisy one does not.
 fn cell_maxima(plane: &Binned, columns: usize, rows: usize) -> Vec<f32> {
     let mut value = vec![0.0_f32; columns * rows];
-    for y in 0..plane.height.saturating_sub(1) {
-        let upper = &plane.value[y * plane.width..(y + 1) * plane.width];
-        let lower = &plane.value[(y + 1) * plane.width..(y + 2) * plane.width];
-        let cells = &mut value[(y / CELL) * columns..(y / CELL + 1) * columns];
+    for (y, pair) in plane.value.chunks_exact(2 * plane.width).enumerate() {
+        let (upper, lower) = pair.split_at(plane.width);
+        let row = 2 * y / CELL;
+        let cells = &mut value[row * columns..(row + 1) * columns];
         for (cell, (u, l)) in cells.iter_mut().zip(upper.chunks(CELL).zip(lower.chunks(CELL))) {
-            let brightest = u.windows(2).zip(l.windows(2)).map(|(u, l)| u[0] + u[1] + l[0] + l[1]).fold(0.0_f32, f32::max);
-            *cell = cell.max(brightest / 4.0);
+            let squares = u.chunks_exact(2).zip(l.chunks_exact(2)).map(|(u, l)| (u[0] + u[1] + l[0] + l[1]) / 4.0);
+            *cell = squares.fold(*cell, f32::max);
         }
     }
     value

@@ -8,6 +8,7 @@ use super::{
     error::TargetError,
     grid::{Places, largest_grid},
     homography::homography,
+    is_mark,
     marks::{Hand, Orientation, orientation},
     median,
     paper::{Binned, PaperLevel, small_f64},
@@ -104,12 +105,12 @@ pub fn read(grey: &Light, options: &ReadOptions) -> Result<Reading, TargetError>
         match read_at_scale(grey, bin, options) {
             Ok(Scaled { reading, small_blobs }) => {
                 // Tiny blobs lose their shape in binning: look closer, keep the better reading.
-                if small_blobs && bin > 1 {
-                    if let Ok(finer) = read_at_scale(grey, bin / 2, options) {
-                        if finer.reading.dots.len() >= reading.dots.len() {
-                            return Ok(finer.reading);
-                        }
-                    }
+                if small_blobs
+                    && bin > 1
+                    && let Ok(finer) = read_at_scale(grey, bin / 2, options)
+                    && finer.reading.dots.len() >= reading.dots.len()
+                {
+                    return Ok(finer.reading);
                 }
                 return Ok(reading);
             }
@@ -213,6 +214,7 @@ fn settle(places: &mut Places, blobs: &[Blob], grey: &Light) -> Option<View> {
         let dots: Vec<Seen> = seen.iter().map(|(_, dot)| *dot).collect();
         let fitted = View::fit(&dots, width, height)?;
         let scatter = fitted.scatter(&dots);
+        let before = places.len();
         for (place, dot) in &seen {
             let [x, y] = fitted.residual_px(dot);
             let step = shorter_step(fitted.steps(dot.index));
@@ -220,8 +222,12 @@ fn settle(places: &mut Places, blobs: &[Blob], grey: &Light) -> Option<View> {
                 places.remove(place);
             }
         }
+        let removed = before - places.len();
         take_in(places, blobs, &fitted);
         view = Some(fitted);
+        if removed == 0 && places.len() == before {
+            break;
+        }
     }
     view
 }
@@ -285,11 +291,6 @@ fn find_orientation(
         Marks::Required => orientation(radius, hand),
         Marks::Absent => Ok(Orientation::without_marks(central, [x[0], y[0]], hand)),
     }
-}
-
-/// The three larger dots.
-fn is_mark(index: (i32, i32)) -> bool {
-    [(0, 0), (2, 0), (0, 1)].contains(&index)
 }
 
 /// Full-resolution centroids, weeded and with covariances that match their scatter about a smooth view.
@@ -358,11 +359,11 @@ fn finish(found: &[((i32, i32), Darkness)], marks: bool, needed: usize, width: f
     };
     let all: Vec<Seen> = found.iter().map(|(index, d)| seen(*index, d)).collect();
     let view = View::fit(&all, width, height)?;
-    let scale = view.scatter(&all).max(1.0);
+    let local = Residuals::of(found, &all, &view);
+    let scale = local.scatter().unwrap_or_else(|| view.scatter(&all)).max(1.0);
     let mut dots: Vec<Dot> = Vec::new();
     for ((index, d), dot) in found.iter().zip(&all) {
-        let [x, y] = view.residual_px(dot);
-        if x.hypot(y) <= 5.0 * scale * dot.u_px + 0.01 {
+        if local.off_px(*index, dot) <= OUTLIER * scale * dot.u_px + 0.01 {
             let c = d.covariance;
             let s2 = scale * scale;
             let covariance = PixelCovariance { xx: c.xx * s2, xy: c.xy * s2, yy: c.yy * s2 };
@@ -376,6 +377,56 @@ fn finish(found: &[((i32, i32), Darkness)], marks: bool, needed: usize, width: f
     let pairs: Vec<_> = dots.iter().map(|dot| (grid_point(dot.index), [dot.at.x_px, dot.at.y_px])).collect();
     let pixel_from_pitches = homography(&pairs)?;
     Some(Reading { dots, dot_radius_pitches, mark_radius_pitches, pixel_from_pitches, notes: Vec::new() })
+}
+
+/// Farther than this many standard uncertainties from its neighbours' trend a dot is left out.
+const OUTLIER: f64 = 5.0;
+
+/// Residuals about the smooth view, seen against those of the neighbours: what a real lens does beyond
+/// the view's few terms is smooth and cancels there, noise and glare do not.
+struct Residuals {
+    at: HashMap<(i32, i32), ([f64; 2], f64)>,
+}
+
+impl Residuals {
+    fn of(found: &[((i32, i32), Darkness)], seen: &[Seen], view: &View) -> Self {
+        let at = found.iter().zip(seen).map(|((index, _), dot)| (*index, (view.residual_px(dot), dot.u_px))).collect();
+        Self { at }
+    }
+
+    fn neighbours(&self, (i, j): (i32, i32)) -> impl Iterator<Item = &([f64; 2], f64)> {
+        let around = [(-1, 0), (1, 0), (0, -1), (0, 1), (-1, -1), (1, 1), (-1, 1), (1, -1)];
+        around.into_iter().filter_map(move |(di, dj)| self.at.get(&(i + di, j + dj)))
+    }
+
+    /// Robust scatter of the differences to the mean of the neighbours, in units of their stated uncertainty.
+    fn scatter(&self) -> Option<f64> {
+        let mut sizes: Vec<f64> = Vec::new();
+        for (index, (residual, u_px)) in &self.at {
+            let (mut n, mut mean, mut u2) = (0.0, [0.0; 2], 0.0);
+            for (other, u) in self.neighbours(*index) {
+                n += 1.0;
+                mean = [mean[0] + other[0], mean[1] + other[1]];
+                u2 += u * u;
+            }
+            if n >= 5.0 {
+                let expected = (u_px * u_px + u2 / (n * n)).sqrt();
+                sizes.extend([0, 1].map(|c| ((residual[c] - mean[c] / n) / expected).abs()));
+            }
+        }
+        (sizes.len() >= 30).then(|| median(&mut sizes))?.map(|m| 1.4826 * m)
+    }
+
+    /// Distance from the median of the neighbours' residuals, or from the view where there are too few.
+    fn off_px(&self, index: (i32, i32), dot: &Seen) -> f64 {
+        let trend = [0, 1].map(|c| {
+            let mut values: Vec<f64> = self.neighbours(index).map(|(r, _)| r[c]).collect();
+            if values.len() < 5 { None } else { median(&mut values) }
+        });
+        let own = self.at.get(&index).map_or([0.0; 2], |(r, _)| *r);
+        let _ = dot;
+        (own[0] - trend[0].unwrap_or(0.0)).hypot(own[1] - trend[1].unwrap_or(0.0))
+    }
 }
 
 /// Contrast of ink and paper, from the larger dots where there are any: their cores are least blurred.

@@ -3,7 +3,7 @@
 //! This is no camera model (pose and focal length are not told apart); it predicts places well enough to
 //! weed out wrong dots and to judge the scatter of the rest.
 
-use nalgebra::{DMatrix, DVector};
+use nalgebra::{SMatrix, SVector};
 
 use super::homography::homography;
 use crate::frames::PixelPoint;
@@ -38,6 +38,12 @@ const MOST_PARAMETERS: usize = 12;
 /// Tukey's biweight constant, 95 % efficient for normal residuals (Beaton & Tukey 1974, common practice).
 const TUKEY: f64 = 4.685;
 
+/// Steps after which the fit is taken as it is.
+const MOST_ROUNDS: usize = 15;
+
+/// The fit has settled when no dot moves by more than this share of its uncertainty.
+const SETTLED: f64 = 0.02;
+
 impl View {
     /// Robust fit to the dots (iteratively reweighted least squares with Tukey's biweight).
     ///
@@ -56,11 +62,16 @@ impl View {
             _ => MOST_PARAMETERS,
         };
         let mut weights = vec![1.0; seen.len()];
-        for _ in 0..6 {
-            for _ in 0..3 {
-                view = view.step(seen, &weights, parameters)?;
+        for round in 0..MOST_ROUNDS {
+            let next = view.step(seen, &weights, parameters)?;
+            let moved = seen.iter().map(|dot| next.moved_px(&view, dot) / dot.u_px).fold(0.0, f64::max);
+            view = next;
+            if round > 1 {
+                weights = view.tukey_weights(seen);
             }
-            weights = view.tukey_weights(seen);
+            if round > 3 && moved < SETTLED {
+                break;
+            }
         }
         Some(view)
     }
@@ -125,6 +136,10 @@ impl View {
         1.4826 * super::median(&mut sizes).unwrap_or(0.0) * (2.0 * super::paper::small_f64(seen.len()) / spare).sqrt()
     }
 
+    fn moved_px(&self, before: &Self, dot: &Seen) -> f64 {
+        self.disc_centroid(dot.index, 0.0).distance_px(before.disc_centroid(dot.index, 0.0))
+    }
+
     fn pixel(&self, u: [f64; 2]) -> PixelPoint {
         let [k1, k2, p1, p2] = self.distortion;
         let [x, y] = u;
@@ -146,28 +161,24 @@ impl View {
         seen.iter().map(weight).collect()
     }
 
-    /// One Gauss-Newton step with a trace of damping.
+    /// One Gauss-Newton step with a trace of damping; parameters from `parameters` on stay as they are.
     fn step(&self, seen: &[Seen], weights: &[f64], parameters: usize) -> Option<Self> {
-        let mut normal = DMatrix::<f64>::zeros(parameters, parameters);
-        let mut right = DVector::<f64>::zeros(parameters);
-        for (dot, weight) in seen.iter().zip(weights) {
+        let mut normal = SMatrix::<f64, MOST_PARAMETERS, MOST_PARAMETERS>::zeros();
+        let mut right = SVector::<f64, MOST_PARAMETERS>::zeros();
+        for (dot, weight) in seen.iter().zip(weights).filter(|(_, weight)| **weight > 0.0) {
             let residual = self.residual_px(dot);
-            let rows = self.derivatives(dot.index);
             let weight = weight / (dot.u_px * dot.u_px);
-            for (row, residual) in rows.iter().zip(residual) {
-                for a in 0..parameters {
-                    right[a] += weight * row[a] * residual;
-                    for b in 0..=a {
-                        normal[(a, b)] += weight * row[a] * row[b];
-                    }
-                }
+            for (row, residual) in self.derivatives(dot.index).into_iter().zip(residual) {
+                let row = SVector::<f64, MOST_PARAMETERS>::from(row);
+                right.axpy(weight * residual, &row, 1.0);
+                normal.ger(weight, &row, &row, 1.0);
             }
         }
-        for a in 0..parameters {
-            normal[(a, a)] *= 1.0 + 1e-9;
-            for b in 0..a {
-                normal[(b, a)] = normal[(a, b)];
-            }
+        for a in parameters..MOST_PARAMETERS {
+            normal.row_mut(a).fill(0.0);
+            normal.column_mut(a).fill(0.0);
+            normal[(a, a)] = 1.0;
+            right[a] = 0.0;
         }
         let change = scaled_solve(normal, right)?;
         let mut next = self.clone();
@@ -205,21 +216,17 @@ impl View {
     }
 }
 
-/// Solves a symmetric positive system after scaling its diagonal to 1.
-fn scaled_solve(mut normal: DMatrix<f64>, mut right: DVector<f64>) -> Option<DVector<f64>> {
-    let n = right.len();
-    let scale: Vec<f64> = (0..n).map(|a| normal[(a, a)].max(f64::MIN_POSITIVE).sqrt()).collect();
-    for a in 0..n {
-        right[a] /= scale[a];
-        for b in 0..n {
-            normal[(a, b)] /= scale[a] * scale[b];
-        }
+/// Solves a symmetric positive system after scaling its diagonal to 1 (and a trace more, against rounding).
+fn scaled_solve(
+    normal: SMatrix<f64, MOST_PARAMETERS, MOST_PARAMETERS>,
+    right: SVector<f64, MOST_PARAMETERS>,
+) -> Option<SVector<f64, MOST_PARAMETERS>> {
+    let scale = normal.diagonal().map(|d| 1.0 / d.max(f64::MIN_POSITIVE).sqrt());
+    let mut scaled = SMatrix::from_diagonal(&scale) * normal * SMatrix::from_diagonal(&scale);
+    for a in 0..MOST_PARAMETERS {
+        scaled[(a, a)] *= 1.0 + 1e-9;
     }
-    let mut solution = normal.cholesky()?.solve(&right);
-    for a in 0..n {
-        solution[a] /= scale[a];
-    }
-    Some(solution)
+    Some(scaled.cholesky()?.solve(&right.component_mul(&scale)).component_mul(&scale))
 }
 
 /// Solves [m0 m1; m2 m3] v = r.
