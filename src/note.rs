@@ -83,6 +83,17 @@ pub enum Note {
         belongs_to: crate::bench::Medium,
     },
     // fit
+    /// The photo and a statement of the bench file do not go together.
+    StatementStrained {
+        /// What was stated.
+        what: String,
+        /// As stated, with unit.
+        stated: String,
+        /// As the photo wants it, with unit.
+        found: String,
+        /// Distance in stated standard uncertainties.
+        pull: f64,
+    },
 }
 
 impl Note {
@@ -101,6 +112,7 @@ impl Note {
             Self::SecondLattice { .. } => "second-lattice",
             Self::Ghosts { .. } => "ghosts",
             Self::ShapeUncertain { .. } => "line-or-plane-uncertain",
+            Self::StatementStrained { .. } => "statement-strained",
             Self::StandardAirAssumed => "standard-air-assumed",
             Self::AirNotUsed => "air-not-used",
             Self::WavelengthInOtherMedium { .. } => "wavelength-in-other-medium",
@@ -146,6 +158,11 @@ impl std::fmt::Display for Note {
             Self::ShapeUncertain { lead } => write!(
                 f,
                 "a single row and a plane lattice are nearly equally likely ({lead:.1} nats apart): state [sample] pattern = \"line\" or \"plane\" if you know"
+            ),
+            Self::StatementStrained { what, stated, found, pull } => write!(
+                f,
+                "{what}: stated {stated}, but the photo wants {found}, {:.1} standard uncertainties away: measure it again, or state it with an honest uncertainty",
+                pull.abs()
             ),
             Self::StandardAirAssumed => f.write_str(
                 "wavelength stated in vacuum, air not fully stated: 20(3) degC, 1013(30) hPa, 50(20) % humidity assumed for what is missing; state [air], above all the pressure at more than 300 m above the sea",

@@ -61,7 +61,7 @@ pub(super) fn print_places(layout: &Layout, view: usize, first: [Option<Paramete
 
 fn camera_parameters(view: usize) -> [Parameter; 13] {
     [
-        Parameter::FocalLength,
+        Parameter::LogFocalLength,
         Parameter::PrincipalPoint { axis: 0 },
         Parameter::PrincipalPoint { axis: 1 },
         Parameter::RadialDistortion { term: 0 },
@@ -95,7 +95,7 @@ pub(super) fn seeded<const N: usize>(layout: &Layout, values: &[f64], places: &P
 
 pub(super) fn camera<D: DualNum<f64> + Copy>(v: &[D], reference: Matrix3<f64>) -> Camera<D> {
     Camera {
-        focal_px: v[0],
+        focal_px: v[0].exp(),
         principal_px: [v[1], v[2]],
         distortion: Distortion { radial: [v[3], v[4]], tangential: [v[5], v[6]] },
         turn_rad: [v[7], v[8], v[9]],

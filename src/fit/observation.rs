@@ -34,6 +34,14 @@ pub struct PrintObservation {
     pub weight: f64,
 }
 
+impl PrintObservation {
+    /// Whether it is a dot of the printed target.
+    #[must_use]
+    pub fn is_dot(&self) -> bool {
+        matches!(self.place, PrintPlace::Pitches(_))
+    }
+}
+
 /// Where on the print a point is.
 #[derive(Debug, Clone, Copy, PartialEq)]
 pub enum PrintPlace {

@@ -47,8 +47,8 @@ pub enum Parameter {
     PrintTurn,
     /// Distance of neighbouring dots of the target, m.
     TargetPitch,
-    /// Focal length, px.
-    FocalLength,
+    /// Natural logarithm of the focal length in px: a factor is what is known of it, and it can never reach zero.
+    LogFocalLength,
     /// Principal point, px.
     PrincipalPoint {
         /// x or y.

@@ -77,8 +77,9 @@ pub fn add_camera(layout: &mut Layout, lens: &LensKnowledge, views: &[ViewStart]
     let [width, height] = lens.size_px;
     let u_principal = PRINCIPAL_POINT_U_WIDTHS * width.max(height);
     let normal = |mean, u| Prior::Normal { mean, u };
-    let focal = normal(lens.focal_px, lens.u_focal_px);
-    layout.add(entry(Parameter::FocalLength, lens.focal_px, focal, Source::FocalLength, 0.01 * lens.focal_px));
+    // Known as a factor: ln f has the relative uncertainty of f.
+    let (log_focal, ur_focal) = (lens.focal_px.ln(), (lens.u_focal_px / lens.focal_px).max(1e-9));
+    layout.add(entry(Parameter::LogFocalLength, log_focal, normal(log_focal, ur_focal), Source::FocalLength, 0.01));
     for (axis, centre) in [(width - 1.0) / 2.0, (height - 1.0) / 2.0].into_iter().enumerate() {
         layout.add(entry(Parameter::PrincipalPoint { axis }, centre, normal(centre, u_principal), Source::Lens, 1.0));
     }

@@ -102,9 +102,11 @@ fn reweigh(joint: &mut Joint, weight: impl Fn(f64, f64) -> f64) -> bool {
     for (spot, length) in joint.spots.iter_mut().zip(lengths) {
         apply(&mut spot.weight, length, scale);
     }
+    // Only the many dots of a printed target can spare one; marks and scale ends are stated by the operator and stay.
     let lengths = joint.print_lengths();
-    let scale = spread(&lengths);
-    for (print, length) in joint.prints.iter_mut().zip(lengths) {
+    let dots: Vec<Option<f64>> = joint.prints.iter().zip(&lengths).filter(|(print, _)| print.is_dot()).map(|(_, length)| *length).collect();
+    let scale = spread(&dots);
+    for (print, length) in joint.prints.iter_mut().zip(lengths).filter(|(print, _)| print.is_dot()) {
         apply(&mut print.weight, length, scale);
     }
     changed

@@ -172,13 +172,21 @@ fn parameter_rows(bench: &Bench, fit: &Fit) -> Vec<ParameterRow> {
             Prior::Exact => Some((entry.value, 0.0)),
             Prior::Free => None,
         };
-        ParameterRow { name, unit, prior, value: entry.value, u }
+        let row = ParameterRow { name, unit, prior, value: entry.value, u };
+        if entry.parameter == Parameter::LogFocalLength { from_logarithm(row) } else { row }
     };
     layout.entries().iter().enumerate().map(row).collect()
 }
 
+/// A row whose parameter is a logarithm, as the quantity itself.
+fn from_logarithm(row: ParameterRow) -> ParameterRow {
+    let natural = |(log, u): (f64, f64)| (log.exp(), log.exp() * u);
+    let (value, u) = natural((row.value, row.u));
+    ParameterRow { prior: row.prior.map(natural), value, u, ..row }
+}
+
 /// Name and unit of a parameter for reports.
-fn described(bench: &Bench, parameter: Parameter) -> (String, ParameterUnit) {
+pub(super) fn described(bench: &Bench, parameter: Parameter) -> (String, ParameterUnit) {
     let axis_name = |axis: usize| ["x", "y", "z"][axis.min(2)];
     let of = |name: &str, what: String| if name.is_empty() { what } else { format!("{what} of {name}") };
     match parameter {
@@ -195,7 +203,7 @@ fn described(bench: &Bench, parameter: Parameter) -> (String, ParameterUnit) {
         Parameter::ZeroOrderOnPrint { axis } => (format!("zero order on target {}", ["X", "Y"][axis.min(1)]), ParameterUnit::Length),
         Parameter::PrintTurn => ("target turn".to_owned(), ParameterUnit::Angle),
         Parameter::TargetPitch => ("target pitch".to_owned(), ParameterUnit::Length),
-        Parameter::FocalLength => ("focal length".to_owned(), ParameterUnit::Pixel),
+        Parameter::LogFocalLength => ("focal length".to_owned(), ParameterUnit::Pixel),
         Parameter::PrincipalPoint { axis } => (format!("principal point {}", axis_name(axis)), ParameterUnit::Pixel),
         Parameter::RadialDistortion { term } => (format!("distortion k{}", term + 1), ParameterUnit::Number),
         Parameter::TangentialDistortion { term } => (format!("distortion p{}", term + 1), ParameterUnit::Number),

@@ -4,6 +4,7 @@
 
 mod align;
 mod assemble;
+mod bounds;
 mod cameras;
 mod conclude;
 mod error;
@@ -13,6 +14,7 @@ mod orders;
 mod rough;
 mod scan;
 mod statement;
+mod strain;
 mod strays;
 mod view;
 mod zero_order;
@@ -53,7 +55,8 @@ pub fn measure(inputs: &Inputs<'_>, bench: &Bench) -> Result<Measurement, Refusa
     statement::enough_spots(&joint)?;
     let fit = solve(joint, Outliers::Rejected)?;
     let (ordered, fit) = zero_order::best_zero_order(&seen, bench, &cameras, ordered, &wavelengths_m, fit)?;
-    let fit = strays::taken_in(&seen, fit)?;
+    let fit = strays::taken_in(&seen, bench, fit)?;
     notes.extend(statement::numbering_notes(&ordered));
+    notes.extend(strain::strained_statements(bench, &fit));
     conclude::conclude(inputs, bench, &seen, &ordered, &fit, notes).map_err(Refusal::from)
 }

@@ -28,14 +28,14 @@ pub(super) struct Roughness {
 const ZERO_ORDER_PASSES: usize = 3;
 
 /// Indexes the spots of a photo. The zero order is first taken to be the brightest spot.
-pub(super) fn order_spots(spots: &[Spot], mut rough: Rough, roughness: Roughness) -> Result<Ordered, LatticeError> {
+pub(super) fn order_spots(spots: &[Spot], mut rough: Rough, roughness: Roughness, on_screen: &dyn Fn(&Spot) -> bool) -> Result<Ordered, LatticeError> {
     let mut zero = brightest(spots).unwrap_or(PixelPoint { x_px: rough.size_px[0] / 2.0, y_px: rough.size_px[1] / 2.0 });
     let mut last = None;
     for _ in 0..ZERO_ORDER_PASSES {
         if !rough.put_zero_order(zero) {
             break;
         }
-        let (points, spot_of_point) = points(spots, &rough);
+        let (points, spot_of_point) = points(spots, &rough, on_screen);
         let options = IndexOptions { expected: roughness.expected, bend: roughness.bend, ..IndexOptions::default() };
         let indexed = lattice::index(&points, &options, &|place| rough.in_frame(place))?;
         let found = rough.pixel(indexed.zero);
@@ -57,20 +57,20 @@ pub(super) fn light_of(spot: &Spot) -> f64 {
     spot.peak * (spot.shape.xx * spot.shape.yy - spot.shape.xy.powi(2)).max(0.0).sqrt()
 }
 
-fn points(spots: &[Spot], rough: &Rough) -> (Vec<Point>, Vec<usize>) {
+fn points(spots: &[Spot], rough: &Rough, on_screen: &dyn Fn(&Spot) -> bool) -> (Vec<Point>, Vec<usize>) {
     let point = |(i, spot): (usize, &Spot)| {
         let at = rough.lattice_place(spot.at)?;
         let u = rough.lattice_u(spot.at, spot.covariance)?;
         Some((Point::new(at, u, light_of(spot).max(1e-12)), i))
     };
-    spots.iter().enumerate().filter_map(point).unzip()
+    spots.iter().enumerate().filter(|(_, spot)| on_screen(spot)).filter_map(point).unzip()
 }
 
 impl Ordered {
     /// Why a spot carries no order, in words.
     pub(super) fn reason(&self, spot: usize) -> String {
         let Some(point) = self.spot_of_point.iter().position(|&s| s == spot) else {
-            return "not on the screen as the camera model sees it".to_owned();
+            return "not on the known part of the screen".to_owned();
         };
         let reason = self.indexed.rejected.iter().find(|(rejected, _)| *rejected == point);
         reason.map_or_else(|| "off the model".to_owned(), |(_, reason)| in_words(reason))

@@ -1,7 +1,8 @@
 //! After the fit the model predicts every order to a fraction of a pixel: spots that indexing left aside are taken in where it says so.
 
-use super::look::Seen;
+use super::{bounds::on_screen, look::Seen};
 use crate::{
+    bench::Bench,
     fit::{Fit, FitError, Outliers, SpotObservation, solve},
     frames::PixelPoint,
 };
@@ -13,9 +14,9 @@ const TAKE_AT: f64 = 4.0;
 const BEYOND: i32 = 4;
 
 /// Fits again with the strays that fall on vacant orders, until there are none.
-pub(super) fn taken_in(seen: &Seen, mut fit: Fit) -> Result<Fit, FitError> {
+pub(super) fn taken_in(seen: &Seen, bench: &Bench, mut fit: Fit) -> Result<Fit, FitError> {
     for _ in 0..3 {
-        let found = strays(seen, &fit);
+        let found = strays(seen, bench, &fit);
         if found.is_empty() {
             break;
         }
@@ -28,7 +29,7 @@ pub(super) fn taken_in(seen: &Seen, mut fit: Fit) -> Result<Fit, FitError> {
     Ok(fit)
 }
 
-fn strays(seen: &Seen, fit: &Fit) -> Vec<SpotObservation> {
+fn strays(seen: &Seen, bench: &Bench, fit: &Fit) -> Vec<SpotObservation> {
     let values = fit.joint.values();
     let mut found = Vec::new();
     for (photo, pattern) in seen.patterns.iter().enumerate() {
@@ -37,7 +38,7 @@ fn strays(seen: &Seen, fit: &Fit) -> Vec<SpotObservation> {
         let orders = vacant(&of_photo, &taken);
         let predicted = fit.joint.predict(&values, photo, &orders);
         for (number, spot) in pattern.spots.spots.iter().enumerate() {
-            if of_photo.iter().any(|used| used.spot == number) {
+            if of_photo.iter().any(|used| used.spot == number) || !on_screen(bench, spot) {
                 continue;
             }
             let nearest = orders.iter().zip(&predicted).filter_map(|(&order, place)| {
