@@ -99,6 +99,16 @@ impl<'a> Section<'a> {
         self.node(key).map(|node| stated(node, &self.path_of(key), dimension)).transpose()
     }
 
+    /// An uncertainty that stands alone, as a [`Stated`] with the uncertainty for its value.
+    pub(super) fn uncertainty(&self, key: &str, dimension: Dimension) -> Result<Option<Stated>, BenchError> {
+        let Some(text) = self.text(key, "an uncertainty in quotes, such as \"2 px (k=1)\"")? else { return Ok(None) };
+        let place = self.place(key);
+        match Quantity::parse_uncertainty(text, dimension) {
+            Ok(u) => Ok(Some(Stated { quantity: Quantity::exact(u), place, text: text.trim().to_owned() })),
+            Err(reason) => Err(BenchError::Quantity { place, reason: Box::new(reason) }),
+        }
+    }
+
     /// Two quantities: about x, about y.
     pub(super) fn pair(&self, key: &str, dimension: Dimension) -> Result<Option<[Stated; 2]>, BenchError> {
         let Some(node) = self.node(key) else { return Ok(None) };

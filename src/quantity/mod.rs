@@ -6,6 +6,7 @@ mod error;
 mod number;
 mod parse;
 mod print;
+mod reader;
 mod spelling;
 mod unit;
 
