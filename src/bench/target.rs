@@ -52,8 +52,8 @@ fn refuse_stray_marks_u(section: &Section<'_>, kind: &str) -> Result<(), BenchEr
 }
 
 fn read_kind(section: &Section<'_>, kind: &str, seen_from: Side) -> Result<TargetKind, BenchError> {
-    const DOTS: Sense = Sense { what: "distance of printed dots", range: 0.2e-3..=1.0, low: "0.2 mm", high: "1 m" };
-    const LINES: Sense = Sense { what: "distance of ruled lines", range: 0.2e-3..=1.0, low: "0.2 mm", high: "1 m" };
+    const DOTS: Sense = Sense { what: "distance of printed dots", range: 0.2e-3..=1.0, range_in_words: "0.2 mm to 1 m" };
+    const LINES: Sense = Sense { what: "distance of ruled lines", range: 0.2e-3..=1.0, range_in_words: "0.2 mm to 1 m" };
     let photo = section.text("photo", "a file name in quotes, such as \"target.jpg\"")?.map(str::to_owned);
     let pitch = |sense: &Sense| match section.quantity(kind, Dimension::Length)? {
         Some(stated) => stated.sensible_and_known(sense),
@@ -75,10 +75,10 @@ fn read_kind(section: &Section<'_>, kind: &str, seen_from: Side) -> Result<Targe
 }
 
 fn read_marks(section: &Section<'_>, seen_from: Side) -> Result<TargetKind, BenchError> {
-    const U: Sense = Sense { what: "uncertainty of a mark", range: 1e-3..=1e3, low: "0.001 px", high: "1000 px" };
+    const U: Sense = Sense { what: "uncertainty of a mark", range: 1e-3..=1e3, range_in_words: "0.001 px to 1000 px" };
     let items = section.list("marks", MARKS)?.unwrap_or(&[]);
     if !(4..=MOST_MARKS).contains(&items.len()) {
-        return Err(BenchError::TooFewMarks { place: section.place("marks"), found: items.len() });
+        return Err(BenchError::NumberOfMarks { place: section.place("marks"), found: items.len() });
     }
     let marks = items.iter().map(|item| read_mark(item, &section.path_of("marks"))).collect::<Result<Vec<_>, _>>()?;
     Shape { section, marks: &marks }.check(seen_from)?;
@@ -241,7 +241,7 @@ mod tests {
 
     #[test]
     fn marks_that_fix_no_view_are_refused() {
-        assert!(refusal(&CORNERS[..3]).contains("3 marks; at least 4"));
+        assert!(refusal(&CORNERS[..3]).contains("3 marks; 4 to 1000"));
         let mut twice = CORNERS;
         twice[2].1 = twice[0].1;
         assert!(refusal(&twice).contains("marks 1 and 3 have the same mm"));

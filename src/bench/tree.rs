@@ -176,7 +176,7 @@ fn syntax_advice(line: &str) -> &'static str {
     if value.is_empty() {
         "; write the value behind =, or take the line out when nothing is known"
     } else if !value.starts_with(['"', '\'', '[', '{']) {
-        "; a quantity stands in quotes: \"812(1) mm\""
+        "; texts stand in quotes, quantities too: \"812(1) mm\""
     } else {
         "; check quotes, brackets and commas, and that no key stands twice"
     }

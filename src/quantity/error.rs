@@ -87,7 +87,7 @@ pub enum QuantityError {
         advice: String,
     },
     /// A unit of another dimension.
-    #[error("\"{seen}\": {unit} is a unit of {found}, but a {needed} is needed (accepted: {accepted})")]
+    #[error("\"{seen}\": {unit} is a unit of {found}, but {needed} is needed (accepted: {accepted})")]
     WrongDimension {
         /// As written.
         seen: String,
@@ -95,7 +95,7 @@ pub enum QuantityError {
         unit: String,
         /// What that unit measures.
         found: &'static str,
-        /// What is needed.
+        /// What is needed, with its article.
         needed: &'static str,
         /// Units of the dimension that is needed.
         accepted: String,

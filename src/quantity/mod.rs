@@ -98,4 +98,15 @@ impl Dimension {
             Self::Ratio => "ratio",
         }
     }
+
+    fn name_with_article(self) -> &'static str {
+        match self {
+            Self::Length => "a length",
+            Self::Angle => "an angle",
+            Self::Pixel => "a number of pixels",
+            Self::Temperature => "a temperature",
+            Self::Pressure => "a pressure",
+            Self::Ratio => "a ratio",
+        }
+    }
 }

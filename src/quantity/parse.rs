@@ -40,11 +40,12 @@ impl Quantity {
         let Some(qualifier) = qualifier else { return Err(QuantityError::BareUncertainty { seen: reader.seen }) };
         let (k, distribution) = reader.divisor(Some(reader.qualifier(qualifier)?))?;
         let term = reader.term(stated.trim_start_matches(['±', ' ']), "the uncertainty")?;
-        let half_width = reader.unit(term.unit, &term)?.difference_to_si(reader.number(&term, "the uncertainty")?);
+        let unit = reader.unit(term.unit, &term)?;
+        let half_width = unit.difference_to_si(reader.number(&term, "the uncertainty")?);
         if half_width == 0.0 {
             return Err(QuantityError::NoUncertainty { seen: reader.seen });
         }
-        Ok(reader.quantity(0.0, half_width / k, distribution, &term)?.u)
+        Ok(reader.quantity(0.0, half_width / k, distribution, (&term, unit))?.u)
     }
 }
 
@@ -83,7 +84,7 @@ impl Reader {
             }
             Some(other) => self.unit(other, &right)?.difference_to_si(half_width),
         };
-        self.quantity(unit.value_to_si(value), half_width_si / k, distribution, &left)
+        self.quantity(unit.value_to_si(value), half_width_si / k, distribution, (&left, unit))
     }
 
     /// `value(uncertainty)` or `value (exact)`.
@@ -99,7 +100,7 @@ impl Reader {
             (None, Some(Qualifier::Exact)) => self.finite(Quantity::exact(unit.value_to_si(value))),
             (Some(digits), None) => {
                 let u = self.uncertainty_in_brackets(&term, digits)?;
-                self.quantity(unit.value_to_si(value), unit.difference_to_si(u), Distribution::Normal, &term)
+                self.quantity(unit.value_to_si(value), unit.difference_to_si(u), Distribution::Normal, (&term, unit))
             }
             (None, _) => Err(self.missing_uncertainty(&term)),
             (Some(_), Some(Qualifier::Exact)) => Err(self.contradiction("an uncertainty in brackets and (exact); keep one of them")),
@@ -247,11 +248,11 @@ mod tests {
             ("812(1) MM", Dimension::Length, "UnknownUnit", vec!["did you mean mm?"]),
             ("3(1) microns", Dimension::Length, "UnknownUnit", vec!["did you mean um?"]),
             ("5320(1) Å", Dimension::Length, "UnknownUnit", vec!["did you mean nm (1 nm = 10 Å)?"]),
-            ("812(1) deg", Dimension::Length, "WrongDimension", vec!["unit of angle", "length is needed", "mm"]),
-            ("1(1) %", Dimension::Angle, "WrongDimension", vec!["ratio", "deg"]),
+            ("812(1) deg", Dimension::Length, "WrongDimension", vec!["unit of angle", "a length is needed", "mm"]),
+            ("1(1) %", Dimension::Angle, "WrongDimension", vec!["ratio", "an angle is needed", "deg"]),
             ("812(0) mm", Dimension::Length, "ZeroUncertainty", vec!["812 mm (exact)"]),
             ("0 mm ± 1 % (k=1)", Dimension::Length, "ZeroUncertainty", vec!["(exact)"]),
-            ("812 ± 0.0 mm (limits)", Dimension::Length, "ZeroUncertainty", vec!["(exact)"]),
+            ("812 ± 0.0 mm (limits)", Dimension::Length, "ZeroUncertainty", vec!["\"812 mm (exact)\""]),
             ("812(-1) mm", Dimension::Length, "NegativeUncertainty", vec!["minus"]),
             ("812 ± -1 mm (k=1)", Dimension::Length, "NegativeUncertainty", vec!["minus"]),
             ("812 ± 1 mm (k=0)", Dimension::Length, "CoverageFactor", vec!["k = 0"]),

@@ -133,7 +133,7 @@ impl Reader {
                 seen: self.seen.clone(),
                 unit: text.to_owned(),
                 found: unit.dimension.name(),
-                needed: self.dimension.name(),
+                needed: self.dimension.name_with_article(),
                 accepted: accepted(),
             }),
             None => Err(QuantityError::UnknownUnit { seen: self.seen.clone(), unit: text.to_owned(), advice: self.unit_advice(text) }),
@@ -149,12 +149,18 @@ impl Reader {
         }
     }
 
-    pub(super) fn quantity(&self, value: f64, u: f64, distribution: Distribution, term: &Term<'_>) -> Result<Quantity, QuantityError> {
+    pub(super) fn quantity(
+        &self,
+        value: f64,
+        u: f64,
+        distribution: Distribution,
+        (term, unit): (&Term<'_>, &Unit),
+    ) -> Result<Quantity, QuantityError> {
         if u < 0.0 {
             return Err(QuantityError::NegativeUncertainty { seen: self.seen.clone() });
         }
         if u == 0.0 {
-            let unit = if term.unit.is_empty() { String::new() } else { format!(" {}", term.unit) };
+            let unit = if unit.symbol.is_empty() { String::new() } else { format!(" {}", unit.symbol) };
             let suggestion = format!("{}{}{unit} (exact)", term.mantissa.text, exponent_of(term));
             return Err(QuantityError::ZeroUncertainty { seen: self.seen.clone(), suggestion });
         }
