@@ -513,6 +513,18 @@ turn = "180(0.1) deg"
     }
 
     #[test]
+    fn one_answer_is_checked_by_itself() {
+        let throw = |text: &str| Overrides { throw: Some(text.to_owned()), ..Overrides::default() }.check();
+        assert!(throw("812.0(8) mm").is_ok());
+        assert!(throw("812 mm").unwrap_err().to_string().contains("how sure?"));
+        assert!(Overrides { target_photo: Some("t.jpg".to_owned()), ..Overrides::default() }.check().is_ok());
+        assert!(
+            Overrides { sheet: Some("a4".to_owned()), target_turn: Some("0(1) deg".to_owned()), ..Overrides::default() }.check().is_ok()
+        );
+        assert!(Overrides::default().check().is_ok());
+    }
+
+    #[test]
     fn odd_files() {
         assert!(refusal("").contains("laser.wavelength is missing"));
         assert!(refusal("\u{feff}").contains("laser.wavelength is missing"));
@@ -522,6 +534,14 @@ turn = "180(0.1) deg"
         assert!(refusal(&"x".repeat(2 << 20)).contains("is it a bench file?"));
         assert!(refusal(&format!("a = {}", "[".repeat(100_000))).contains("line 1"));
         assert!(refusal(&"[laser]\r\nwavelength = \"650 nm\"\r\n".replace("650", "650.5")).contains("laser.wavelength (line 2)"));
+        let steering = refusal("[laser]\nwavelength = \"650\\u001b[2J nm\"\nmedium = \"\\u001b[2J\"");
+        assert!(!steering.contains('\u{1b}'), "{steering:?}");
+        // Nesting without end must not exhaust the stack.
+        for deep in
+            [format!("{}a = 1", "a.".repeat(400_000)), format!("[{}a]", "a.".repeat(400_000)), format!("x = {}", "{a=".repeat(300_000))]
+        {
+            assert!(!refusal(&deep).is_empty());
+        }
         let dotted = "laser.wavelength = \"650(5) nm\"\nscreen.throw = \"812.0(8) mm\"";
         assert!(Bench::parse(dotted).unwrap().0.screen.throw_m.is_some());
     }

@@ -51,7 +51,8 @@ impl Reader {
             let seen = seen.chars().take(24).chain(['…']).collect();
             return Err(QuantityError::TooLong { seen, length, most: LONGEST_TEXT, example });
         }
-        let seen = seen.to_owned();
+        // Control characters must not reach a terminal through a message.
+        let seen: String = seen.chars().map(|c| if c.is_control() && !c.is_whitespace() { '\u{fffd}' } else { c }).collect();
         if seen.contains(',') {
             let suggestion = if seen.contains('.') { seen.replace(',', "") } else { seen.replace(',', ".") };
             return Err(QuantityError::DecimalComma { seen, suggestion });
