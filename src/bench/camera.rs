@@ -28,7 +28,7 @@ pub(super) fn read_camera(root: &Table) -> Result<Camera, BenchError> {
 
 /// `"3400(50) px"` or `{ focal = "4.20(5) mm", pixel = "1.40(1) um" }`.
 fn focal_length(section: &Section<'_>) -> Result<Option<FocalLength>, BenchError> {
-    const PIXELS: Sense = Sense { what: "focal length", range: 10.0..=1e6, low: "10 px", high: "1000000 px" };
+    const PIXELS: Sense = Sense { what: "focal length", range: 10.0..=1e6, range_in_words: "10 px to 1000000 px" };
     let Some(node) = section.node("focal_length") else { return Ok(None) };
     if let Content::Table(_) = node.content {
         return section.table("focal_length", "a table")?.map(|table| in_metres(&table)).transpose();
@@ -49,8 +49,8 @@ fn ask_for_pixel_size(error: BenchError) -> BenchError {
 }
 
 fn in_metres(table: &Section<'_>) -> Result<FocalLength, BenchError> {
-    const FOCAL: Sense = Sense { what: "focal length of a lens", range: 0.5e-3..=5.0, low: "0.5 mm", high: "5 m" };
-    const PIXEL: Sense = Sense { what: "pixel size", range: 0.1e-6..=0.1e-3, low: "0.1 um", high: "100 um" };
+    const FOCAL: Sense = Sense { what: "focal length of a lens", range: 0.5e-3..=5.0, range_in_words: "0.5 mm to 5 m" };
+    const PIXEL: Sense = Sense { what: "pixel size", range: 0.1e-6..=0.1e-3, range_in_words: "0.1 um to 100 um" };
     table.allow_only(&["focal", "pixel"])?;
     let read = |key, example: &str, sense: &Sense| -> Result<Quantity, BenchError> {
         match table.quantity(key, Dimension::Length)? {
@@ -62,7 +62,7 @@ fn in_metres(table: &Section<'_>) -> Result<FocalLength, BenchError> {
 }
 
 fn read_scale(scale: &Section<'_>) -> Result<Scale, BenchError> {
-    const DISTANCE: Sense = Sense { what: "distance of two points on a screen", range: 0.5e-3..=100.0, low: "0.5 mm", high: "100 m" };
+    const DISTANCE: Sense = Sense { what: "distance of two points on a screen", range: 0.5e-3..=100.0, range_in_words: "0.5 mm to 100 m" };
     scale.allow_only(&["points", "distance"])?;
     let missing = |key, example| BenchError::Missing { key: scale.path_of(key), advice: format!("write {key} = {example}") };
     let path = scale.path_of("points");

@@ -112,7 +112,7 @@ pub enum BenchError {
         seen: String,
     },
     /// A value outside the range in which it makes sense.
-    #[error("{place}: {seen} is no {what}, which lies between {low} and {high}; check the number and the unit")]
+    #[error("{place}: {seen} is no {what} ({range} is accepted); {advice}")]
     OutOfRange {
         /// Where.
         place: Place,
@@ -120,10 +120,10 @@ pub enum BenchError {
         seen: String,
         /// What it should be.
         what: &'static str,
-        /// Least.
-        low: &'static str,
-        /// Most.
-        high: &'static str,
+        /// The range, in words.
+        range: &'static str,
+        /// The same number with the unit that was probably meant.
+        advice: String,
     },
     /// An uncertainty as large as the value, where the value must be positive.
     #[error("{place}: the uncertainty of {seen} is as large as the value; when it is not known at all, leave it out")]
@@ -201,9 +201,9 @@ pub enum BenchError {
         /// Why, and what to do.
         conflict: &'static str,
     },
-    /// Too few marks.
-    #[error("{place}: {found} marks; at least 4 are needed, no three of them on a line")]
-    TooFewMarks {
+    /// Too few marks to fix a view, or more than anyone types.
+    #[error("{place}: {found} marks; 4 to 1000 are needed, not all on a line")]
+    NumberOfMarks {
         /// Where.
         place: Place,
         /// Marks found.

@@ -40,7 +40,7 @@ fn read_laser(name: String, section: &Section<'_>) -> Result<Laser, BenchError> 
 }
 
 fn wavelength(stated: Stated) -> Result<Quantity, BenchError> {
-    const SENSE: Sense = Sense { what: "wavelength", range: SHORTEST_M..=LONGEST_M, low: "200 nm", high: "2 um" };
+    const SENSE: Sense = Sense { what: "wavelength", range: SHORTEST_M..=LONGEST_M, range_in_words: "200 nm to 2 um" };
     if (SHORTEST_M..=LONGEST_M).contains(&stated.quantity.value) {
         return stated.sensible_and_known(&SENSE);
     }
@@ -70,9 +70,9 @@ fn meant(wavelength_m: f64) -> String {
 /// The uncertainties of the assumed state cover weather, height up to 300 m and a heated room: together 9e-6 of the wavelength.
 pub(super) fn read_air(root: &Table, lasers: &[Laser], notes: &mut Vec<Note>) -> Result<Air, BenchError> {
     const KEYS: &[&str] = &["temperature", "pressure", "humidity"];
-    const TEMPERATURE: Sense = Sense { what: "temperature of a room", range: -40.0..=100.0, low: "-40 degC", high: "100 degC" };
-    const PRESSURE: Sense = Sense { what: "pressure of air", range: 1e4..=1.4e5, low: "100 hPa", high: "1400 hPa" };
-    const HUMIDITY: Sense = Sense { what: "relative humidity", range: 0.0..=1.0, low: "0 %", high: "100 %" };
+    const TEMPERATURE: Sense = Sense { what: "temperature of a room", range: -40.0..=100.0, range_in_words: "-40 degC to 100 degC" };
+    const PRESSURE: Sense = Sense { what: "pressure of air", range: 1e4..=1.4e5, range_in_words: "100 hPa to 1400 hPa" };
+    const HUMIDITY: Sense = Sense { what: "relative humidity", range: 0.0..=1.0, range_in_words: "0 % to 100 %" };
     let section = Section::at(root, "air")?;
     section.allow_only(KEYS)?;
     let read = |key, dimension, sense: &Sense| section.quantity(key, dimension)?.map(|stated| stated.sensible(sense)).transpose();

@@ -54,7 +54,8 @@ pub(super) fn wrong_medium(laser: &Laser) -> Option<Note> {
     const NEAR: f64 = 5e-5;
     const NARROW: f64 = 1e-5;
     let stated = laser.wavelength_m;
-    if stated.u > 1e-4 * stated.value {
+    // A wider statement holds both numbers, or says that the laser is no such line.
+    if stated.u > 3e-5 * stated.value {
         return None;
     }
     let lines = laser_lines().unwrap_or_default();

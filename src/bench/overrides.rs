@@ -1,7 +1,7 @@
 //! What a quick look states on the command line instead of in a bench file, or over it.
 
 use super::{
-    BenchError,
+    Bench, BenchError,
     tree::{Content, Node, Origin, Table},
 };
 
@@ -54,6 +54,21 @@ pub struct Overrides {
 type Flag<'a> = (&'static str, &'static str, &'static str, &'a Option<String>);
 
 impl Overrides {
+    /// Whether each value can be used by itself, for a program that asks for one value after the other.
+    ///
+    /// What is not stated is not missed.
+    ///
+    /// # Errors
+    /// As [`Bench::with_overrides`]; the flag names the value.
+    pub fn check(&self) -> Result<(), BenchError> {
+        let mut filled = self.clone();
+        filled.wavelength.get_or_insert_with(|| "650(5) nm".to_owned());
+        if self.sheet.is_none() && self.ruling.is_none() && (self.target_photo.is_some() || self.target_turn.is_some()) {
+            filled.target_pitch.get_or_insert_with(|| "10.000(3) mm".to_owned());
+        }
+        Bench::with_overrides(None, &filled).map(|_| ())
+    }
+
     /// Puts the flags into the tree of the bench file.
     pub(super) fn apply(&self, root: &mut Table) -> Result<(), BenchError> {
         for (section, key, flag, text) in self.flags() {

@@ -44,7 +44,7 @@ fn path(index: usize) -> String {
 }
 
 fn read_photo(node: &Node, index: usize, lasers: &[&str], samples: &[&str]) -> Result<PatternPhoto, BenchError> {
-    const STEP: Sense = Sense { what: "step of the screen", range: -100.0..=100.0, low: "-100 m", high: "100 m" };
+    const STEP: Sense = Sense { what: "step of the screen", range: -100.0..=100.0, range_in_words: "-100 m to 100 m" };
     const FILE: &str = "a file name in quotes, such as \"pattern.jpg\"";
     let Content::Table(table) = &node.content else {
         return Err(BenchError::WrongKind { place: node.place("photo"), seen: node.seen(), needed: LISTED });
@@ -52,7 +52,7 @@ fn read_photo(node: &Node, index: usize, lasers: &[&str], samples: &[&str]) -> R
     let section = Section::of(path(index), table);
     section.allow_only(&["file", "laser", "sample", "step", "target", "turn"])?;
     let Some(file) = section.text("file", FILE)? else {
-        return Err(BenchError::Missing { key: section.path_of("file"), advice: format!("write file = {FILE}") });
+        return Err(BenchError::Missing { key: section.path_of("file"), advice: "write file = \"pattern.jpg\"".to_owned() });
     };
     Ok(PatternPhoto {
         file: file.to_owned(),

@@ -9,7 +9,7 @@ use super::{
 use crate::quantity::{Dimension, Quantity};
 
 const KEYS: &[&str] = &["mode", "pattern", "incidence", "pitch", "angle"];
-const PITCH: Sense = Sense { what: "pitch", range: 50e-9..=0.02, low: "50 nm", high: "20 mm" };
+const PITCH: Sense = Sense { what: "pitch", range: 50e-9..=0.02, range_in_words: "50 nm to 20 mm" };
 
 /// All samples, in the order of the file.
 pub(super) fn read_samples(root: &Table) -> Result<Vec<Sample>, BenchError> {
@@ -43,7 +43,7 @@ fn known_pitches(section: &Section<'_>) -> Result<Vec<Quantity>, BenchError> {
 fn lattice_angle(stated: Stated) -> Result<Quantity, BenchError> {
     // A basis that is more oblique than this is never the reduced one (60 to 120 degrees); certificates may choose another.
     let range = 20f64.to_radians()..=160f64.to_radians();
-    stated.sensible(&Sense { what: "lattice angle", range, low: "20 deg", high: "160 deg" })
+    stated.sensible(&Sense { what: "lattice angle", range, range_in_words: "20 deg to 160 deg" })
 }
 
 /// A plane reference needs two pitches and the angle, a line reference one pitch and no angle.

@@ -9,7 +9,7 @@ use crate::quantity::{Dimension, Quantity};
 
 /// The screen; what is not stated is not known.
 pub(super) fn read_screen(root: &Table) -> Result<Screen, BenchError> {
-    const THROW: Sense = Sense { what: "throw", range: 0.005..=100.0, low: "5 mm", high: "100 m" };
+    const THROW: Sense = Sense { what: "throw", range: 0.005..=100.0, range_in_words: "5 mm to 100 m" };
     let section = Section::at(root, "screen")?;
     section.allow_only(&["throw", "tilt", "seen_from"])?;
     let throw_m = section.quantity("throw", Dimension::Length)?.map(|stated| stated.sensible_and_known(&THROW)).transpose()?;
@@ -21,12 +21,12 @@ pub(super) fn read_screen(root: &Table) -> Result<Screen, BenchError> {
 /// Two turns below grazing.
 pub(super) fn tilt_pair([x, y]: [Stated; 2], what: &'static str) -> Result<[Quantity; 2], BenchError> {
     let most = 85f64.to_radians();
-    let sense = Sense { what, range: -most..=most, low: "-85 deg", high: "85 deg" };
+    let sense = Sense { what, range: -most..=most, range_in_words: "-85 deg to 85 deg" };
     Ok([x.sensible(&sense)?, y.sensible(&sense)?])
 }
 
 /// A turn in a plane, at most one whole turn.
 pub(super) fn turn(stated: Stated) -> Result<Quantity, BenchError> {
     let most = std::f64::consts::TAU;
-    stated.sensible(&Sense { what: "turn", range: -most..=most, low: "-360 deg", high: "360 deg" })
+    stated.sensible(&Sense { what: "turn", range: -most..=most, range_in_words: "-360 deg to 360 deg" })
 }

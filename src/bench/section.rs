@@ -6,7 +6,7 @@ use super::{
     BenchError, Place,
     tree::{Content, Node, Table, shortened},
 };
-use crate::quantity::{Dimension, Quantity, nearest};
+use crate::quantity::{Dimension, Quantity, Unit, nearest, units_of};
 
 const QUANTITY: &str = "a text in quotes with unit and uncertainty, such as \"812.0(8) mm\"";
 const PAIR: &str = "a list of two quantities, about x and about y, such as [\"0.0(5) deg\", \"0.0(5) deg\"]";
@@ -24,6 +24,7 @@ pub(super) struct Section<'a> {
 #[derive(Debug, Clone, PartialEq)]
 pub(super) struct Stated {
     pub(super) quantity: Quantity,
+    pub(super) dimension: Dimension,
     pub(super) place: Place,
     pub(super) text: String,
 }
@@ -33,8 +34,7 @@ pub(super) struct Stated {
 pub(super) struct Sense {
     pub(super) what: &'static str,
     pub(super) range: RangeInclusive<f64>,
-    pub(super) low: &'static str,
-    pub(super) high: &'static str,
+    pub(super) range_in_words: &'static str,
 }
 
 impl<'a> Section<'a> {
@@ -99,6 +99,16 @@ impl<'a> Section<'a> {
         self.node(key).map(|node| stated(node, &self.path_of(key), dimension)).transpose()
     }
 
+    /// An uncertainty that stands alone, as a [`Stated`] with the uncertainty for its value.
+    pub(super) fn uncertainty(&self, key: &str, dimension: Dimension) -> Result<Option<Stated>, BenchError> {
+        let Some(text) = self.text(key, "an uncertainty in quotes, such as \"2 px (k=1)\"")? else { return Ok(None) };
+        let place = self.place(key);
+        match Quantity::parse_uncertainty(text, dimension) {
+            Ok(u) => Ok(Some(Stated { quantity: Quantity::exact(u), dimension, place, text: text.trim().to_owned() })),
+            Err(reason) => Err(BenchError::Quantity { place, reason: Box::new(reason) }),
+        }
+    }
+
     /// Two quantities: about x, about y.
     pub(super) fn pair(&self, key: &str, dimension: Dimension) -> Result<Option<[Stated; 2]>, BenchError> {
         let Some(node) = self.node(key) else { return Ok(None) };
@@ -138,7 +148,23 @@ impl Stated {
         if sense.range.contains(&self.quantity.value) {
             return Ok(self.quantity);
         }
-        Err(BenchError::OutOfRange { place: self.place, seen: self.text, what: sense.what, low: sense.low, high: sense.high })
+        let advice = self.meant(sense);
+        Err(BenchError::OutOfRange { place: self.place, seen: self.text, what: sense.what, range: sense.range_in_words, advice })
+    }
+
+    /// The same number with another unit, where that makes sense: "812(1) m" for "812(1) mm", "45(5)" for "45(5) %".
+    fn meant(&self, sense: &Sense) -> String {
+        let words: Vec<&str> = self.text.split(' ').collect();
+        let is_unit = |word: &str| units_of(self.dimension).any(|unit| !unit.symbol.is_empty() && Unit::find(word) == Some(unit));
+        let with_unit = |unit: &'static Unit| match words.iter().position(|word| is_unit(word)) {
+            Some(at) => words.iter().enumerate().map(|(i, word)| if i == at { unit.symbol } else { word }).collect::<Vec<_>>().join(" "),
+            None => format!("{} {}", self.text, unit.symbol),
+        };
+        let fits = |text: &String| Quantity::parse(text, self.dimension).is_ok_and(|quantity| sense.range.contains(&quantity.value));
+        units_of(self.dimension)
+            .map(with_unit)
+            .find(fits)
+            .map_or_else(|| "check the number and the unit".to_owned(), |text| format!("did you mean \"{text}\"?"))
     }
 
     /// The same for what must be positive: an uncertainty as large as the value says that it is not known.
@@ -157,7 +183,7 @@ pub(super) fn stated(node: &Node, path: &str, dimension: Dimension) -> Result<St
         return Err(BenchError::WrongKind { place, seen: node.seen(), needed: QUANTITY });
     };
     match Quantity::parse(text, dimension) {
-        Ok(quantity) => Ok(Stated { quantity, place, text: text.trim().to_owned() }),
+        Ok(quantity) => Ok(Stated { quantity, dimension, place, text: text.trim().to_owned() }),
         Err(reason) => Err(BenchError::Quantity { place, reason: Box::new(reason) }),
     }
 }

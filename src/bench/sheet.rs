@@ -42,3 +42,38 @@ impl SheetFormat {
         }
     }
 }
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    /// ISO 216: sides in the ratio 1:√2, each format the half of the one before, both rounded down to a millimetre.
+    #[test]
+    fn the_a_series_halves() {
+        let [a3, a4, a5] = [SheetFormat::A3, SheetFormat::A4, SheetFormat::A5].map(SheetFormat::sides_m);
+        for [short, long] in [a3, a4, a5] {
+            assert!((long / short - 2f64.sqrt()).abs() < 0.006, "{short} x {long}");
+        }
+        for (large, small) in [(a3, a4), (a4, a5)] {
+            assert!((large[0] - small[1]).abs() < 1e-9);
+            assert!((0.0..1.1e-3).contains(&(large[1] - 2.0 * small[0])));
+        }
+    }
+
+    #[test]
+    fn inch_formats_are_whole_halves_of_an_inch() {
+        for format in [SheetFormat::Letter, SheetFormat::Legal, SheetFormat::Tabloid] {
+            for side_m in format.sides_m() {
+                let half_inches = side_m / 0.0127;
+                assert!((half_inches - half_inches.round()).abs() < 1e-9, "{format:?}");
+            }
+        }
+    }
+
+    #[test]
+    fn every_format_has_one_name() {
+        for (i, (name, format)) in SheetFormat::ALL.iter().enumerate() {
+            assert!(SheetFormat::ALL[..i].iter().all(|(other, same)| other != name && same != format));
+        }
+    }
+}

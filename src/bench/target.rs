@@ -3,7 +3,7 @@
 use super::{
     BenchError, SheetFormat, Side, Target, TargetKind,
     screen::turn,
-    section::{Section, Sense, point, stated},
+    section::{Section, Sense, point},
     tree::{Content, Node, Table},
 };
 use crate::{
@@ -52,8 +52,8 @@ fn refuse_stray_marks_u(section: &Section<'_>, kind: &str) -> Result<(), BenchEr
 }
 
 fn read_kind(section: &Section<'_>, kind: &str, seen_from: Side) -> Result<TargetKind, BenchError> {
-    const DOTS: Sense = Sense { what: "distance of printed dots", range: 0.2e-3..=1.0, low: "0.2 mm", high: "1 m" };
-    const LINES: Sense = Sense { what: "distance of ruled lines", range: 0.2e-3..=1.0, low: "0.2 mm", high: "1 m" };
+    const DOTS: Sense = Sense { what: "distance of printed dots", range: 0.2e-3..=1.0, range_in_words: "0.2 mm to 1 m" };
+    const LINES: Sense = Sense { what: "distance of ruled lines", range: 0.2e-3..=1.0, range_in_words: "0.2 mm to 1 m" };
     let photo = section.text("photo", "a file name in quotes, such as \"target.jpg\"")?.map(str::to_owned);
     let pitch = |sense: &Sense| match section.quantity(kind, Dimension::Length)? {
         Some(stated) => stated.sensible_and_known(sense),
@@ -75,30 +75,24 @@ fn read_kind(section: &Section<'_>, kind: &str, seen_from: Side) -> Result<Targe
 }
 
 fn read_marks(section: &Section<'_>, seen_from: Side) -> Result<TargetKind, BenchError> {
-    const U: Sense = Sense { what: "uncertainty of a mark", range: 1e-3..=1e3, low: "0.001 px", high: "1000 px" };
+    const U: Sense = Sense { what: "uncertainty of a mark", range: 1e-3..=1e3, range_in_words: "0.001 px to 1000 px" };
     let items = section.list("marks", MARKS)?.unwrap_or(&[]);
     if !(4..=MOST_MARKS).contains(&items.len()) {
-        return Err(BenchError::TooFewMarks { place: section.place("marks"), found: items.len() });
+        return Err(BenchError::NumberOfMarks { place: section.place("marks"), found: items.len() });
     }
     let marks = items.iter().map(|item| read_mark(item, &section.path_of("marks"))).collect::<Result<Vec<_>, _>>()?;
     Shape { section, marks: &marks }.check(seen_from)?;
     Ok(TargetKind::Marks { u_px: marks_u(section, &U)?, marks })
 }
 
-/// `marks_u = "2 px (k=1)"`: here the value itself is the uncertainty, so the words in brackets apply to it.
 fn marks_u(section: &Section<'_>, sense: &Sense) -> Result<f64, BenchError> {
-    const EXAMPLE: &str = "how well each mark was read off the photo, such as \"2 px (k=1)\"";
-    let Some(text) = section.text("marks_u", EXAMPLE)? else {
-        return Err(BenchError::Missing { key: section.path_of("marks_u"), advice: format!("state {EXAMPLE}") });
-    };
-    // An uncertainty about zero says the same in the words of any other quantity, and is read by the same rules.
-    let about_zero = text.trim().trim_start_matches('±').trim_start();
-    let node =
-        Node { content: Content::Text(format!("0 ± {about_zero}")), ..section.node("marks_u").cloned().unwrap_or(Node::text("", "")) };
-    let mut found = stated(&node, &section.path_of("marks_u"), Dimension::Pixel)?;
-    found.quantity.value = found.quantity.u;
-    text.trim().clone_into(&mut found.text);
-    Ok(found.sensible(sense)?.value)
+    match section.uncertainty("marks_u", Dimension::Pixel)? {
+        Some(stated) => Ok(stated.sensible(sense)?.value),
+        None => Err(BenchError::Missing {
+            key: section.path_of("marks_u"),
+            advice: "state how well each mark was read off the photo, such as marks_u = \"2 px (k=1)\"".to_owned(),
+        }),
+    }
 }
 
 fn read_mark(item: &Node, path: &str) -> Result<(PixelPoint, TargetPoint), BenchError> {
@@ -196,4 +190,89 @@ fn extent(points: &[[f64; 2]]) -> f64 {
         high - low
     };
     side(0).hypot(side(1))
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+    use crate::bench::Bench;
+
+    const CORNERS: [([f64; 2], [f64; 2]); 4] = [
+        ([380.0, 293.0], [0.0, 210.0]),
+        ([1487.0, 336.0], [297.0, 210.0]),
+        ([1421.0, 1054.0], [297.0, 0.0]),
+        ([409.0, 1044.0], [0.0, 0.0]),
+    ];
+
+    fn parsed(marks: &[([f64; 2], [f64; 2])], seen_from: &str, keys: &str) -> Result<TargetKind, BenchError> {
+        let marks: Vec<String> =
+            marks.iter().map(|(px, mm)| format!("{{ px = [{:?}, {:?}], mm = [{:?}, {:?}] }}", px[0], px[1], mm[0], mm[1])).collect();
+        let text = format!(
+            "[laser]\nwavelength = \"650(5) nm\"\n[screen]\nseen_from = \"{seen_from}\"\n[target]\nmarks = [{}]\n{keys}",
+            marks.join(", ")
+        );
+        Bench::parse(&text).map(|(bench, _)| bench.target.unwrap().kind)
+    }
+
+    fn refusal(marks: &[([f64; 2], [f64; 2])]) -> String {
+        parsed(marks, "front", "marks_u = \"2 px (k=1)\"").unwrap_err().to_string()
+    }
+
+    #[test]
+    fn marks_keep_their_place_and_uncertainty() {
+        for (text, want) in [("2 px (k=1)", 2.0), ("2 px (k=2)", 1.0), ("± 3 px (limits)", 3f64.sqrt())] {
+            let TargetKind::Marks { marks, u_px } = parsed(&CORNERS, "front", &format!("marks_u = \"{text}\"")).unwrap() else { panic!() };
+            assert!((u_px - want).abs() < 1e-12, "{text}: {u_px}");
+            assert_eq!(marks[1], (PixelPoint { x_px: 1487.0, y_px: 336.0 }, TargetPoint { x_m: 0.297, y_m: 0.21 }));
+        }
+    }
+
+    #[test]
+    fn an_uncertainty_of_marks_is_needed_and_checked() {
+        let with = |keys: &str| parsed(&CORNERS, "front", keys).unwrap_err().to_string();
+        assert!(with("").contains("target.marks_u is missing") && with("").contains("2 px (k=1)"));
+        assert!(with("marks_u = \"2 px\"").contains("which uncertainty is that?"));
+        assert!(with("marks_u = \"0 px (k=1)\"").contains("zero"));
+        assert!(with("marks_u = \"2 mm (k=1)\"").contains("unit of length"));
+        assert!(with("marks_u = \"2000 px (k=1)\"").contains("1000 px"));
+        assert!(with("marks_u = 2").contains("bare number 2"));
+        assert!(with("marks_u = \"2 px (k=1)\"\nphoto = \"t.jpg\"").contains("target.photo"));
+    }
+
+    #[test]
+    fn marks_that_fix_no_view_are_refused() {
+        assert!(refusal(&CORNERS[..3]).contains("3 marks; 4 to 1000"));
+        let mut twice = CORNERS;
+        twice[2].1 = twice[0].1;
+        assert!(refusal(&twice).contains("marks 1 and 3 have the same mm"));
+        // Three on a line and one beside it: a homography is still free.
+        let line = [([0.0, 900.0], [0.0, 0.0]), ([100.0, 900.0], [10.0, 0.0]), ([200.0, 900.0], [20.0, 0.0]), ([0.0, 800.0], [0.0, 10.0])];
+        assert!(refusal(&line).contains("one line"));
+        let enough = [line.as_slice(), &[([100.0, 800.0], [10.0, 10.0])]].concat();
+        assert!(parsed(&enough, "front", "marks_u = \"2 px (k=1)\"").is_ok());
+    }
+
+    #[test]
+    fn mirrored_and_swapped_marks_are_refused() {
+        let down = CORNERS.map(|(px, [x, y])| (px, [x, -y]));
+        assert!(refusal(&down).contains("mirrored"));
+        assert!(parsed(&down, "behind", "marks_u = \"2 px (k=1)\"").is_ok(), "from behind a print may read either way");
+        let mut swapped = CORNERS;
+        (swapped[0].1, swapped[1].1) = (swapped[1].1, swapped[0].1);
+        assert!(refusal(&swapped).contains("swapped"), "{}", refusal(&swapped));
+    }
+
+    #[test]
+    fn other_targets() {
+        let kind = |keys: &str| {
+            let text = format!("[laser]\nwavelength = \"650(5) nm\"\n[target]\n{keys}");
+            Bench::parse(&text).map(|(bench, _)| bench.target.unwrap().kind)
+        };
+        assert_eq!(kind("sheet = \"A3\"").unwrap(), TargetKind::Sheet { format: SheetFormat::A3, photo: None });
+        assert!(matches!(kind("ruling = \"1.000(2) mm\"\nphoto = \"r.png\"").unwrap(), TargetKind::Ruling { photo: Some(_), .. }));
+        assert!(matches!(kind("pitch = \"10.000(3) mm\"").unwrap(), TargetKind::Dots { photo: None, .. }));
+        assert!(kind("pitch = \"10.0(1) um\"").unwrap_err().to_string().contains("0.2 mm"));
+        assert!(kind("pitch = \"10.0(1) mm\"\nmarks_u = \"2 px (k=1)\"").unwrap_err().to_string().contains("there are none"));
+        assert!(kind("turn = \"0(1) deg\"").unwrap_err().to_string().contains("target.pitch is missing"));
+    }
 }

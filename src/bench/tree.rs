@@ -110,10 +110,11 @@ impl Node {
     }
 }
 
-/// A text short enough for a message.
+/// A text short enough for a message, without what could steer a terminal.
 pub(super) fn shortened(text: &str) -> String {
     const MOST: usize = 60;
-    if text.chars().count() <= MOST { text.to_owned() } else { text.chars().take(MOST).chain(['…']).collect() }
+    let printable = text.chars().map(|c| if c.is_control() { '\u{fffd}' } else { c });
+    if text.chars().count() <= MOST { printable.collect() } else { printable.take(MOST).chain(['…']).collect() }
 }
 
 /// Byte offsets at which the lines start.
@@ -176,7 +177,7 @@ fn syntax_advice(line: &str) -> &'static str {
     if value.is_empty() {
         "; write the value behind =, or take the line out when nothing is known"
     } else if !value.starts_with(['"', '\'', '[', '{']) {
-        "; a quantity stands in quotes: \"812(1) mm\""
+        "; texts stand in quotes, quantities too: \"812(1) mm\""
     } else {
         "; check quotes, brackets and commas, and that no key stands twice"
     }

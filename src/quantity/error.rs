@@ -87,7 +87,7 @@ pub enum QuantityError {
         advice: String,
     },
     /// A unit of another dimension.
-    #[error("\"{seen}\": {unit} is a unit of {found}, but a {needed} is needed (accepted: {accepted})")]
+    #[error("\"{seen}\": {unit} is a unit of {found}, but {needed} is needed (accepted: {accepted})")]
     WrongDimension {
         /// As written.
         seen: String,
@@ -95,14 +95,14 @@ pub enum QuantityError {
         unit: String,
         /// What that unit measures.
         found: &'static str,
-        /// What is needed.
+        /// What is needed, with its article.
         needed: &'static str,
         /// Units of the dimension that is needed.
         accepted: String,
     },
     /// A value without uncertainty.
     #[error(
-        "{seen}: how sure? {suggestion} means u = {u}; or state ± with (k=1), (k=2) or (limits); (exact) says that there is no doubt; leave it out when it is not known at all"
+        "\"{seen}\": how sure? {suggestion} means u = {u}; or state ± with (k=1), (k=2) or (limits); (exact) says that there is no doubt; leave it out when it is not known at all"
     )]
     MissingUncertainty {
         /// As written.
@@ -122,6 +122,14 @@ pub enum QuantityError {
         /// The text to which the choice is added.
         bare: String,
     },
+    /// An uncertainty alone, without saying which.
+    #[error(
+        "\"{seen}\": which uncertainty is that? Write \"{seen} (k=1)\" for a standard uncertainty, \"{seen} (k=2)\" for an expanded one (about 95 %), or \"{seen} (limits)\" for limits that are surely not exceeded"
+    )]
+    BareUncertainty {
+        /// As written.
+        seen: String,
+    },
     /// Uncertainty zero.
     #[error("\"{seen}\": an uncertainty of zero; write \"{suggestion}\" if there is truly no doubt, or a small uncertainty")]
     ZeroUncertainty {
@@ -129,6 +137,12 @@ pub enum QuantityError {
         seen: String,
         /// The same value marked exact.
         suggestion: String,
+    },
+    /// An uncertainty alone that is zero.
+    #[error("\"{seen}\": an uncertainty of zero; nothing is read without doubt, write a small one")]
+    NoUncertainty {
+        /// As written.
+        seen: String,
     },
     /// Uncertainty below zero.
     #[error("\"{seen}\": an uncertainty cannot be negative; write it without the minus sign")]

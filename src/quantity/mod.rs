@@ -6,6 +6,7 @@ mod error;
 mod number;
 mod parse;
 mod print;
+mod reader;
 mod spelling;
 mod unit;
 
@@ -95,6 +96,17 @@ impl Dimension {
             Self::Temperature => "temperature",
             Self::Pressure => "pressure",
             Self::Ratio => "ratio",
+        }
+    }
+
+    fn name_with_article(self) -> &'static str {
+        match self {
+            Self::Length => "a length",
+            Self::Angle => "an angle",
+            Self::Pixel => "a number of pixels",
+            Self::Temperature => "a temperature",
+            Self::Pressure => "a pressure",
+            Self::Ratio => "a ratio",
         }
     }
 }

@@ -1,32 +1,22 @@
-//! Reads a quantity: value, uncertainty, unit, and what the uncertainty means.
-//!
-//! ```text
-//! 812.0(8) mm             JCGM 100:2008, 7.2.2: digits in the last places, so u = 0.8 mm
-//! 812.0(0.8) mm           the same; a point in the brackets says that u is in the unit itself
-//! 1.2(3)e-4 m             the exponent belongs to both;  also 1.2e-4(3e-5) m
-//! 812.0 ± 0.8 mm (k=1)    also (k=2), (k=1.96); +- and +/- are read as ±
-//! (812.0 ± 0.8) mm (k=1)  the same
-//! 650 nm ± 1 % (k=1)      the uncertainty in another unit, or relative
-//! 20.0 ± 0.5 degC (limits)  half-width a, u = a/√3 (JCGM 100:2008, 4.3.7)
-//! 632.8 nm (exact)        no uncertainty
-//! ```
+//! Reads a quantity: value, uncertainty, unit, and what the uncertainty means. The forms stand at [`Quantity::parse`].
 
 use super::{
-    Dimension, Distribution, Quantity, QuantityError, Unit, nearest,
-    number::{self, Mantissa},
-    unit::OTHER_NAMES,
-    units_of,
+    Dimension, Distribution, Quantity, QuantityError, number,
+    reader::{Qualifier, Reader, Term, exponent_of, looks_numeric},
 };
-
-/// The longest text that is read.
-const LONGEST_TEXT: usize = 120;
 
 impl Quantity {
     /// Reads a quantity of the given dimension, in SI.
     ///
-    /// The forms are shown in the table of the crate's documentation of the bench file: `812.0(8) mm`,
-    /// `812.0 ± 0.8 mm (k=1)`, `(k=2)`, `(limits)`, `(exact)`. Every accepted value is finite, and its uncertainty is
-    /// positive unless it is marked exact.
+    /// | text | reads as |
+    /// |---|---|
+    /// | `812.0(8) mm`, `812.0(0.8) mm`, `1.2(3)e-4 m`, `1.2e-4(3e-5) m` | standard uncertainty (JCGM 100:2008, 7.2.2): digits count in the last places, a number with a point or exponent as it is |
+    /// | `812.0 ± 0.8 mm (k=1)`, `(k=2)`, any k > 0 | u = half-width / k; `+-` and `+/-` are ±; also `(812.0 ± 0.8) mm (k=1)` |
+    /// | `812.0 ± 0.8 mm (limits)` | u = half-width / √3 (JCGM 100:2008, 4.3.7) |
+    /// | `650 nm ± 1 % (k=1)` | the uncertainty in another unit, or relative |
+    /// | `50 mm (exact)` | no uncertainty |
+    ///
+    /// Every accepted value is finite, and its uncertainty is finite and positive unless it is marked exact. Units: [`super::units_of`].
     ///
     /// # Errors
     /// A [`QuantityError`] that shows the text and how to write it.
@@ -39,90 +29,27 @@ impl Quantity {
             None => reader.with_brackets(&stated, qualifier),
         }
     }
-}
 
-/// What the words in brackets say.
-#[derive(Debug, Clone, Copy, PartialEq)]
-enum Qualifier {
-    Exact,
-    Limits,
-    Coverage(f64),
-}
-
-/// One number of the text with what belongs to it.
-#[derive(Debug, Clone, Copy)]
-struct Term<'a> {
-    mantissa: Mantissa<'a>,
-    /// In front of the brackets.
-    exponent: &'a str,
-    brackets: Option<&'a str>,
-    /// Behind the brackets.
-    late_exponent: &'a str,
-    unit: &'a str,
-}
-
-/// The text on its way to a quantity; knows how to complain about it.
-struct Reader {
-    /// As written, trimmed.
-    seen: String,
-    /// With one sign for ±, one for minus, and plain spaces.
-    text: String,
-    dimension: Dimension,
+    /// Reads an uncertainty that stands alone, such as `2 px (k=1)`, and gives the standard uncertainty in SI.
+    ///
+    /// # Errors
+    /// As [`Quantity::parse`]; without words in brackets it is refused, as a bare ± is.
+    pub fn parse_uncertainty(text: &str, dimension: Dimension) -> Result<f64, QuantityError> {
+        let reader = Reader::new(text, dimension)?;
+        let (stated, qualifier) = reader.split_qualifier();
+        let Some(qualifier) = qualifier else { return Err(QuantityError::BareUncertainty { seen: reader.seen }) };
+        let (k, distribution) = reader.divisor(Some(reader.qualifier(qualifier)?))?;
+        let term = reader.term(stated.trim_start_matches(['±', ' ']), "the uncertainty")?;
+        let unit = reader.unit(term.unit, &term)?;
+        let half_width = unit.difference_to_si(reader.number(&term, "the uncertainty")?);
+        if half_width == 0.0 {
+            return Err(QuantityError::NoUncertainty { seen: reader.seen });
+        }
+        Ok(reader.quantity(0.0, half_width / k, distribution, (&term, unit))?.u)
+    }
 }
 
 impl Reader {
-    fn new(text: &str, dimension: Dimension) -> Result<Self, QuantityError> {
-        let seen = text.trim();
-        let example = dimension.example();
-        let length = seen.chars().count();
-        if seen.is_empty() {
-            return Err(QuantityError::Empty { example });
-        }
-        if length > LONGEST_TEXT {
-            let seen = seen.chars().take(24).chain(['…']).collect();
-            return Err(QuantityError::TooLong { seen, length, most: LONGEST_TEXT, example });
-        }
-        let seen = seen.to_owned();
-        if seen.contains(',') {
-            let suggestion = if seen.contains('.') { seen.replace(',', "") } else { seen.replace(',', ".") };
-            return Err(QuantityError::DecimalComma { seen, suggestion });
-        }
-        let text = seen.replace("+/-", "±").replace("+-", "±").replace(['\u{2212}', '\u{2013}'], "-");
-        let text = text.chars().map(|c| if c.is_whitespace() { ' ' } else { c }).collect();
-        Ok(Self { seen, text, dimension })
-    }
-
-    /// Takes the words in brackets off the end; brackets with a number in them are an uncertainty and stay.
-    fn split_qualifier(&self) -> (String, Option<&str>) {
-        let whole = || (self.text.clone(), None);
-        let Some(inner) = self.text.strip_suffix(')') else { return whole() };
-        match inner.rsplit_once('(') {
-            Some((stated, words)) if !stated.trim().is_empty() && !looks_numeric(words) => (stated.trim().to_owned(), Some(words)),
-            _ => whole(),
-        }
-    }
-
-    fn qualifier(&self, words: &str) -> Result<Qualifier, QuantityError> {
-        let compact: String = words.chars().filter(|c| *c != ' ').flat_map(char::to_lowercase).collect();
-        if let Some(k) = compact.strip_prefix("k=") {
-            let factor = self.plain_number(k).filter(|factor| *factor > 0.0);
-            return factor
-                .map(Qualifier::Coverage)
-                .ok_or_else(|| QuantityError::CoverageFactor { seen: self.seen.clone(), k: k.to_owned() });
-        }
-        match compact.as_str() {
-            "exact" => Ok(Qualifier::Exact),
-            "limits" | "limit" => Ok(Qualifier::Limits),
-            _ => Err(QuantityError::UnknownQualifier { seen: self.seen.clone(), word: words.trim().to_owned() }),
-        }
-    }
-
-    fn plain_number(&self, text: &str) -> Option<f64> {
-        let (mantissa, rest) = number::mantissa(text)?;
-        let (exponent, rest) = number::exponent(rest);
-        rest.is_empty().then(|| number::value(mantissa.text, number::power_of_ten(exponent)?))?
-    }
-
     /// `value ± half-width`, with or without brackets around both.
     fn with_half_width(&self, value: &str, half_width: &str, qualifier: Option<Qualifier>) -> Result<Quantity, QuantityError> {
         if half_width.contains('±') {
@@ -146,12 +73,7 @@ impl Reader {
             ("", both) | (both, "") => (self.unit(both, &left)?, None),
             (of_value, of_half_width) => (self.unit(of_value, &left)?, Some(of_half_width)),
         };
-        let (k, distribution) = match qualifier {
-            None => return Err(QuantityError::BareTolerance { seen: self.seen.clone(), bare: self.seen.clone() }),
-            Some(Qualifier::Exact) => return Err(self.contradiction("± and (exact); keep one of them")),
-            Some(Qualifier::Limits) => (3.0_f64.sqrt(), Distribution::Rectangular),
-            Some(Qualifier::Coverage(k)) => (k, Distribution::Normal),
-        };
+        let (k, distribution) = self.divisor(qualifier)?;
         let value = self.number(&left, "the value")?;
         let half_width = self.number(&right, "the uncertainty")?;
         let half_width_si = match own_unit {
@@ -162,7 +84,7 @@ impl Reader {
             }
             Some(other) => self.unit(other, &right)?.difference_to_si(half_width),
         };
-        self.quantity(unit.value_to_si(value), half_width_si / k, distribution, &left)
+        self.quantity(unit.value_to_si(value), half_width_si / k, distribution, (&left, unit))
     }
 
     /// `value(uncertainty)` or `value (exact)`.
@@ -178,7 +100,7 @@ impl Reader {
             (None, Some(Qualifier::Exact)) => self.finite(Quantity::exact(unit.value_to_si(value))),
             (Some(digits), None) => {
                 let u = self.uncertainty_in_brackets(&term, digits)?;
-                self.quantity(unit.value_to_si(value), unit.difference_to_si(u), Distribution::Normal, &term)
+                self.quantity(unit.value_to_si(value), unit.difference_to_si(u), Distribution::Normal, (&term, unit))
             }
             (None, _) => Err(self.missing_uncertainty(&term)),
             (Some(_), Some(Qualifier::Exact)) => Err(self.contradiction("an uncertainty in brackets and (exact); keep one of them")),
@@ -213,130 +135,15 @@ impl Reader {
         number::value(mantissa.text, power).ok_or_else(out_of_range)
     }
 
-    /// One number with its brackets, exponent and unit.
-    fn term<'a>(&self, text: &'a str, place: &'static str) -> Result<Term<'a>, QuantityError> {
-        let Some((mantissa, rest)) = number::mantissa(text.trim()) else { return Err(self.not_a_number(place, text)) };
-        let (exponent, rest) = number::exponent(rest);
-        let (brackets, rest) = match rest.trim_start().strip_prefix('(').and_then(|rest| rest.split_once(')')) {
-            Some((inside, rest)) => (Some(inside), rest),
-            None => (None, rest),
-        };
-        let (late_exponent, rest) = if brackets.is_some() { number::exponent(rest) } else { ("", rest) };
-        let unit = rest.trim();
-        if unit.starts_with(|c: char| c.is_ascii_digit()) && rest.starts_with(' ') {
-            return Err(QuantityError::DigitGroups { seen: self.seen.clone(), suggestion: joined_digits(&self.seen) });
-        }
-        if !exponent.is_empty() && !late_exponent.is_empty() || unit.starts_with(|c: char| c.is_ascii_digit() || c == '.') {
-            return Err(self.not_a_number(place, text));
-        }
-        Ok(Term { mantissa, exponent, brackets, late_exponent, unit })
-    }
-
-    fn number(&self, term: &Term<'_>, place: &'static str) -> Result<f64, QuantityError> {
-        number::power_of_ten(exponent_of(term))
-            .and_then(|power| number::value(term.mantissa.text, power))
-            .ok_or_else(|| QuantityError::OutOfRange { seen: self.seen.clone(), place })
-    }
-
-    fn unit(&self, text: &str, term: &Term<'_>) -> Result<&'static Unit, QuantityError> {
-        let accepted = || self.dimension.accepted_units();
-        if text.is_empty() && self.dimension != Dimension::Ratio {
-            let unit = self.dimension.usual_unit();
-            let suggestion = match term.brackets {
-                Some(digits) => format!("{}({digits}){} {unit}", term.mantissa.text, exponent_of(term)),
-                None => format!("{}(1){} {unit}", term.mantissa.text, exponent_of(term)),
-            };
-            return Err(QuantityError::MissingUnit { seen: self.seen.clone(), suggestion, accepted: accepted() });
-        }
-        match Unit::find(text) {
-            Some(unit) if unit.dimension == self.dimension => Ok(unit),
-            Some(unit) => Err(QuantityError::WrongDimension {
-                seen: self.seen.clone(),
-                unit: text.to_owned(),
-                found: unit.dimension.name(),
-                needed: self.dimension.name(),
-                accepted: accepted(),
-            }),
-            None => Err(QuantityError::UnknownUnit { seen: self.seen.clone(), unit: text.to_owned(), advice: self.unit_advice(text) }),
+    /// What turns a half-width into a standard uncertainty.
+    fn divisor(&self, qualifier: Option<Qualifier>) -> Result<(f64, Distribution), QuantityError> {
+        match qualifier {
+            None => Err(QuantityError::BareTolerance { seen: self.seen.clone(), bare: self.seen.clone() }),
+            Some(Qualifier::Exact) => Err(self.contradiction("an uncertainty and (exact); keep one of them")),
+            Some(Qualifier::Limits) => Ok((3.0_f64.sqrt(), Distribution::Rectangular)),
+            Some(Qualifier::Coverage(k)) => Ok((k, Distribution::Normal)),
         }
     }
-
-    fn unit_advice(&self, text: &str) -> String {
-        let by_name = OTHER_NAMES.iter().find(|(name, _)| name.eq_ignore_ascii_case(text)).map(|(_, unit)| *unit);
-        let by_spelling = || nearest(text, units_of(self.dimension).map(|unit| unit.symbol));
-        match by_name.or_else(by_spelling) {
-            Some(unit) => format!("did you mean {unit}? (accepted: {})", self.dimension.accepted_units()),
-            None => format!("accepted: {}", self.dimension.accepted_units()),
-        }
-    }
-
-    fn quantity(&self, value: f64, u: f64, distribution: Distribution, term: &Term<'_>) -> Result<Quantity, QuantityError> {
-        if u < 0.0 {
-            return Err(QuantityError::NegativeUncertainty { seen: self.seen.clone() });
-        }
-        if u == 0.0 {
-            let unit = if term.unit.is_empty() { String::new() } else { format!(" {}", term.unit) };
-            let suggestion = format!("{}{}{unit} (exact)", term.mantissa.text, exponent_of(term));
-            return Err(QuantityError::ZeroUncertainty { seen: self.seen.clone(), suggestion });
-        }
-        self.finite(Quantity { value, u, distribution })
-    }
-
-    /// The last gate: a unit can still push a finite number over the edge.
-    fn finite(&self, quantity: Quantity) -> Result<Quantity, QuantityError> {
-        if quantity.value.is_finite() && quantity.u.is_finite() {
-            return Ok(quantity);
-        }
-        Err(QuantityError::OutOfRange { seen: self.seen.clone(), place: "the value" })
-    }
-
-    fn missing_uncertainty(&self, term: &Term<'_>) -> QuantityError {
-        let exponent = exponent_of(term);
-        let unit = if term.unit.is_empty() { String::new() } else { format!(" {}", term.unit) };
-        let last_place = match term.mantissa.decimals {
-            0 => "1".to_owned(),
-            decimals => format!("0.{}1", "0".repeat(decimals - 1)),
-        };
-        QuantityError::MissingUncertainty {
-            seen: self.seen.clone(),
-            suggestion: format!("{}(1){exponent}{unit}", term.mantissa.text),
-            u: format!("{last_place}{exponent}{unit}"),
-        }
-    }
-
-    fn not_a_number(&self, place: &'static str, found: &str) -> QuantityError {
-        let lower = found.trim().trim_start_matches(['+', '-']).to_lowercase();
-        let example = self.dimension.example();
-        if lower.starts_with("nan") || lower.starts_with("inf") || lower.starts_with('∞') {
-            return QuantityError::NotFinite { seen: self.seen.clone(), example };
-        }
-        QuantityError::NotANumber { seen: self.seen.clone(), place, found: found.trim().to_owned(), example }
-    }
-
-    fn contradiction(&self, conflict: &'static str) -> QuantityError {
-        QuantityError::Contradiction { seen: self.seen.clone(), conflict }
-    }
-}
-
-/// Brackets that hold an uncertainty, sensible or not, and no words.
-fn looks_numeric(inside: &str) -> bool {
-    let inside = inside.trim();
-    if let Some((_, rest)) = number::mantissa(inside) {
-        return number::exponent(rest).1.is_empty();
-    }
-    matches!(inside.trim_start_matches(['+', '-']).to_ascii_lowercase().as_str(), "" | "nan" | "inf" | "infinity")
-}
-
-fn exponent_of<'a>(term: &Term<'a>) -> &'a str {
-    if term.exponent.is_empty() { term.late_exponent } else { term.exponent }
-}
-
-/// The text without spaces between digits.
-fn joined_digits(text: &str) -> String {
-    let letters: Vec<char> = text.chars().collect();
-    let digit_at = |i: Option<usize>| i.and_then(|i| letters.get(i)).is_some_and(char::is_ascii_digit);
-    let between_digits = |i: usize| letters[i].is_whitespace() && digit_at(i.checked_sub(1)) && digit_at(Some(i + 1));
-    (0..letters.len()).filter(|i| !between_digits(*i)).map(|i| letters[i]).collect()
 }
 
 #[cfg(test)]
@@ -441,11 +248,11 @@ mod tests {
             ("812(1) MM", Dimension::Length, "UnknownUnit", vec!["did you mean mm?"]),
             ("3(1) microns", Dimension::Length, "UnknownUnit", vec!["did you mean um?"]),
             ("5320(1) Å", Dimension::Length, "UnknownUnit", vec!["did you mean nm (1 nm = 10 Å)?"]),
-            ("812(1) deg", Dimension::Length, "WrongDimension", vec!["unit of angle", "length is needed", "mm"]),
-            ("1(1) %", Dimension::Angle, "WrongDimension", vec!["ratio", "deg"]),
+            ("812(1) deg", Dimension::Length, "WrongDimension", vec!["unit of angle", "a length is needed", "mm"]),
+            ("1(1) %", Dimension::Angle, "WrongDimension", vec!["ratio", "an angle is needed", "deg"]),
             ("812(0) mm", Dimension::Length, "ZeroUncertainty", vec!["812 mm (exact)"]),
             ("0 mm ± 1 % (k=1)", Dimension::Length, "ZeroUncertainty", vec!["(exact)"]),
-            ("812 ± 0.0 mm (limits)", Dimension::Length, "ZeroUncertainty", vec!["(exact)"]),
+            ("812 ± 0.0 mm (limits)", Dimension::Length, "ZeroUncertainty", vec!["\"812 mm (exact)\""]),
             ("812(-1) mm", Dimension::Length, "NegativeUncertainty", vec!["minus"]),
             ("812 ± -1 mm (k=1)", Dimension::Length, "NegativeUncertainty", vec!["minus"]),
             ("812 ± 1 mm (k=0)", Dimension::Length, "CoverageFactor", vec!["k = 0"]),
@@ -482,6 +289,26 @@ mod tests {
         }
         let long = length(&"1".repeat(1_000_000)).expect_err("long").to_string();
         assert!(long.contains("1000000 characters") && long.len() < 200, "{long}");
+    }
+
+    #[test]
+    fn an_uncertainty_alone() {
+        let px = |text: &str| Quantity::parse_uncertainty(text, Dimension::Pixel);
+        for (text, want) in [("2 px (k=1)", 2.0), ("2 px (k=2)", 1.0), ("± 3 px (limits)", 3f64.sqrt())] {
+            assert!((px(text).unwrap() - want).abs() < 1e-15, "{text}");
+        }
+        for (text, reason) in [
+            ("2 px", "BareUncertainty"),
+            ("2 (k=1)", "MissingUnit"),
+            ("2 px (exact)", "Contradiction"),
+            ("0 px (k=1)", "NoUncertainty"),
+            ("-2 px (k=1)", "NegativeUncertainty"),
+            ("2 mm (k=1)", "WrongDimension"),
+            ("px (k=1)", "NotANumber"),
+        ] {
+            let error = px(text).expect_err(text);
+            assert!(format!("{error:?}").starts_with(reason), "{text}: {error:?}");
+        }
     }
 
     proptest! {

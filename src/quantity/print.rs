@@ -157,6 +157,7 @@ fn without_sign_of_zero(text: String) -> String {
 #[cfg(test)]
 mod tests {
     use super::*;
+    use crate::quantity::{Dimension, Quantity};
 
     #[test]
     fn two_digits_and_the_value_to_match() {
@@ -187,6 +188,23 @@ mod tests {
         assert_eq!(format_concise(0.0, 3.4e-15, "m"), "0(34)e-16 m");
         assert_eq!(format_concise(9.9999e-12, 1.0e-15, "m"), "9.9999(10)e-12 m");
         assert_eq!(format_concise(9.999_99e-12, 1.0e-15, "m"), "10.0000(10)e-12 m");
+    }
+
+    /// CODATA 2018 as published (from memory): gravitational constant, electron mass, inverse fine-structure constant,
+    /// proton-electron mass ratio, Bohr radius; each is printed there with two digits of u.
+    #[test]
+    fn published_constants_print_as_published() {
+        for (value, u, text) in [
+            (6.674_30e-11, 0.000_15e-11, "6.67430(15)e-11"),
+            (9.109_383_701_5e-31, 0.000_000_002_8e-31, "9.1093837015(28)e-31"),
+            (137.035_999_084, 0.000_000_021, "137.035999084(21)"),
+            (1_836.152_673_43, 0.000_000_11, "1836.15267343(11)"),
+            (5.291_772_109_03e-11, 0.000_000_000_80e-11, "5.29177210903(80)e-11"),
+        ] {
+            assert_eq!(format_concise(value, u, ""), text);
+            let read = Quantity::parse(text, Dimension::Ratio).unwrap();
+            assert!((read.value / value - 1.0).abs() < 1e-15 && (read.u / u - 1.0).abs() < 1e-12, "{text}: {read:?}");
+        }
     }
 
     #[test]
