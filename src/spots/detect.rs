@@ -33,7 +33,8 @@ pub(super) fn detect(half: &Plane, noise: Noise, false_spots: f64) -> Detection 
     let levels = levels(half);
     let cells: usize = levels.iter().map(|level| level.response.len()).sum();
     let floor = |cell_px: f64| move |light: f64| (noise.variance(light) * KERNEL_ENERGY).sqrt() / cell_px;
-    let peaks_above = |threshold: f64| -> Vec<Peak> { levels.iter().flat_map(|level| level.peaks(threshold, &floor(level.cell_px))).collect() };
+    let peaks_above =
+        |threshold: f64| -> Vec<Peak> { levels.iter().flat_map(|level| level.peaks(threshold, &floor(level.cell_px))).collect() };
     let normal = threshold(cells, false_spots);
     let mut peaks = peaks_above(normal);
     let dips: Vec<Peak> = levels.iter().flat_map(|level| level.dips(normal, &floor(level.cell_px))).collect();
@@ -54,7 +55,8 @@ pub(super) fn detect(half: &Plane, noise: Noise, false_spots: f64) -> Detection 
 /// At most two dips, or one for every twenty peaks, may remain between the threshold and `TAIL_END`; deeper ones are dark things
 /// (marks, dust, a ruler), not noise.
 fn with_tails(normal: f64, peaks: &[Peak], dips: &[Peak]) -> f64 {
-    let above = |list: &[Peak], threshold: f64, end: f64| list.iter().filter(|p| p.signal_to_noise > threshold && p.signal_to_noise < end).count();
+    let above =
+        |list: &[Peak], threshold: f64, end: f64| list.iter().filter(|p| p.signal_to_noise > threshold && p.signal_to_noise < end).count();
     let mut threshold = normal;
     while threshold < TAIL_END {
         let allowed = (above(peaks, threshold, f64::INFINITY) / 20).max(2);
