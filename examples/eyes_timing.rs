@@ -22,6 +22,9 @@ fn main() {
         let light = best(|| drop(photo.light([1.0, 0.0, 0.0])));
         let grey = best(|| drop(photo.grey()));
         let find = best(|| drop(spots::find(&photo, &spots::SpotOptions::default())));
-        println!("{}x{} decode {decode:.1} linear {linear:.1} +half {half:.1} light {light:.1} grey {grey:.1} find {find:.1} ms", photo.width, photo.height);
+        println!(
+            "{}x{} decode {decode:.1} linear {linear:.1} +half {half:.1} light {light:.1} grey {grey:.1} find {find:.1} ms",
+            photo.width, photo.height
+        );
     }
 }

@@ -8,6 +8,7 @@ mod failure;
 mod files;
 mod measure;
 mod new;
+pub mod render;
 mod target;
 
 pub use arguments::command;

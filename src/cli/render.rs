@@ -1,10 +1,11 @@
 //! `spotrule render`: photos with known truth from a scene file or a built-in demo.
 
-use crate::synth::{DEMO_NAMES, Dots, Scene, SynthError, demo_scene, encode, render_marked, render_pattern, render_target};
-use std::{
-    io::Write,
-    path::{Path, PathBuf},
+use super::{
+    Failure,
+    files::{self, Existing},
 };
+use crate::synth::{DEMO_NAMES, Dots, Scene, SynthError, demo_scene, encode, render_marked, render_pattern, render_target};
+use std::{path::PathBuf, process::ExitCode};
 
 /// Draw the photos of an invented bench, with the truth behind them.
 ///
@@ -29,58 +30,33 @@ pub struct RenderArgs {
     pub force: bool,
 }
 
-/// Why nothing, or not everything, was written.
-#[derive(Debug, thiserror::Error)]
-#[non_exhaustive]
-pub enum RenderError {
-    /// The scene cannot be read or drawn.
-    #[error(transparent)]
-    Scene(#[from] SynthError),
-    /// A file exists and `--force` was not given. Nothing was written.
-    #[error("{} exists; choose another folder or add --force to replace it", .0.display())]
-    Exists(PathBuf),
-    /// A file or folder cannot be read or written.
-    #[error("{}: {error}", path.display())]
-    File {
-        /// Which one.
-        path: PathBuf,
-        /// What the system says.
-        error: std::io::Error,
-    },
-    /// The truth holds a number that JSON cannot carry.
-    #[error("the truth cannot be written as JSON: {0}")]
-    Truth(#[from] serde_json::Error),
-    /// Neither a scene file nor a demo was named.
-    #[error("name a scene file or a demo: --demo {}", DEMO_NAMES.join(" | --demo "))]
-    NoScene,
-}
-
 /// Runs the command; names each file written on stdout.
 ///
 /// # Errors
-/// See [`RenderError`]. All files are checked for existence before the first one is written.
-pub fn run(args: RenderArgs) -> Result<(), RenderError> {
-    let scene = scene(&args)?;
-    let names = file_names(&scene);
-    if !args.force
-        && let Some(existing) = names.iter().map(|name| args.out.join(name)).find(|path| path.exists())
-    {
-        return Err(RenderError::Exists(existing));
+/// A scene that cannot be read or drawn, files that exist (all are looked for before the first is written) or cannot be written.
+pub fn run(arguments: &RenderArgs) -> Result<ExitCode, Failure> {
+    let scene = scene(arguments)?;
+    let taken = file_names(&scene).into_iter().map(|name| arguments.out.join(name)).find(|path| path.exists());
+    if let (Some(path), false) = (taken, arguments.force) {
+        return Err(Failure::Exists { path });
     }
-    std::fs::create_dir_all(&args.out).map_err(at(&args.out))?;
-    for (name, bytes) in files(&scene)? {
-        let path = args.out.join(name);
-        write_whole(&args.out, &path, &bytes)?;
-        writeln!(std::io::stdout().lock(), "{}", path.display()).map_err(at(&path))?;
+    std::fs::create_dir_all(&arguments.out).map_err(|cause| Failure::Unwritable { path: arguments.out.clone(), cause })?;
+    let existing = if arguments.force { Existing::Replaced } else { Existing::Kept };
+    for (name, bytes) in drawn(&scene).map_err(|error| Failure::Usage(error.to_string()))? {
+        let path = arguments.out.join(name);
+        files::write(&path, &bytes, existing)?;
+        files::print(&format!("{}\n", path.display()))?;
     }
-    Ok(())
+    Ok(ExitCode::SUCCESS)
 }
 
-fn scene(args: &RenderArgs) -> Result<Scene, RenderError> {
-    match (&args.demo, &args.scene) {
-        (Some(name), _) => Ok(demo_scene(name)?),
-        (None, Some(path)) => Ok(Scene::from_toml(&std::fs::read_to_string(path).map_err(at(path))?)?),
-        (None, None) => Err(RenderError::NoScene),
+fn scene(arguments: &RenderArgs) -> Result<Scene, Failure> {
+    match (&arguments.demo, &arguments.scene) {
+        (Some(name), _) => demo_scene(name).map_err(|error| Failure::Usage(error.to_string())),
+        (None, Some(path)) => {
+            Scene::from_toml(&files::read_text(path)?).map_err(|error| Failure::Usage(format!("{}: {error}", path.display())))
+        }
+        (None, None) => Err(Failure::Usage(format!("name a scene file or a demo: --demo {}", DEMO_NAMES.join(" | --demo ")))),
     }
 }
 
@@ -92,7 +68,7 @@ fn file_names(scene: &Scene) -> Vec<&'static str> {
     names
 }
 
-fn files(scene: &Scene) -> Result<Vec<(&'static str, Vec<u8>)>, RenderError> {
+fn drawn(scene: &Scene) -> Result<Vec<(&'static str, Vec<u8>)>, SynthError> {
     let pattern = if scene.print.dots == Dots::InPattern { render_marked(scene)? } else { render_pattern(scene)? };
     let mut files = vec![
         (scene.pattern_file(), encode(scene, &pattern)?),
@@ -105,21 +81,10 @@ fn files(scene: &Scene) -> Result<Vec<(&'static str, Vec<u8>)>, RenderError> {
     Ok(files)
 }
 
-/// Writes beside the place and renames, so that no half-written file is ever seen.
-fn write_whole(folder: &Path, path: &Path, bytes: &[u8]) -> Result<(), RenderError> {
-    let mut draft = tempfile::NamedTempFile::new_in(folder).map_err(at(folder))?;
-    draft.write_all(bytes).map_err(at(path))?;
-    draft.persist(path).map_err(|refused| at(path)(refused.error))?;
-    Ok(())
-}
-
-fn at(path: &Path) -> impl Fn(std::io::Error) -> RenderError + '_ {
-    move |error| RenderError::File { path: path.to_owned(), error }
-}
-
 #[cfg(test)]
 mod tests {
     use super::*;
+    use std::path::Path;
 
     fn small_scene(folder: &Path) -> PathBuf {
         let mut scene = demo_scene("no-target").unwrap();
@@ -140,20 +105,20 @@ mod tests {
         let folder = tempfile::tempdir().unwrap();
         let scene = small_scene(folder.path());
         let out = folder.path().join("made");
-        run(args(scene.clone(), out.clone())).unwrap();
+        run(&args(scene.clone(), out.clone())).unwrap();
         let mut written: Vec<String> =
             std::fs::read_dir(&out).unwrap().map(|entry| entry.unwrap().file_name().into_string().unwrap()).collect();
         written.sort();
         assert_eq!(written, ["bench.toml", "pattern.jpg", "truth.json"]);
         let truth: serde_json::Value = serde_json::from_slice(&std::fs::read(out.join("truth.json")).unwrap()).unwrap();
         assert!(truth["orders"].as_array().unwrap().len() > 5);
-        assert!(matches!(run(args(scene.clone(), out.clone())), Err(RenderError::Exists(_))));
-        assert!(run(RenderArgs { force: true, ..args(scene, out) }).is_ok());
+        assert!(matches!(run(&args(scene.clone(), out.clone())), Err(Failure::Exists { .. })));
+        assert!(run(&RenderArgs { force: true, ..args(scene, out) }).is_ok());
     }
 
     #[test]
     fn a_missing_scene_file_is_named() {
-        let message = run(args("nowhere/scene.toml".into(), "nowhere-else".into())).unwrap_err().to_string();
+        let message = run(&args("nowhere/scene.toml".into(), "nowhere-else".into())).unwrap_err().to_string();
         assert!(message.contains("nowhere"), "{message}");
     }
 }

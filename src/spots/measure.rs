@@ -92,7 +92,9 @@ pub(super) fn measure(linear: &LinearPhoto, colour: &Colour, noise: Noise, found
     let mix = Mix { linear, weights: colour.weights };
     let alone = |peak: &Peak| fit_alone(&mix, peak, noise);
     let first: Vec<Found> = found.peaks.par_iter().filter_map(alone).filter(Found::is_spot).collect();
-    if std::env::var_os("LAP").is_some() { eprintln!("  first {:.1} of {}", t0.elapsed().as_secs_f64()*1e3, found.peaks.len()); }
+    if std::env::var_os("LAP").is_some() {
+        eprintln!("  first {:.1} of {}", t0.elapsed().as_secs_f64() * 1e3, found.peaks.len());
+    }
     let first = one_per_place(first, linear);
     let speckle = FIRST_SPECKLE * scatter::excess(&shapes(&first, linear, STRONG..f64::INFINITY), USUAL_SPECKLE / FIRST_SPECKLE);
     let speckle = speckle.clamp(MIN_SPECKLE, MAX_SPECKLE);

@@ -77,14 +77,25 @@ impl Default for SpotOptions {
 /// # Errors
 /// [`SpotError::NothingFound`] with the brightest thing seen.
 pub fn find(photo: &Photo, options: &SpotOptions) -> Result<Spots, SpotError> {
-    let t0 = std::time::Instant::now(); let lap = |n: &str| if std::env::var_os("LAP").is_some() { eprintln!("{n} {:.1}", t0.elapsed().as_secs_f64()*1e3) };
-    let linear = photo.linear();lap("linear");
-    let half = linear.half_planes();lap("half");
-    let colour = colour::of_spots(&half);lap("colour");
+    let t0 = std::time::Instant::now();
+    let lap = |n: &str| {
+        if std::env::var_os("LAP").is_some() {
+            eprintln!("{n} {:.1}", t0.elapsed().as_secs_f64() * 1e3)
+        }
+    };
+    let linear = photo.linear();
+    lap("linear");
+    let half = linear.half_planes();
+    lap("half");
+    let colour = colour::of_spots(&half);
+    lap("colour");
     let plane = half.mixed(colour.weights);
-    let noise = plane.halved().noise(16.0);lap("noise");
-    let found = detect::detect(&plane, noise, options.false_spots);lap("detect");
-    let mut spots = measure::measure(&linear, &colour, noise, &found);lap("measure");
+    let noise = plane.halved().noise(16.0);
+    lap("noise");
+    let found = detect::detect(&plane, noise, options.false_spots);
+    lap("detect");
+    let mut spots = measure::measure(&linear, &colour, noise, &found);
+    lap("measure");
     if spots.is_empty() {
         let best = found.peaks.first().copied().or(found.best_reject);
         return Err(SpotError::NothingFound {

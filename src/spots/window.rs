@@ -2,7 +2,6 @@
 
 use crate::photo::LinearPhoto;
 
-
 /// One or several pixels.
 #[derive(Debug, Clone, Copy)]
 pub(super) struct Cell {

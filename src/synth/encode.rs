@@ -18,7 +18,8 @@ use image::{
 /// # Errors
 /// When the image encoder refuses, which a checked scene does not cause.
 pub fn encode(scene: &Scene, rendered: &RenderedPhoto) -> Result<Vec<u8>, SynthError> {
-    let mut image = image_of(rendered).ok_or_else(|| ImageError::Parameter(ParameterError::from_kind(ParameterErrorKind::DimensionMismatch)))?;
+    let mut image =
+        image_of(rendered).ok_or_else(|| ImageError::Parameter(ParameterError::from_kind(ParameterErrorKind::DimensionMismatch)))?;
     let mut bytes = Vec::new();
     match scene.file.kind {
         FileKind::Png16 => image.write_to(&mut std::io::Cursor::new(&mut bytes), ImageFormat::Png)?,
@@ -26,7 +27,12 @@ pub fn encode(scene: &Scene, rendered: &RenderedPhoto) -> Result<Vec<u8>, SynthE
             if let Some(exif) = &scene.file.exif {
                 image.apply_orientation(undoing(exif.orientation));
             }
-            JpegEncoder::new_with_quality(&mut bytes, quality).write_image(image.as_bytes(), image.width(), image.height(), image.color().into())?;
+            JpegEncoder::new_with_quality(&mut bytes, quality).write_image(
+                image.as_bytes(),
+                image.width(),
+                image.height(),
+                image.color().into(),
+            )?;
             if let Some(exif) = &scene.file.exif {
                 bytes = with_exif(&bytes, &exif::tiff(scene, exif));
             }

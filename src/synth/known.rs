@@ -6,7 +6,7 @@ use super::{
 };
 use crate::{
     bench::{self, Bench, Medium, Mode, Pattern, Side, TargetKind},
-    quantity::{Distribution, Quantity},
+    quantity::{Quantity, format_concise_digits},
 };
 use rand_distr::{Distribution as _, StandardNormal};
 use serde::{Deserialize, Serialize};
@@ -46,8 +46,7 @@ pub struct Known {
 
 impl From<Stated> for Quantity {
     fn from(stated: Stated) -> Self {
-        let distribution = if stated.u > 0.0 { Distribution::Normal } else { Distribution::Exact };
-        Self { value: stated.value, u: stated.u, distribution }
+        if stated.u > 0.0 { Self::normal(stated.value, stated.u) } else { Self::exact(stated.value) }
     }
 }
 
@@ -196,7 +195,7 @@ impl Scene {
 
 /// 20 °C, 1013.25 hPa, half saturated; without weight here, since wavelengths are stated in air.
 fn standard_air() -> bench::Air {
-    let exact = |value: f64| Quantity { value, u: 0.0, distribution: Distribution::Exact };
+    let exact = Quantity::exact;
     bench::Air { temperature_celsius: exact(20.0), pressure_pa: exact(101_325.0), humidity: exact(0.5) }
 }
 
@@ -206,22 +205,12 @@ fn write_pair(text: &mut String, key: &str, pair: Option<[Stated; 2]>) {
     let _ = writeln!(text, "{key} = [\"{x}\", \"{y}\"]");
 }
 
-/// `812.0(8) mm`: the uncertainty in the last digits of the value (JCGM 100, 7.2.2), one or two of them.
+/// The stated value in a unit of the bench file, u with one digit where it has only one.
 fn quantity_text(stated: Stated, units_per_si: f64, unit: &str) -> String {
     let (value, u) = (stated.value * units_per_si, stated.u * units_per_si);
-    if u <= 0.0 {
-        return format!("{value} {unit} (exact)");
-    }
-    // Two digits of u, one when the second is zero.
-    let exponent = u.log10().floor();
-    let two = (u * 10.0_f64.powf(1.0 - exponent)).round();
-    let (digits, decimals) = if (two / 10.0).fract().abs() < 1e-9 { (two / 10.0, -exponent) } else { (two, 1.0 - exponent) };
-    if decimals < 0.0 {
-        // 2400 ± 30 has no digits behind the point to carry the uncertainty.
-        return format!("{value:.0} ± {u:.0} {unit} (k=1)");
-    }
-    let places = super::pixels::floor_index(decimals, 15);
-    format!("{value:.places$}({digits:.0}) {unit}")
+    let one_digit = u * 10.0_f64.powf(-u.log10().floor());
+    let digits = if u > 0.0 && (one_digit - one_digit.round()).abs() > 0.01 { 2 } else { 1 };
+    format_concise_digits(value, u, unit, digits)
 }
 
 #[cfg(test)]
@@ -236,8 +225,33 @@ mod tests {
         assert_eq!(text(632.82e-9, 0.01e-9, 1e9, "nm"), "632.82(1) nm");
         assert_eq!(text(0.0, 0.5_f64.to_radians(), 1.0_f64.to_degrees(), "deg"), "0.0(5) deg");
         assert_eq!(text(0.02, 15e-6, 1e3, "mm"), "20.000(15) mm");
-        assert_eq!(text(2.4, 0.03, 1e3, "mm"), "2400 ± 30 mm (k=1)");
         assert_eq!(text(0.01, 0.0, 1e3, "mm"), "10 mm (exact)");
+    }
+
+    #[test]
+    fn the_bench_file_says_the_same_as_the_bench() {
+        for name in DEMO_NAMES {
+            let scene = demo_scene(name).unwrap();
+            let (read, _) = Bench::parse(&scene.bench_text()).unwrap();
+            let (told, stated) = (scene.bench(), |quantity: Option<Quantity>| quantity.map(|q| (q.value, q.u)));
+            let near = |a: Option<Quantity>, b: Option<Quantity>| match (stated(a), stated(b)) {
+                (Some(a), Some(b)) => (a.0 - b.0).abs() < 0.01 * b.1 && (a.1 / b.1 - 1.0).abs() < 0.01,
+                (a, b) => a.is_none() && b.is_none(),
+            };
+            assert!(near(read.screen.throw_m, told.screen.throw_m), "{name}");
+            assert!(near(Some(read.lasers[0].wavelength_m), Some(told.lasers[0].wavelength_m)), "{name}");
+            let first = |pair: Option<[Quantity; 2]>| pair.map(|pair| pair[0]);
+            let second = |pair: Option<[Quantity; 2]>| pair.map(|pair| pair[1]);
+            for (a, b) in [
+                (read.screen.tilt_rad, told.screen.tilt_rad),
+                (read.samples[0].incidence_rad, told.samples[0].incidence_rad),
+                (read.camera.square_on_rad, told.camera.square_on_rad),
+            ] {
+                assert!(near(first(a), first(b)) && near(second(a), second(b)), "{name}: {a:?} {b:?}");
+            }
+            assert_eq!((read.samples[0].mode, read.screen.seen_from), (told.samples[0].mode, told.screen.seen_from));
+            assert_eq!(read.target.is_some(), told.target.is_some());
+        }
     }
 
     /// The scenes are fair: what is stated lies within 2.5 u of what is true.

@@ -58,6 +58,9 @@ pub enum SynthError {
         /// Name asked for.
         name: String,
     },
+    /// The truth holds a number that JSON cannot carry.
+    #[error("the truth cannot be written as JSON: {0}")]
+    Truth(#[from] serde_json::Error),
     /// The image encoder refused.
     #[error("the photo cannot be encoded: {0}")]
     Encode(#[from] image::ImageError),

@@ -91,7 +91,12 @@ fn develop(scene: &Scene, raw: &[f32], width: usize, height: usize) -> Samples {
     }
 }
 
-fn fill<T: Copy + Default + Send>(width: usize, height: usize, channels: usize, sample: impl Fn(usize, usize, usize) -> T + Sync) -> Vec<T> {
+fn fill<T: Copy + Default + Send>(
+    width: usize,
+    height: usize,
+    channels: usize,
+    sample: impl Fn(usize, usize, usize) -> T + Sync,
+) -> Vec<T> {
     let mut samples = vec![T::default(); width * height * channels];
     samples.par_chunks_mut(width * channels).enumerate().for_each(|(y, row)| {
         for (i, value) in row.iter_mut().enumerate() {
@@ -140,7 +145,8 @@ impl Mosaic<'_> {
     }
 
     fn mean(&self, x: usize, y: usize, steps: &[(isize, isize)]) -> f32 {
-        let sum: f32 = steps.iter().map(|&(dx, dy)| self.raw[mirrored(y, dy, self.height) * self.width + mirrored(x, dx, self.width)]).sum();
+        let sum: f32 =
+            steps.iter().map(|&(dx, dy)| self.raw[mirrored(y, dy, self.height) * self.width + mirrored(x, dx, self.width)]).sum();
         sum / steps.len() as f32
     }
 }

@@ -3,7 +3,7 @@
 use super::{
     field::Tile,
     orders::{Order, Purpose, random},
-    pixels::{covered, floor_index, single},
+    pixels::{covered, single},
     scene::{Glare, Scene},
 };
 use crate::frames::{PixelCovariance, PixelPoint};
@@ -175,11 +175,4 @@ impl GlareGrid {
         let lower = node(column, row + 1) * (1.0 - right) + node(column + 1, row + 1) * right;
         upper * (1.0 - down) + lower * down
     }
-}
-
-/// Paper, ink and wall between nodes are not smooth; light is. What the lens adds at a place, for the truth file.
-pub(super) fn glare_at(light: &LaserLight, at: PixelPoint, height: usize) -> f64 {
-    let x = floor_index(at.x_px + 0.5, light.width.saturating_sub(1));
-    let y = floor_index(at.y_px + 0.5, height.saturating_sub(1));
-    light.glare.at(x, y)
 }

@@ -108,7 +108,10 @@ impl Sums {
         let [xx, xy, yy] = self.noise;
         let middle = [xx + (self.lever[0] * ground.u_slope[0]).powi(2), xy, yy + (self.lever[1] * ground.u_slope[1]).powi(2)];
         let [a, b, d] = inverse;
-        let left = [[a * middle[0] + b * middle[1], a * middle[1] + b * middle[2]], [b * middle[0] + d * middle[1], b * middle[1] + d * middle[2]]];
+        let left = [
+            [a * middle[0] + b * middle[1], a * middle[1] + b * middle[2]],
+            [b * middle[0] + d * middle[1], b * middle[1] + d * middle[2]],
+        ];
         PixelCovariance {
             xx: (left[0][0] * a + left[0][1] * b) / c2,
             xy: (left[0][0] * b + left[0][1] * d) / c2,
