@@ -3,7 +3,9 @@
 use crate::{
     Note,
     bench::Mode,
+    budget::{BudgetLine, Value},
     frames::{PixelCovariance, PixelPoint},
+    lattice::LatticeKind,
     photo::Exif,
 };
 
@@ -32,27 +34,6 @@ pub struct Measurement {
     pub notes: Vec<Note>,
 }
 
-/// A value with its uncertainty, SI.
-#[derive(Debug, Clone, Copy, PartialEq)]
-pub struct Value {
-    /// Best estimate.
-    pub value: f64,
-    /// Standard uncertainty.
-    pub u: f64,
-    /// Coverage factor for about 95 % (Student's t at 95.45 % for the effective degrees of freedom).
-    pub coverage_factor: f64,
-    /// Effective degrees of freedom (Welch-Satterthwaite); infinite when nothing was estimated from scatter.
-    pub effective_degrees_of_freedom: f64,
-}
-
-impl Value {
-    /// Expanded uncertainty U = k u.
-    #[must_use]
-    pub fn expanded(&self) -> f64 {
-        self.coverage_factor * self.u
-    }
-}
-
 /// What was found of one sample.
 #[derive(Debug, Clone, PartialEq)]
 pub struct SampleResult {
@@ -74,21 +55,6 @@ pub struct SampleResult {
     pub budget: Vec<BudgetLine>,
 }
 
-/// The kinds of plane lattice.
-#[derive(Debug, Clone, Copy, PartialEq, Eq)]
-pub enum LatticeKind {
-    /// No symmetry beyond the half turn.
-    Oblique,
-    /// Right angle, two pitches.
-    Rectangular,
-    /// Two equal pitches at a general angle.
-    CentredRectangular,
-    /// Right angle, equal pitches.
-    Square,
-    /// 120°, equal pitches.
-    Hexagonal,
-}
-
 /// A lattice kind and how well the data support it.
 #[derive(Debug, Clone, PartialEq)]
 pub struct KindStatement {
@@ -98,19 +64,6 @@ pub struct KindStatement {
     pub p_value: f64,
     /// A sentence for the report.
     pub sentence: String,
-}
-
-/// One line of the uncertainty budget.
-#[derive(Debug, Clone, PartialEq)]
-pub struct BudgetLine {
-    /// Name of the source.
-    pub source: String,
-    /// Exact share of each pitch's variance; over all lines they add up to 1.
-    pub share: Vec<f64>,
-    /// Standard uncertainty that this source alone gives each pitch, m.
-    pub u_pitch_m: Vec<f64>,
-    /// Its share of the variance of the lattice angle; `None` for a line grating.
-    pub angle_share: Option<f64>,
 }
 
 /// The zero order in a photo.

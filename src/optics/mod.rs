@@ -2,6 +2,7 @@
 //! Must never know: brightness, files, uncertainty.
 //! Start reading at [`order_direction`]; the equations stand in `docs/model.md`.
 
+pub mod air;
 mod camera;
 mod order;
 mod screen;
