@@ -7,6 +7,7 @@ mod columns;
 #[cfg(test)]
 mod example;
 mod json;
+mod overlay;
 mod rounding;
 mod sample_json;
 mod text;
@@ -14,5 +15,6 @@ mod units;
 mod words;
 
 pub use json::{Program, json, refused_json};
+pub use overlay::{overlay, png};
 pub use rounding::{Rounded, concise, percent, rounded, significant};
 pub use text::{refusal_text, text};

@@ -1,13 +1,11 @@
 //! A result that a person reads at a glance in a terminal: at most 100 columns, no colours.
 
-use std::collections::BTreeMap;
-
 use super::{
     budget_table::budget_table,
     columns::{Align, WIDTH, columns, paragraph, shortened},
     rounding::{concise, percent, rounded, significant},
     units::{self, Unit},
-    words::{NO_CERTIFICATE, kind_name, mode_name, numbered, pattern_name},
+    words::{NO_CERTIFICATE, kind_name, mode_name, numbered, pattern_name, reason_counts},
 };
 use crate::measure::{FitSummary, Measurement, ParameterRow, SampleResult, Value};
 
@@ -139,12 +137,7 @@ fn evidence(measurement: &Measurement) -> String {
 }
 
 fn rejection_reasons(measurement: &Measurement) -> String {
-    let mut count = BTreeMap::new();
-    for spot in &measurement.rejected {
-        *count.entry(spot.reason.as_str()).or_insert(0_usize) += 1;
-    }
-    let mut reasons: Vec<(&str, usize)> = count.into_iter().collect();
-    reasons.sort_by_key(|&(reason, count)| (std::cmp::Reverse(count), reason));
+    let reasons = reason_counts(measurement.rejected.iter());
     let mut lines: String =
         reasons.iter().take(REASONS_SHOWN).map(|(reason, count)| paragraph("       ", &format!("{count} x {reason}"), WIDTH)).collect();
     if reasons.len() > REASONS_SHOWN {

@@ -1,8 +1,10 @@
 //! The words that every form of the report shares.
 
+use std::{cmp::Reverse, collections::BTreeMap};
+
 use crate::{
     bench::Mode,
-    measure::{LatticeKind, SampleResult},
+    measure::{LatticeKind, RejectedSpot, SampleResult},
 };
 
 /// Said wherever a result is presented.
@@ -35,4 +37,15 @@ pub(super) fn pattern_name(sample: &SampleResult) -> &'static str {
 /// Name of the i-th of `count` things: "pitch" alone, "pitch 1" and "pitch 2" together.
 pub(super) fn numbered(name: &str, index: usize, count: usize) -> String {
     if count < 2 { name.to_owned() } else { format!("{name} {}", index + 1) }
+}
+
+/// Reasons for rejected spots, each with its number of spots, the commonest first.
+pub(super) fn reason_counts<'a>(spots: impl Iterator<Item = &'a RejectedSpot>) -> Vec<(&'a str, usize)> {
+    let mut counts = BTreeMap::new();
+    for spot in spots {
+        *counts.entry(spot.reason.as_str()).or_insert(0_usize) += 1;
+    }
+    let mut reasons: Vec<(&str, usize)> = counts.into_iter().collect();
+    reasons.sort_by_key(|&(reason, count)| (Reverse(count), reason));
+    reasons
 }
