@@ -203,7 +203,8 @@ fn targets_of_known_truth() {
             reading.dot_radius_pitches,
             reading.mark_radius_pitches
         );
-        if s.wrong > 0 || s.found * 100 < truth.expected_inside * 95 || !(0.3..1.5).contains(&s.pull_rms) {
+        // Found with this reader: 0.006 to 0.021 px, pulls 0.94 to 1.09 (see the printed lines).
+        if s.wrong > 0 || s.found * 100 < truth.expected_inside * 95 || s.rms_px > 0.03 || !(0.8..1.25).contains(&s.pull_rms) {
             failures.push(format!("{name}: wrong {}, found {} of {}, pull {}", s.wrong, s.found, truth.expected_inside, s.pull_rms));
         }
     }

@@ -58,7 +58,7 @@ pub(super) fn paint(scene: &Scene) -> Light {
 }
 
 fn paint_disc(share: &mut [f64], disc: &PrintedDisc, scene: &Scene) {
-    const CORNERS: usize = 180;
+    const CORNERS: usize = 72;
     let rim: Vec<[f64; 2]> = (0..CORNERS)
         .map(|n| n as f64 / CORNERS as f64 * std::f64::consts::TAU)
         .map(|a| (scene.project)([disc.at[0] + disc.radius * a.cos(), disc.at[1] + disc.radius * a.sin()]))
