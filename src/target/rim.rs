@@ -44,7 +44,8 @@ pub(super) fn rim_place(light: &Light, window: &Window, ground: &Ground, disc: &
         let inverse = inverse(sums.normal)?;
         let [dx, dy] = times(inverse, sums.right);
         at = PixelPoint { x_px: at.x_px + dx, y_px: at.y_px + dy };
-        if !(at.distance_px(disc.start) < 1.0) {
+        let off_px = at.distance_px(disc.start);
+        if off_px.is_nan() || off_px > 1.0 {
             return None;
         }
         if dx.hypot(dy) < LAST_STEP_PX {
@@ -63,7 +64,7 @@ struct Sums {
     noise: [f64; 3],
     /// Σ g (d / contrast - T).
     right: [f64; 2],
-    /// Σ g_x x (1 - d), Σ g_y y (1 - d): what a slope of the paper level does.
+    /// Σ x g (1 - d) along x, Σ y g (1 - d) along y: what a slope of the paper level does.
     lever: [f64; 2],
 }
 
