@@ -2,8 +2,8 @@
 //! exit code they deserve.
 
 use crate::{
-    bench::BenchError, fit::FitError, lattice::LatticeError, photo::PhotoError, quantity::QuantityError, spots::SpotError,
-    target::TargetError,
+    bench::BenchError, fit::FitError, lattice::LatticeError, measure::MeasureError, photo::PhotoError, quantity::QuantityError,
+    spots::SpotError, target::TargetError,
 };
 
 /// Everything that can stop a measurement. The message names the value seen and what to do.
@@ -28,7 +28,37 @@ pub enum Error {
     /// The dot target cannot be read.
     #[error(transparent)]
     Target(#[from] TargetError),
+    /// Photos and bench file do not go together, or do not suffice.
+    #[error(transparent)]
+    Measure(#[from] MeasureError),
     /// The fit cannot fix the pitch.
     #[error(transparent)]
     Fit(#[from] FitError),
+}
+
+impl Error {
+    /// Short machine-readable name of the reason, stable between versions.
+    #[must_use]
+    pub fn code(&self) -> &'static str {
+        match self {
+            Self::Quantity(_) => "quantity",
+            Self::Bench(_) => "bench-file",
+            Self::Photo(_) => "photo",
+            Self::Spots(_) => "no-spots",
+            Self::Lattice(_) => "no-lattice",
+            Self::Target(_) => "target",
+            Self::Measure(error) => error.code(),
+            Self::Fit(_) => "fit",
+        }
+    }
+
+    /// Whether the input could not be used at all (wrong file, wrong bench file), as opposed to a photo that honestly shows nothing.
+    #[must_use]
+    pub fn is_unusable_input(&self) -> bool {
+        match self {
+            Self::Quantity(_) | Self::Bench(_) | Self::Photo(_) => true,
+            Self::Measure(error) => error.is_unusable_input(),
+            Self::Spots(_) | Self::Lattice(_) | Self::Target(_) | Self::Fit(_) => false,
+        }
+    }
 }

@@ -1,3 +1,5 @@
 //! Hands the arguments to `cli`; computes nothing.
 
-fn main() {}
+fn main() -> std::process::ExitCode {
+    spotrule::cli::run()
+}

@@ -9,7 +9,64 @@ pub enum Note {
     /// The photo is stored with a tone curve that is only known roughly.
     ToneCurveAssumed,
     // spots
+    /// More spots than are returned.
+    SpotsLeftOut {
+        /// Number found.
+        found: usize,
+        /// Number returned, the brightest.
+        kept: usize,
+    },
     // lattice
+    /// Another numbering of the orders explains the spots nearly as well.
+    ThinNumbering {
+        /// Cell of the other lattice over that of the chosen one.
+        cell_ratio: f64,
+        /// Lead of the chosen numbering, nats.
+        lead: f64,
+    },
+    /// The numbering hangs on a few spots.
+    FewDeciders {
+        /// Without them the pitch would be this many times smaller.
+        factor: u32,
+        /// Their number.
+        deciders: usize,
+    },
+    /// Faint orders stand between strong ones.
+    FaintBetween {
+        /// The strong ones alone would mean a pitch this many times smaller.
+        factor: u32,
+        /// Median brightness of the faint ones over the strong ones.
+        brightness_ratio: f64,
+    },
+    /// No spot at the zero order.
+    ZeroOrderUnseen,
+    /// Another spot could be the zero order.
+    ZeroOrderUncertain {
+        /// Lead of the chosen one, nats.
+        lead: f64,
+        /// The other one, in the chosen numbering.
+        other: (i32, i32),
+    },
+    /// So few spots that nothing checks the result.
+    FewSpots {
+        /// Spots with an order.
+        indexed: usize,
+    },
+    /// The spots left over form a lattice of their own.
+    SecondLattice {
+        /// Spots on it.
+        spots: usize,
+    },
+    /// Faint copies of the pattern, all shifted alike.
+    Ghosts {
+        /// Their number.
+        spots: usize,
+    },
+    /// Line and plane are nearly equally likely.
+    ShapeUncertain {
+        /// Lead of the chosen one, nats.
+        lead: f64,
+    },
     // target
     /// Dots of the target that did not fit among their neighbours.
     TargetDotsLeftOut {
@@ -24,6 +81,19 @@ pub enum Note {
         index: (i32, i32),
     },
     // bench
+    /// A wavelength is stated in vacuum and the state of the air is not fully stated.
+    StandardAirAssumed,
+    /// The state of the air is stated but no wavelength needs it.
+    AirNotUsed,
+    /// A wavelength said to be in air has the number of a laser line in vacuum, or the other way round.
+    WavelengthInOtherMedium {
+        /// The stated wavelength, m.
+        wavelength_m: f64,
+        /// Name of the line.
+        line: String,
+        /// Where the number belongs.
+        belongs_to: crate::bench::Medium,
+    },
     // fit
 }
 
@@ -35,6 +105,19 @@ impl Note {
             Self::ToneCurveAssumed => "tone-curve-assumed",
             Self::TargetDotsLeftOut { .. } => "target-dots-left-out",
             Self::TargetMarkHidden { .. } => "target-mark-hidden",
+            Self::SpotsLeftOut { .. } => "spots-left-out",
+            Self::ThinNumbering { .. } => "thin-numbering",
+            Self::FewDeciders { .. } => "few-deciders",
+            Self::FaintBetween { .. } => "faint-orders-between",
+            Self::ZeroOrderUnseen => "zero-order-unseen",
+            Self::ZeroOrderUncertain { .. } => "zero-order-uncertain",
+            Self::FewSpots { .. } => "few-spots",
+            Self::SecondLattice { .. } => "second-lattice",
+            Self::Ghosts { .. } => "ghosts",
+            Self::ShapeUncertain { .. } => "line-or-plane-uncertain",
+            Self::StandardAirAssumed => "standard-air-assumed",
+            Self::AirNotUsed => "air-not-used",
+            Self::WavelengthInOtherMedium { .. } => "wavelength-in-other-medium",
         }
     }
 }
@@ -55,6 +138,50 @@ impl std::fmt::Display for Note {
                 "the larger dot at ({i},{j}) of the target was not seen; the other two and their neighbours fix the orientation, \
                  but uncover it if you can"
             ),
+            Self::SpotsLeftOut { found, kept } => write!(
+                f,
+                "{found} spots were found and the {kept} brightest are used; a ruled or textured screen gives many false ones: use plain card"
+            ),
+            Self::ThinNumbering { cell_ratio, lead } => write!(
+                f,
+                "another numbering explains the spots nearly as well (cell area {cell_ratio:.2} times as large in order space, behind by {lead:.1} nats): compare the pitch with what you expect, expose longer to show weak orders"
+            ),
+            Self::FewDeciders { factor, deciders } => write!(
+                f,
+                "without {deciders} spots the orders would share a factor and the pitch would be {factor} times smaller: look at these spots in the overlay, expose longer to show more of them"
+            ),
+            Self::FaintBetween { factor, brightness_ratio } => write!(
+                f,
+                "the orders between the strong ones are faint ({:.1} % as bright): the sample repeats after {factor} of its conspicuous periods; if you meant the conspicuous period, divide the pitch by {factor}",
+                brightness_ratio * 100.0
+            ),
+            Self::ZeroOrderUnseen => f.write_str("no spot stands at the zero order (hole, beam stop or out of frame): its place is the one that the other orders point to"),
+            Self::ZeroOrderUncertain { lead, other } => write!(
+                f,
+                "order ({}, {}) could be the zero order instead (behind by {lead:.1} nats): mark the undiffracted beam, or photograph more orders on both sides",
+                other.0, other.1
+            ),
+            Self::FewSpots { indexed } => write!(f, "only {indexed} spots carry an order, so nothing checks the numbering: include more of the pattern"),
+            Self::SecondLattice { spots } => write!(
+                f,
+                "{spots} of the spots left over form a lattice of their own: two superposed samples, or a second laser mode; the result is the stronger lattice"
+            ),
+            Self::Ghosts { spots } => write!(f, "{spots} faint spots are copies of the pattern, all shifted alike (reflection between two faces): they were left out"),
+            Self::ShapeUncertain { lead } => write!(
+                f,
+                "a single row and a plane lattice are nearly equally likely ({lead:.1} nats apart): state [sample] pattern = \"line\" or \"plane\" if you know"
+            ),
+            Self::StandardAirAssumed => f.write_str(
+                "wavelength stated in vacuum, air not fully stated: 20(3) degC, 1013(30) hPa, 50(20) % humidity assumed for what is missing; state [air], above all the pressure at more than 300 m above the sea",
+            ),
+            Self::AirNotUsed => f.write_str("[air] is not used: every wavelength is stated in air; state it in vacuum (medium = \"vacuum\") to use it"),
+            Self::WavelengthInOtherMedium { wavelength_m, line, belongs_to } => {
+                let place = match belongs_to {
+                    crate::bench::Medium::Air => "air",
+                    crate::bench::Medium::Vacuum => "vacuum",
+                };
+                write!(f, "{:.4} nm is the {line} in {place}; state medium = \"{place}\", or the pitch comes out wrong by 0.027 %", wavelength_m * 1e9)
+            }
         }
     }
 }

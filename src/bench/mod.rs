@@ -2,10 +2,31 @@
 //! Must never know: photos as pixels, the fit, files (a photo is a name here).
 //! Start reading at [`Bench`].
 
+mod camera;
+mod error;
+mod laser;
+mod laser_lines;
+mod overrides;
+mod photos;
+mod sample;
+mod screen;
+mod section;
+mod sheet;
+mod target;
+mod template;
+mod tree;
+
 use crate::{
+    Note,
     frames::{PixelPoint, TargetPoint},
     quantity::Quantity,
 };
+
+pub use error::{BenchError, Place};
+pub use laser_lines::{LaserLine, laser_lines};
+pub use overrides::Overrides;
+pub use sheet::SheetFormat;
+pub use template::{template, template_with};
 
 /// Everything the operator knows. `None` means: not known at all.
 #[derive(Debug, Clone, PartialEq)]
@@ -66,7 +87,7 @@ pub struct Sample {
     pub mode: Mode,
     /// Line or plane, if the operator knows.
     pub pattern: Pattern,
-    /// Turns (a_x, a_y) of the sample's normal against the zero order, rad.
+    /// Turns (`a_x`, `a_y`) of the sample's normal against the zero order, rad.
     pub incidence_rad: Option<[Quantity; 2]>,
     /// Known pitches of a reference (one for a line grating, two for a plane lattice), m.
     pub pitch_m: Vec<Quantity>,
@@ -99,7 +120,7 @@ pub enum Pattern {
 pub struct Screen {
     /// Sample to zero-order spot along the beam, m.
     pub throw_m: Option<Quantity>,
-    /// Turns (t_x, t_y) of the screen, rad.
+    /// Turns (`t_x`, `t_y`) of the screen, rad.
     pub tilt_rad: Option<[Quantity; 2]>,
     /// From where the camera looks.
     pub seen_from: Side,
@@ -139,6 +160,20 @@ pub enum TargetKind {
         marks: Vec<(PixelPoint, TargetPoint)>,
         /// Standard uncertainty of each pixel coordinate.
         u_px: f64,
+    },
+    /// The outline of a sheet of paper.
+    Sheet {
+        /// Its size.
+        format: SheetFormat,
+        /// Photo of the sheet from the same camera position; `None`: the sheet is in the pattern photo.
+        photo: Option<String>,
+    },
+    /// Ruled or millimetre paper.
+    Ruling {
+        /// Distance of neighbouring lines, m.
+        pitch_m: Quantity,
+        /// Photo of the ruling from the same camera position; `None`: the ruling is in the pattern photo.
+        photo: Option<String>,
     },
 }
 
@@ -193,7 +228,54 @@ pub struct PatternPhoto {
     pub turn_rad: Option<Quantity>,
 }
 
-/// Why a bench file cannot be used.
-#[derive(Debug, thiserror::Error)]
-#[non_exhaustive]
-pub enum BenchError {}
+impl Bench {
+    /// Reads a bench file.
+    ///
+    /// # Errors
+    /// A [`BenchError`] that names section and key, the line, the value seen and what to do.
+    pub fn parse(text: &str) -> Result<(Self, Vec<Note>), BenchError> {
+        Self::with_overrides(Some(text), &Overrides::default())
+    }
+
+    /// Reads a bench file, or none, with values from the command line in place of those in the file.
+    ///
+    /// # Errors
+    /// A [`BenchError`] that names section and key with the line, or the flag, the value seen and what to do.
+    pub fn with_overrides(text: Option<&str>, overrides: &Overrides) -> Result<(Self, Vec<Note>), BenchError> {
+        let mut root = text.map(tree::Table::from_toml).transpose()?.unwrap_or_default();
+        overrides.apply(&mut root)?;
+        Self::read(&root)
+    }
+
+    /// Reads every section, then what binds them.
+    fn read(root: &tree::Table) -> Result<(Self, Vec<Note>), BenchError> {
+        const SECTIONS: &[&str] = &["laser", "air", "sample", "screen", "target", "camera", "photo"];
+        section::Section::of(String::new(), root).allow_only(SECTIONS)?;
+        let mut notes = Vec::new();
+        let lasers = laser::read_lasers(root)?;
+        notes.extend(lasers.iter().filter_map(laser_lines::wrong_medium));
+        let air = laser::read_air(root, &lasers, &mut notes)?;
+        let samples = sample::read_samples(root)?;
+        let screen = screen::read_screen(root)?;
+        let target = target::read_target(root, screen.seen_from)?;
+        let camera = camera::read_camera(root)?;
+        let photos = photos::read_photos(root, &lasers, &samples)?;
+        let bench = Self { lasers, air, samples, screen, target, camera, photos };
+        bench.check_measured_sample()?;
+        Ok((bench, notes))
+    }
+
+    /// Index of the sample to be measured: the first without a known pitch.
+    #[must_use]
+    pub fn measured_sample(&self) -> Option<usize> {
+        self.samples.iter().position(|sample| sample.pitch_m.is_empty())
+    }
+
+    fn check_measured_sample(&self) -> Result<(), BenchError> {
+        let index = self.measured_sample().ok_or(BenchError::NothingToMeasure)?;
+        if self.photos.is_empty() || self.photos.iter().any(|photo| photo.sample == index) {
+            return Ok(());
+        }
+        Err(BenchError::NoPhotoOfSample { name: self.samples[index].name.clone() })
+    }
+}

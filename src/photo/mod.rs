@@ -2,6 +2,24 @@
 //! Must never know: files, lattices, what the spots mean.
 //! Start reading at [`decode`].
 
+mod clip;
+mod decode;
+mod error;
+mod half;
+mod jpeg_walk;
+mod light;
+mod linear;
+mod metadata;
+mod noise;
+mod orient;
+mod tone;
+
+pub use decode::{MAX_MEGA_PX, MIN_SIDE_PX, decode};
+pub use error::PhotoError;
+pub use half::{HalfPlanes, Plane};
+pub use light::LUMINANCE;
+pub use linear::LinearPhoto;
+
 /// Decoded photo, upright (its EXIF orientation applied), samples as stored.
 #[derive(Debug, Clone)]
 pub struct Photo {
@@ -18,11 +36,14 @@ pub struct Photo {
 }
 
 /// Samples as stored in the file.
+///
+/// The two forms fix the tone curve: a 16-bit file that is tagged with a tone curve has it undone while it is
+/// decoded, and an 8-bit file that is tagged as linear is widened to 16 bit.
 #[derive(Debug, Clone)]
 pub enum Samples {
-    /// 8 bit, taken as sRGB-coded.
+    /// 8 bit, sRGB-coded.
     U8(Vec<u8>),
-    /// 16 bit, taken as linear light unless tagged otherwise.
+    /// 16 bit, linear light.
     U16(Vec<u16>),
 }
 
@@ -61,6 +82,9 @@ pub struct Light {
 }
 
 /// Noise of one pixel as a function of its linear light: variance = `a + b * signal`.
+///
+/// Estimated on means of 4×4 pixels (then scaled by 16): demosaicing and JPEG tie neighbours together, so the
+/// scatter between adjacent pixels would promise a fit over many of them far too much.
 #[derive(Debug, Clone, Copy, PartialEq)]
 pub struct Noise {
     /// Variance at zero light.
@@ -69,7 +93,10 @@ pub struct Noise {
     pub b: f64,
 }
 
-/// Why a file is no usable photo.
-#[derive(Debug, thiserror::Error)]
-#[non_exhaustive]
-pub enum PhotoError {}
+impl Noise {
+    /// Variance of a pixel that carries `signal` units of linear light (below zero counts as zero).
+    #[must_use]
+    pub fn variance(self, signal: f64) -> f64 {
+        self.a + self.b * signal.max(0.0)
+    }
+}

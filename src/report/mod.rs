@@ -1,1 +1,18 @@
-//! Measurement -> text, JSON, overlay picture. Formats only; computes no number.
+//! In: [`Measurement`](crate::measure::Measurement), for the picture also the photo. Out: text for people, JSON for scripts, an overlay PNG.
+//! Must never know: how a number came about. Formats only: units and rounding, no physics.
+//! Start reading at [`text`] and [`json`].
+
+mod budget_table;
+mod columns;
+#[cfg(test)]
+mod example;
+mod json;
+mod rounding;
+mod sample_json;
+mod text;
+mod units;
+mod words;
+
+pub use json::{Program, json, refused_json};
+pub use rounding::{Rounded, concise, percent, rounded, significant};
+pub use text::{refusal_text, text};

@@ -1,8 +1,21 @@
 //! In: a [`Photo`](crate::photo::Photo). Out: every spot of laser light in it, each with a centroid and an honest 2×2 covariance.
 //! Must never know: lattices, screens, the bench.
-//! Start reading at [`Spot`].
+//! Start reading at [`find`].
 
+mod colour;
+mod detect;
+mod error;
+mod measure;
+mod profile;
+mod scale;
+mod scatter;
+mod window;
+
+pub use error::SpotError;
+
+use crate::Note;
 use crate::frames::{PixelCovariance, PixelPoint};
+use crate::photo::Photo;
 
 /// One candidate spot. Nothing is thrown away before the lattice is known.
 #[derive(Debug, Clone, PartialEq)]
@@ -35,10 +48,57 @@ pub struct Spots {
     /// Share of the laser's light in red, green and blue (sums to 1; all 0 for a grey photo).
     pub colour: [f64; 3],
     /// What a reader of the result must know.
-    pub notes: Vec<crate::Note>,
+    pub notes: Vec<Note>,
 }
 
-/// Why a photo gives no spots.
-#[derive(Debug, thiserror::Error)]
-#[non_exhaustive]
-pub enum SpotError {}
+/// What may be chosen.
+#[derive(Debug, Clone, Copy, PartialEq)]
+pub struct SpotOptions {
+    /// Expected number of false spots per photo if its noise were normal.
+    pub false_spots: f64,
+    /// Most spots that are returned; the brightest stay.
+    pub max_spots: usize,
+}
+
+impl Default for SpotOptions {
+    fn default() -> Self {
+        Self { false_spots: 0.1, max_spots: 3000 }
+    }
+}
+
+/// Finds the laser spots of a photo.
+///
+/// 1. The channels that carry the laser are found from the spots themselves.
+/// 2. A pyramid of planes binned by 2, 4 … 32 px is filtered with a difference of Gaussians: the matched filter of spots from 2 to 60 px
+///    across on an uneven background. Local maxima count above a threshold set by `options.false_spots` and the local noise.
+/// 3. Each is fitted with an elliptical Gaussian on a sloping background, weighted by the noise of sensor and speckle, neighbours taken
+///    off, clipped pixels and their neighbours left out. A clipped spot is also fitted in the weaker channels; the best known centre stays.
+///
+/// # Errors
+/// [`SpotError::NothingFound`] with the brightest thing seen.
+pub fn find(photo: &Photo, options: &SpotOptions) -> Result<Spots, SpotError> {
+    let t0 = std::time::Instant::now(); let lap = |n: &str| if std::env::var_os("LAP").is_some() { eprintln!("{n} {:.1}", t0.elapsed().as_secs_f64()*1e3) };
+    let linear = photo.linear();lap("linear");
+    let half = linear.half_planes();lap("half");
+    let colour = colour::of_spots(&half);lap("colour");
+    let plane = half.mixed(colour.weights);
+    let noise = plane.halved().noise(16.0);lap("noise");
+    let found = detect::detect(&plane, noise, options.false_spots);lap("detect");
+    let mut spots = measure::measure(&linear, &colour, noise, &found);lap("measure");
+    if spots.is_empty() {
+        let best = found.peaks.first().copied().or(found.best_reject);
+        return Err(SpotError::NothingFound {
+            x_px: best.map_or(0.0, |peak| peak.x_px),
+            y_px: best.map_or(0.0, |peak| peak.y_px),
+            signal_to_noise: best.map_or(0.0, |peak| peak.signal_to_noise),
+            needed: found.threshold,
+        });
+    }
+    spots.sort_by(|a, b| b.peak.total_cmp(&a.peak));
+    let mut notes = Vec::new();
+    if spots.len() > options.max_spots {
+        notes.push(Note::SpotsLeftOut { found: spots.len(), kept: options.max_spots });
+        spots.truncate(options.max_spots);
+    }
+    Ok(Spots { spots, colour: colour.share, notes })
+}

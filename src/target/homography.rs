@@ -9,7 +9,7 @@ use nalgebra::{Matrix3, SMatrix, SymmetricEigen};
 /// element of the result is 1.
 ///
 /// `None` for fewer than four pairs, for points on one line, and when the origin of `from` maps to infinity.
-pub(super) fn homography(pairs: &[([f64; 2], [f64; 2])]) -> Option<[[f64; 3]; 3]> {
+pub fn homography(pairs: &[([f64; 2], [f64; 2])]) -> Option<[[f64; 3]; 3]> {
     if pairs.len() < 4 {
         return None;
     }

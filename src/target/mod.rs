@@ -35,6 +35,7 @@ mod painted_check;
 mod painter;
 
 pub use error::TargetError;
+pub use homography::homography;
 pub use pdf::pdf;
 pub use reading::{Dot, Marks, ReadOptions, Reading, read};
 pub use sheet::{DOT_DIAMETER_PITCHES, MARK_DIAMETER_PITCHES, Paper, Sheet};

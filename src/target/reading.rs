@@ -22,9 +22,10 @@ use crate::{
 pub struct Dot {
     /// Column and row on the print, in pitches from the origin mark: X right, Y up.
     pub index: (i32, i32),
-    /// Centroid of the dot's darkness (not corrected for perspective).
+    /// Centre of its rim, which is also the centroid of its darkness: the centre of the ellipse that the disc shows. Under
+    /// perspective that is not the image of the disc's centre (up to 0.1 px at 35°); a fit has to predict the ellipse's centre.
     pub at: PixelPoint,
-    /// Covariance of `at`, px².
+    /// Covariance of `at`, px²; holds the scatter between neighbouring dots of this photo, not only pixel noise.
     pub covariance: PixelCovariance,
     /// One of the three larger dots at (0,0), (2,0), (0,1).
     pub mark: bool,
@@ -86,6 +87,10 @@ const SMALL_BLOB_PX: f64 = 2.6;
 ///
 /// Give the plane with the least laser light where the pattern is in the same photo. The dots may be
 /// seen obliquely, distorted, cut off by the photo's rim (cut dots are left out), in uneven light.
+///
+/// On 52 rendered photos of known truth (9 to 42 px dot radius, up to 38° oblique, 1 to 12 megapixels) every complete dot but
+/// 1 in 600 was found, no index was wrong, places were off by 0.006 to 0.021 px rms and 0.94 to 1.09 standard uncertainties
+/// (test `targets_of_known_truth`). Dots down to 3 px radius, 5 × 4 of them, 45° and |k1| = 0.3: `painted_check`.
 ///
 /// # Errors
 /// [`TargetError`] says what was seen and what was needed.

@@ -1,0 +1,179 @@
+//! The command line: every command and flag with its help text.
+
+use clap::{Args, CommandFactory, Parser, Subcommand, ValueEnum};
+use std::path::PathBuf;
+
+const LASER_CAUTION: &str = "Lasers can blind. Never look into the beam or its reflections, keep the beam below eye level and end it on a matt \
+screen; follow your local laser-safety rules and your laser safety officer; class and eyewear per IEC 60825-1.";
+
+/// Pitch and lattice angle of a periodic sample, from photos of the laser pattern that it throws on a screen.
+#[derive(Debug, Parser)]
+#[command(name = "spotrule", version, about, after_help = LASER_CAUTION, max_term_width = 100)]
+pub(super) struct Spotrule {
+    #[command(subcommand)]
+    pub(super) command: Command,
+}
+
+#[derive(Debug, Subcommand)]
+pub(super) enum Command {
+    /// Measure the pitch from a photo of the pattern
+    #[command(after_help = MEASURE_EXAMPLES)]
+    Measure(Box<MeasureArguments>),
+    /// Write a commented bench file to fill in (asks when run on a terminal)
+    #[command(after_help = "Example:\n  spotrule new bench.toml\n\nThe file explains every key. Leave out what you do not know.")]
+    New(NewArguments),
+    /// Draw the printable dot target
+    #[command(
+        after_help = "Example:\n  spotrule target --paper a4 --pitch 10 --out target.pdf\n\nPrint at 100 %, then measure the print with a steel rule in both directions: printers scale by 0.1 to 0.5 %."
+    )]
+    Target(TargetArguments),
+    /// Print the completion script for a shell
+    #[command(after_help = "Example:\n  spotrule completions bash > ~/.local/share/bash-completion/completions/spotrule")]
+    Completions(CompletionArguments),
+    /// Print the manual page (roff)
+    #[command(after_help = "Example:\n  spotrule manual > spotrule.1 && man ./spotrule.1")]
+    Manual(ManualArguments),
+}
+
+const MEASURE_EXAMPLES: &str = "Examples:
+  spotrule measure pattern.jpg
+      with bench.toml beside the photo
+  spotrule measure pattern.jpg --bench lab.toml --overlay seen.png --json result.json
+  spotrule measure pattern.jpg --wavelength \"650(5) nm\" --throw \"1.200(2) m\" --target-photo target.jpg --target-pitch \"10.00(1) mm\"
+
+Quantities carry a unit and say how sure they are: 812.0(8) mm means a standard uncertainty of 0.8 mm;
+also \"812.0 ± 1.6 mm (k=2)\", \"812 ± 2 mm (limits)\", \"632.8 nm (exact)\".
+
+Exit code: 0 measured; 1 refused (nothing can honestly be said); 2 wrong use or unreadable input.";
+
+#[derive(Debug, Args)]
+pub(super) struct MeasureArguments {
+    /// Photo of the pattern (JPEG, PNG, TIFF); the bench file can name it instead
+    pub(super) photo: Option<PathBuf>,
+    /// Bench file [default: bench.toml beside the photo, if there is one]
+    #[arg(long, value_name = "FILE")]
+    pub(super) bench: Option<PathBuf>,
+    /// Write the result as JSON; `-` prints JSON alone on standard output
+    #[arg(long, value_name = "FILE|-")]
+    pub(super) json: Option<PathBuf>,
+    /// Write the photo with every spot and its order marked
+    #[arg(long, value_name = "FILE.png")]
+    pub(super) overlay: Option<PathBuf>,
+    /// Print nothing but errors
+    #[arg(long)]
+    pub(super) quiet: bool,
+    #[command(flatten, next_help_heading = "Bench, instead of or over the bench file")]
+    pub(super) bench_flags: BenchFlags,
+}
+
+/// Everything that a quick look needs, each written as in the bench file.
+#[derive(Debug, Args)]
+pub(super) struct BenchFlags {
+    /// Wavelength, e.g. "650(5) nm"
+    #[arg(long, value_name = "QUANTITY")]
+    pub(super) wavelength: Option<String>,
+    /// Where the wavelength is stated: air or vacuum
+    #[arg(long, value_name = "MEDIUM")]
+    pub(super) medium: Option<String>,
+    /// Temperature of the air, for vacuum wavelengths, e.g. "20.0(5) degC"
+    #[arg(long, value_name = "QUANTITY")]
+    pub(super) temperature: Option<String>,
+    /// Pressure of the air, e.g. "1013(2) hPa"
+    #[arg(long, value_name = "QUANTITY")]
+    pub(super) pressure: Option<String>,
+    /// Relative humidity of the air, e.g. "50(10) %"
+    #[arg(long, value_name = "QUANTITY")]
+    pub(super) humidity: Option<String>,
+    /// transmission or reflection
+    #[arg(long, value_name = "MODE")]
+    pub(super) mode: Option<String>,
+    /// line, plane or auto
+    #[arg(long, value_name = "PATTERN")]
+    pub(super) pattern: Option<String>,
+    /// Turn of the sample's normal against the zero order about x and y, e.g. "0(1) deg, 0(1) deg"
+    #[arg(long, value_name = "PAIR")]
+    pub(super) incidence: Option<String>,
+    /// Sample to zero-order spot along the beam, e.g. "1.200(2) m"
+    #[arg(long, value_name = "QUANTITY")]
+    pub(super) throw: Option<String>,
+    /// Tilt of the screen about x and y, e.g. "0(1) deg, 0(1) deg"
+    #[arg(long, value_name = "PAIR")]
+    pub(super) tilt: Option<String>,
+    /// front or behind (translucent screen)
+    #[arg(long, value_name = "SIDE")]
+    pub(super) seen_from: Option<String>,
+    /// Photo of the dot target from the same camera position
+    #[arg(long, value_name = "FILE")]
+    pub(super) target_photo: Option<String>,
+    /// Pitch of the dot target, measured on the print, e.g. "10.00(1) mm"
+    #[arg(long, value_name = "QUANTITY")]
+    pub(super) target_pitch: Option<String>,
+    /// Turn of the print against the bench's horizontal, e.g. "0(1) deg"
+    #[arg(long, value_name = "QUANTITY")]
+    pub(super) target_turn: Option<String>,
+    /// Lean of the line from screen to camera to the right and up, e.g. "0(2) deg, 0(2) deg"
+    #[arg(long, value_name = "PAIR")]
+    pub(super) square_on: Option<String>,
+    /// Focal length in px, or focal length and pixel size: "4.20(5) mm, 1.40(1) um"
+    #[arg(long, value_name = "QUANTITY")]
+    pub(super) focal_length: Option<String>,
+    /// Two points and their distance on the screen: "412,880 1630,902 = 100.0(2) mm"
+    #[arg(long, value_name = "SCALE")]
+    pub(super) scale: Option<String>,
+}
+
+#[derive(Debug, Args)]
+pub(super) struct NewArguments {
+    /// File to write
+    #[arg(default_value = "bench.toml")]
+    pub(super) file: PathBuf,
+    /// Replace an existing file
+    #[arg(long)]
+    pub(super) force: bool,
+    /// Do not ask, even on a terminal
+    #[arg(long)]
+    pub(super) no_questions: bool,
+}
+
+/// Paper formats of the printed target.
+#[derive(Debug, Clone, Copy, ValueEnum)]
+pub(super) enum PaperFormat {
+    /// 210 mm × 297 mm
+    A4,
+    /// 297 mm × 420 mm
+    A3,
+    /// 8.5 in × 11 in
+    Letter,
+}
+
+#[derive(Debug, Args)]
+pub(super) struct TargetArguments {
+    /// Paper
+    #[arg(long, value_enum, default_value = "a4")]
+    pub(super) paper: PaperFormat,
+    /// Distance of neighbouring dots, mm
+    #[arg(long, value_name = "MM", default_value_t = 10.0)]
+    pub(super) pitch: f64,
+    /// File to write; .svg or .pdf
+    #[arg(long, value_name = "FILE")]
+    pub(super) out: PathBuf,
+    /// Replace an existing file
+    #[arg(long)]
+    pub(super) force: bool,
+}
+
+#[derive(Debug, Args)]
+pub(super) struct CompletionArguments {
+    /// Shell
+    #[arg(value_enum)]
+    pub(super) shell: clap_complete::Shell,
+}
+
+#[derive(Debug, Args)]
+pub(super) struct ManualArguments {}
+
+/// The command line as clap knows it, for completions, the manual and tests.
+#[must_use]
+pub fn command() -> clap::Command {
+    Spotrule::command()
+}

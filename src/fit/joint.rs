@@ -1,0 +1,260 @@
+//! The joint problem: every spot, dot, mark and prior as one vector of whitened residuals with its Jacobian.
+
+use super::{
+    cell::knowledge_residual,
+    model::{self, Bench, PRINT_LOCALS, Places, Shape},
+    observation::{Knowledge, PrintObservation, PrintPlace, SpotObservation, whitened_length, whitening},
+    parameter::{Layout, Parameter, Prior},
+    source::Source,
+};
+use crate::{math::Problem, optics::Camera};
+use nalgebra::{DMatrix, DVector};
+use num_dual::DualSVec64;
+
+/// One weighted least-squares problem over the unknowns of a [`Layout`].
+#[derive(Debug, Clone)]
+pub struct Joint {
+    /// The unknowns.
+    pub layout: Layout,
+    /// What never changes during the fit.
+    pub shape: Shape,
+    /// Spots with their orders.
+    pub spots: Vec<SpotObservation>,
+    /// Dots, marks and scale ends.
+    pub prints: Vec<PrintObservation>,
+    /// Measured values that follow from the parameters.
+    pub knowledge: Vec<Knowledge>,
+    /// Factor on the standard uncertainty of every spot (Birge).
+    pub spot_scale: f64,
+    /// The same for dots and marks.
+    pub print_scale: f64,
+}
+
+/// Rows as they are filled.
+struct Rows {
+    residuals: DVector<f64>,
+    jacobian: DMatrix<f64>,
+    next: usize,
+}
+
+impl Rows {
+    fn whitened_pixel<const N: usize>(&mut self, joint: &Joint, places: &Places<N>, seen: Seen, predicted: [DualSVec64<N>; 2]) {
+        let Seen { at, white, factor } = seen;
+        let difference = [at[0] - predicted[0].re, at[1] - predicted[1].re];
+        self.residuals[self.next] = factor * white[0] * difference[0];
+        self.residuals[self.next + 1] = factor * (white[1] * difference[0] + white[2] * difference[1]);
+        let slopes = predicted.map(|p| p.eps.unwrap_generic(nalgebra::Const::<N>, nalgebra::U1));
+        for (i, place) in places.iter().enumerate() {
+            let Some((column, scale)) = joint.column(*place) else { continue };
+            let (dx, dy) = (-slopes[0][i] * scale, -slopes[1][i] * scale);
+            self.jacobian[(self.next, column)] += factor * white[0] * dx;
+            self.jacobian[(self.next + 1, column)] += factor * (white[1] * dx + white[2] * dy);
+        }
+        self.next += 2;
+    }
+}
+
+/// A measured pixel with its whitening factor and weight.
+#[derive(Clone, Copy)]
+struct Seen {
+    at: [f64; 2],
+    white: [f64; 3],
+    factor: f64,
+}
+
+impl Joint {
+    /// Who owns each row, in row order.
+    #[must_use]
+    pub fn row_sources(&self) -> Vec<Source> {
+        let mut sources = vec![Source::Spots; 2 * self.spots.len()];
+        for print in &self.prints {
+            let source = match print.place {
+                PrintPlace::Pitches(_) => Source::Dots,
+                PrintPlace::Metres(_) => Source::Marks,
+                PrintPlace::ScaleEnd(_) => Source::Scale,
+            };
+            sources.extend([source; 2]);
+        }
+        sources.extend(self.knowledge.iter().map(|known| match *known {
+            Knowledge::Pitch { sample, .. } | Knowledge::LatticeAngle { sample, .. } => Source::ReferencePitch { sample },
+            Knowledge::Distance { .. } => Source::Scale,
+            Knowledge::SquareOn { .. } => Source::SquareOn,
+        }));
+        sources.extend(self.prior_rows().map(|(place, _, _)| self.layout.entries()[place].source));
+        sources
+    }
+
+    /// Predicted pixel of an order in a photo at the given parameter values.
+    #[must_use]
+    pub fn predict(&self, values: &[f64], photo: usize, orders: &[(i32, i32)]) -> Vec<Option<[f64; 2]>> {
+        let places = model::spot_places(&self.layout, &self.shape, photo);
+        let bench = Bench::new(&model::plain(values, &places), &self.shape, photo);
+        let project = bench.camera.print_projector();
+        orders.iter().map(|&order| bench.pixel(&project, order)).collect()
+    }
+
+    /// Distance of every spot from its prediction in units of its stated uncertainty (Birge factor not applied); `None` where the model has no such order.
+    #[must_use]
+    pub fn spot_lengths(&self) -> Vec<Option<f64>> {
+        self.spots.iter().zip(self.spot_residuals_px()).map(|(spot, residual)| spot.length(residual?)).collect()
+    }
+
+    /// Seen minus predicted, px, of every spot.
+    #[must_use]
+    pub fn spot_residuals_px(&self) -> Vec<Option<[f64; 2]>> {
+        let values = self.values();
+        let mut residuals = vec![None; self.spots.len()];
+        for photo in 0..self.shape.photos.len() {
+            let of_photo: Vec<usize> = (0..self.spots.len()).filter(|&i| self.spots[i].photo == photo).collect();
+            let orders: Vec<(i32, i32)> = of_photo.iter().map(|&i| self.spots[i].order).collect();
+            for (&i, predicted) in of_photo.iter().zip(self.predict(&values, photo, &orders)) {
+                residuals[i] = predicted.map(|[x, y]| [self.spots[i].at.x_px - x, self.spots[i].at.y_px - y]);
+            }
+        }
+        residuals
+    }
+
+    /// The same as [`Self::spot_lengths`] for dots, marks and scale ends.
+    #[must_use]
+    pub fn print_lengths(&self) -> Vec<Option<f64>> {
+        let values = self.values();
+        let pitch_m = self.layout.value(Parameter::TargetPitch).unwrap_or(1.0);
+        let cameras: Vec<Camera<f64>> = (0..self.shape.references.len()).map(|view| self.camera(&values, view)).collect();
+        let length = |print: &PrintObservation| {
+            let place = match print.place {
+                PrintPlace::Pitches([i, j]) => [i * pitch_m, j * pitch_m],
+                PrintPlace::Metres(metres) => metres,
+                PrintPlace::ScaleEnd(end) => {
+                    [self.layout.value(Parameter::ScaleEnd { end, axis: 0 })?, self.layout.value(Parameter::ScaleEnd { end, axis: 1 })?]
+                }
+            };
+            let [x, y] = cameras[print.view].print_projector()(place)?;
+            whitened_length(print.covariance, [print.at.x_px - x, print.at.y_px - y])
+        };
+        self.prints.iter().map(length).collect()
+    }
+
+    /// Current values of all entries.
+    #[must_use]
+    pub fn values(&self) -> Vec<f64> {
+        self.layout.entries().iter().map(|entry| entry.value).collect()
+    }
+
+    /// The camera of a view at the given parameter values.
+    #[must_use]
+    pub fn camera(&self, values: &[f64], view: usize) -> Camera<f64> {
+        let places = model::print_places(&self.layout, view, [None; 3]);
+        model::camera(&model::plain(values, &places)[3..], self.shape.references[view])
+    }
+
+    fn column(&self, place: Option<usize>) -> Option<(usize, f64)> {
+        let place = place?;
+        Some((self.layout.column(place)?, self.layout.entries()[place].scale))
+    }
+
+    /// Places, means and uncertainties of the normal priors.
+    fn prior_rows(&self) -> impl Iterator<Item = (usize, f64, f64)> + '_ {
+        self.layout.entries().iter().enumerate().filter_map(|(place, entry)| match entry.prior {
+            Prior::Normal { mean, u } => Some((place, mean, u)),
+            Prior::Free | Prior::Exact => None,
+        })
+    }
+
+    fn spot_rows(&self, values: &[f64], rows: &mut Rows) -> Option<()> {
+        for photo in 0..self.shape.photos.len() {
+            let places = model::spot_places(&self.layout, &self.shape, photo);
+            let bench = Bench::new(&model::seeded(&self.layout, values, &places), &self.shape, photo);
+            let project = bench.camera.print_projector();
+            for (i, spot) in self.spots.iter().enumerate().filter(|(_, spot)| spot.photo == photo) {
+                rows.next = 2 * i;
+                let seen = Seen {
+                    at: [spot.at.x_px, spot.at.y_px],
+                    white: whitening(spot.covariance)?,
+                    factor: spot.weight.sqrt() / self.spot_scale,
+                };
+                rows.whitened_pixel(self, &places, seen, bench.pixel(&project, spot.order)?);
+            }
+        }
+        rows.next = 2 * self.spots.len();
+        Some(())
+    }
+
+    fn print_rows(&self, values: &[f64], rows: &mut Rows) -> Option<()> {
+        let first = rows.next;
+        for view in 0..self.shape.references.len() {
+            self.print_rows_of_view(values, view, first, rows)?;
+        }
+        rows.next = first + 2 * self.prints.len();
+        Some(())
+    }
+
+    fn print_rows_of_view(&self, values: &[f64], view: usize, first: usize, rows: &mut Rows) -> Option<()> {
+        let ends = |end: usize| [None, Some(Parameter::ScaleEnd { end, axis: 0 }), Some(Parameter::ScaleEnd { end, axis: 1 })];
+        let sets: [[Option<Parameter>; 3]; 3] = [[Some(Parameter::TargetPitch), None, None], ends(0), ends(1)];
+        for (set, leading) in sets.into_iter().enumerate() {
+            let places = model::print_places(&self.layout, view, leading);
+            let v = model::seeded(&self.layout, values, &places);
+            let camera = model::camera(&v[3..], self.shape.references[view]);
+            let project = camera.print_projector();
+            for (i, print) in self.prints.iter().enumerate().filter(|(_, print)| print.view == view) {
+                let Some(place) = place_of::<PRINT_LOCALS>(print.place, set, &v) else { continue };
+                rows.next = first + 2 * i;
+                let seen = Seen {
+                    at: [print.at.x_px, print.at.y_px],
+                    white: whitening(print.covariance)?,
+                    factor: print.weight.sqrt() / self.print_scale,
+                };
+                rows.whitened_pixel(self, &places, seen, project(place)?);
+            }
+        }
+        Some(())
+    }
+
+    fn knowledge_rows(&self, values: &[f64], rows: &mut Rows) -> Option<()> {
+        for known in &self.knowledge {
+            let (residual, slopes) = knowledge_residual(&self.layout, &self.shape, values, known)?;
+            rows.residuals[rows.next] = residual;
+            for (place, slope) in slopes {
+                if let Some((column, scale)) = self.column(Some(place)) {
+                    rows.jacobian[(rows.next, column)] += slope * scale;
+                }
+            }
+            rows.next += 1;
+        }
+        Some(())
+    }
+
+    fn prior_residuals(&self, values: &[f64], rows: &mut Rows) {
+        for (place, mean, u) in self.prior_rows() {
+            rows.residuals[rows.next] = (values[place] - mean) / u;
+            if let Some((column, scale)) = self.column(Some(place)) {
+                rows.jacobian[(rows.next, column)] = scale / u;
+            }
+            rows.next += 1;
+        }
+    }
+}
+
+/// The place on the print as dual numbers, if the observation belongs to this set of parameters.
+fn place_of<const N: usize>(place: PrintPlace, set: usize, v: &[DualSVec64<N>; N]) -> Option<[DualSVec64<N>; 2]> {
+    match (place, set) {
+        (PrintPlace::Pitches([i, j]), 0) => Some([v[0] * i, v[0] * j]),
+        (PrintPlace::Metres(metres), 0) => Some(metres.map(DualSVec64::from_re)),
+        (PrintPlace::ScaleEnd(end), set) if set == end + 1 => Some([v[1], v[2]]),
+        _ => None,
+    }
+}
+
+impl Problem for Joint {
+    fn residuals_and_jacobian(&self, step: &DVector<f64>) -> Option<(DVector<f64>, DMatrix<f64>)> {
+        let values = self.layout.values_at(step);
+        let count = 2 * self.spots.len() + 2 * self.prints.len() + self.knowledge.len() + self.prior_rows().count();
+        let mut rows = Rows { residuals: DVector::zeros(count), jacobian: DMatrix::zeros(count, self.layout.free().len()), next: 0 };
+        self.spot_rows(&values, &mut rows)?;
+        self.print_rows(&values, &mut rows)?;
+        self.knowledge_rows(&values, &mut rows)?;
+        self.prior_residuals(&values, &mut rows);
+        let finite = rows.residuals.iter().all(|r| r.is_finite()) && rows.jacobian.iter().all(|j| j.is_finite());
+        finite.then_some((rows.residuals, rows.jacobian))
+    }
+}

@@ -1,1 +1,0 @@
-//! The whole measurement on one screen: photos and bench in, Measurement out.

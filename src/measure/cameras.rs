@@ -1,0 +1,206 @@
+//! Cameras before the pattern is looked at: every view's pose from its dots or marks, or from "square-on" where there are none.
+
+use super::{
+    MeasureError,
+    look::Seen,
+    view::{disc_centroid_offset, lens_knowledge, pose_from_homography, square_on_pose},
+};
+use crate::{
+    Error,
+    bench::{Bench, FocalLength, Target, TargetKind},
+    fit::{
+        Joint, Layout, Outliers, Parameter, PrintObservation, PrintPlace, Shape,
+        setup::{self, LensKnowledge, ViewStart},
+        solve,
+    },
+    frames::{PixelCovariance, PixelPoint},
+    photo::Exif,
+    quantity::Quantity,
+    target::{self, Reading},
+};
+use nalgebra::{Matrix3, Vector3};
+
+/// Views with what was seen of the print in them, solved on their own.
+#[derive(Debug, Clone)]
+pub(super) struct Cameras {
+    /// Lens and poses, with start values moved to the solution where there is a print.
+    pub(super) layout: Layout,
+    pub(super) lens: LensKnowledge,
+    pub(super) references: Vec<Matrix3<f64>>,
+    pub(super) prints: Vec<PrintObservation>,
+    pub(super) view_of_photo: Vec<usize>,
+    /// Whether a print or marks fix the plane of the screen.
+    pub(super) screen_known: bool,
+}
+
+/// Marks and target dots that make up one view.
+struct View {
+    start: ViewStart,
+    prints: Vec<PrintObservation>,
+    reading: Option<Reading>,
+}
+
+/// Sets up all views.
+pub(super) fn cameras(seen: &Seen, bench: &Bench, targets: &[&str]) -> Result<Cameras, Error> {
+    check_sizes(seen)?;
+    let lens = lens(seen, bench);
+    let view_of_photo = views_of_photos(bench, seen.patterns.len(), targets);
+    let views = match bench.target.as_ref() {
+        Some(Target { kind: TargetKind::Dots { pitch_m, .. }, .. }) => dot_views(seen, *pitch_m, &lens)?,
+        Some(Target { kind: TargetKind::Marks { marks, u_px }, .. }) => vec![mark_view(marks, *u_px, &lens)?],
+        Some(_) => return Err(MeasureError::TargetKindNotRead.into()),
+        None => vec![bare_view(seen, bench, &lens)],
+    };
+    let screen_known = bench.target.is_some();
+    let mut cameras = Cameras {
+        layout: Layout::default(),
+        lens,
+        references: views.iter().map(|view| view.start.reference).collect(),
+        prints: views.iter().flat_map(|view| view.prints.iter().copied()).collect(),
+        view_of_photo,
+        screen_known,
+    };
+    setup::add_camera(&mut cameras.layout, &lens, &views.iter().map(|view| view.start).collect::<Vec<_>>());
+    if screen_known {
+        settle(&mut cameras, bench, &views)?;
+    }
+    Ok(cameras)
+}
+
+/// Solves the views from their prints alone; twice where dots have to be corrected for perspective.
+fn settle(cameras: &mut Cameras, bench: &Bench, views: &[View]) -> Result<(), Error> {
+    let outliers = if views.iter().all(|view| view.reading.is_some()) { Outliers::Rejected } else { Outliers::Kept };
+    let mut pitch_m = None;
+    if let Some(Target { kind: TargetKind::Dots { pitch_m: pitch, .. }, .. }) = &bench.target {
+        pitch_m = Some(pitch.value);
+        // Alone, a print cannot tell its own pitch from the distance of the camera.
+        setup::add_target_pitch(&mut cameras.layout, Quantity { u: 0.0, ..*pitch });
+    }
+    let uncorrected = cameras.prints.clone();
+    for pass in 0..2 {
+        let shape = Shape { photos: vec![], references: cameras.references.clone(), seen_from: bench.screen.seen_from };
+        let joint = Joint {
+            layout: cameras.layout.clone(),
+            shape,
+            spots: vec![],
+            prints: cameras.prints.clone(),
+            knowledge: vec![],
+            spot_scale: 1.0,
+            print_scale: 1.0,
+        };
+        let fit = solve(joint, outliers)?;
+        cameras.layout = fit.joint.layout.clone();
+        cameras.prints = fit.joint.prints.clone();
+        let (Some(pitch_m), 0) = (pitch_m, pass) else { break };
+        for (print, seen) in cameras.prints.iter_mut().zip(&uncorrected) {
+            let camera = fit.joint.camera(&fit.joint.values(), print.view);
+            let (PrintPlace::Pitches(place), Some(reading)) = (print.place, &views[print.view].reading) else { continue };
+            let radius = if is_mark(place) { reading.mark_radius_pitches } else { reading.dot_radius_pitches };
+            if let Some([dx, dy]) = disc_centroid_offset(&camera, place.map(|p| p * pitch_m), radius * pitch_m) {
+                print.at = PixelPoint { x_px: seen.at.x_px - dx, y_px: seen.at.y_px - dy };
+            }
+        }
+    }
+    Ok(())
+}
+
+#[expect(clippy::float_cmp, reason = "whole numbers of pitches are exact")]
+fn is_mark(place: [f64; 2]) -> bool {
+    [[0.0, 0.0], [2.0, 0.0], [0.0, 1.0]].contains(&place)
+}
+
+fn check_sizes(seen: &Seen) -> Result<(), MeasureError> {
+    let sizes = seen.patterns.iter().map(|p| p.size_px).chain(seen.targets.iter().map(|t| t.size_px));
+    let first = seen.patterns.first().map_or([0, 0], |pattern| pattern.size_px);
+    match sizes.into_iter().find(|&size| size != first) {
+        Some(other) => Err(MeasureError::SizesDiffer { first, other }),
+        None => Ok(()),
+    }
+}
+
+fn lens(seen: &Seen, bench: &Bench) -> LensKnowledge {
+    let none = Exif::default();
+    let exif = seen.targets.first().map(|t| &t.exif).or_else(|| seen.patterns.first().map(|p| &p.exif)).unwrap_or(&none);
+    let size = seen.patterns.first().map_or([1, 1], |pattern| pattern.size_px);
+    #[expect(clippy::cast_precision_loss, reason = "picture sizes are far below 2^53")]
+    let mut lens = lens_knowledge(exif, size.map(|side| side as f64));
+    match bench.camera.focal_length {
+        Some(FocalLength::Pixels(focal)) => (lens.focal_px, lens.u_focal_px) = (focal.value, focal.u),
+        Some(FocalLength::Metres { focal_length_m: focal, pixel_size_m: pixel }) => {
+            lens.focal_px = focal.value / pixel.value;
+            lens.u_focal_px = lens.focal_px * (focal.u / focal.value).hypot(pixel.u / pixel.value);
+        }
+        None => {}
+    }
+    lens
+}
+
+/// Photos share the view of the bench file's one target photo unless they name their own, or carry their dots themselves.
+fn views_of_photos(bench: &Bench, photos: usize, targets: &[&str]) -> Vec<usize> {
+    let dots_in_pattern = matches!(bench.target.as_ref().map(|target| &target.kind), Some(TargetKind::Dots { photo: None, .. }));
+    let own =
+        |photo: usize| bench.photos.get(photo).and_then(|p| p.target.as_deref()).and_then(|name| targets.iter().position(|t| *t == name));
+    (0..photos).map(|photo| if dots_in_pattern { photo } else { own(photo).unwrap_or(0) }).collect()
+}
+
+fn dot_views(seen: &Seen, pitch_m: Quantity, lens: &LensKnowledge) -> Result<Vec<View>, Error> {
+    let in_pattern = seen.patterns.iter().filter_map(|pattern| pattern.dots.as_ref());
+    let readings: Vec<&Reading> =
+        if seen.targets.is_empty() { in_pattern.collect() } else { seen.targets.iter().map(|t| &t.reading).collect() };
+    let view = |(number, reading): (usize, &&Reading)| {
+        let h = reading.pixel_from_pitches;
+        let pixel_from_pitches = Matrix3::from_fn(|row, column| h[row][column]);
+        let pixel_from_metres = pixel_from_pitches * Matrix3::from_diagonal(&Vector3::new(1.0 / pitch_m.value, 1.0 / pitch_m.value, 1.0));
+        let start = pose_from_homography(&pixel_from_metres, lens).ok_or(MeasureError::NoPose)?;
+        let print = |dot: &target::Dot| PrintObservation {
+            view: number,
+            at: dot.at,
+            covariance: dot.covariance,
+            place: PrintPlace::Pitches([f64::from(dot.index.0), f64::from(dot.index.1)]),
+            weight: 1.0,
+        };
+        Ok(View { start, prints: reading.dots.iter().map(print).collect(), reading: Some((*reading).clone()) })
+    };
+    readings.iter().enumerate().map(view).collect()
+}
+
+fn mark_view(marks: &[(PixelPoint, crate::frames::TargetPoint)], u_px: f64, lens: &LensKnowledge) -> Result<View, Error> {
+    let pairs: Vec<([f64; 2], [f64; 2])> = marks.iter().map(|(px, mm)| ([mm.x_m, mm.y_m], [px.x_px, px.y_px])).collect();
+    let homography = target::homography(&pairs).ok_or(MeasureError::NoPose)?;
+    let homography = Matrix3::from_fn(|row, column| homography[row][column]);
+    let start = pose_from_homography(&homography, lens).ok_or(MeasureError::NoPose)?;
+    let print = |(px, mm): &(PixelPoint, crate::frames::TargetPoint)| PrintObservation {
+        view: 0,
+        at: *px,
+        covariance: PixelCovariance::isotropic(u_px),
+        place: PrintPlace::Metres([mm.x_m, mm.y_m]),
+        weight: 1.0,
+    };
+    Ok(View { start, prints: marks.iter().map(print).collect(), reading: None })
+}
+
+/// Without print: a camera square-on before the brightest spot, at a distance that the scale or the throw suggests.
+fn bare_view(seen: &Seen, bench: &Bench, lens: &LensKnowledge) -> View {
+    let centre = lens.size_px.map(|side| side / 2.0);
+    let origin = seen.patterns.first().and_then(|p| p.spots.spots.first()).map_or(centre, |spot| [spot.at.x_px, spot.at.y_px]);
+    let distance_m = match bench.camera.scale {
+        Some(scale) => lens.focal_px * scale.distance_m.value / scale.points[0].distance_px(scale.points[1]),
+        None => 3.0 * bench.screen.throw_m.map_or(super::GAUGE_THROW_M, |throw| throw.value),
+    };
+    View { start: square_on_pose(lens, origin, distance_m), prints: vec![], reading: None }
+}
+
+impl Cameras {
+    /// Moves every bare camera to another distance, keeping the zero order where it is seen.
+    pub(super) fn at_distance(&self, distance_m: f64) -> Self {
+        let mut moved = self.clone();
+        for view in 0..self.references.len() {
+            let place = |axis| Parameter::CameraPlace { view, axis };
+            let now = self.layout.value(place(2)).unwrap_or(1.0);
+            for axis in 0..3 {
+                moved.layout.set(place(axis), self.layout.value(place(axis)).unwrap_or(0.0) * distance_m / now);
+            }
+        }
+        moved
+    }
+}

@@ -1,0 +1,59 @@
+//! The whole measurement on one screen: photos and bench in, [`Measurement`] out.
+//!
+//! Takes bytes, never files; start reading at [`measure`], which is the table of contents of a measurement.
+
+mod align;
+mod assemble;
+mod cameras;
+mod conclude;
+mod error;
+mod look;
+mod measurement;
+mod orders;
+mod rough;
+mod scan;
+mod statement;
+mod strays;
+mod view;
+mod zero_order;
+
+pub use crate::{
+    budget::{BudgetLine, Value},
+    lattice::LatticeKind,
+};
+pub use error::{MeasureError, Refusal};
+pub use look::{Inputs, PhotoFile};
+pub use measurement::{
+    FitSummary, KindStatement, Measurement, OrderRow, ParameterRow, ParameterUnit, PhotoSummary, RejectedSpot, SampleResult, ZeroOrder,
+};
+
+use crate::{
+    bench::Bench,
+    fit::{Outliers, solve},
+};
+
+/// Start value of a throw that nobody measured, m.
+const GAUGE_THROW_M: f64 = 0.5;
+
+/// Measures the pitch of a sample.
+///
+/// - `inputs`: the photos of the pattern in the order of [`Bench::photos`] (or a single one), and the photos of the target
+/// - `bench`: what the operator knows
+///
+/// # Errors
+/// Whatever makes an honest result impossible; the message says what to do.
+pub fn measure(inputs: &Inputs<'_>, bench: &Bench) -> Result<Measurement, Refusal> {
+    let seen = look::look(inputs, bench)?;
+    let targets: Vec<&str> = inputs.targets.iter().map(|file| file.name).collect();
+    let wavelengths_m = assemble::wavelengths_in_air(bench)?;
+    let mut notes = statement::capture_notes(&seen, bench, &wavelengths_m)?;
+    let cameras = cameras::cameras(&seen, bench, &targets)?;
+    let (cameras, ordered) = scan::order_all(&seen, bench, &cameras)?;
+    let joint = assemble::assemble(&seen, bench, &cameras, &ordered, &wavelengths_m);
+    statement::enough_spots(&joint)?;
+    let fit = solve(joint, Outliers::Rejected)?;
+    let (ordered, fit) = zero_order::best_zero_order(&seen, bench, &cameras, ordered, &wavelengths_m, fit)?;
+    let fit = strays::taken_in(&seen, fit)?;
+    notes.extend(statement::numbering_notes(&ordered));
+    conclude::conclude(inputs, bench, &seen, &ordered, &fit, notes).map_err(Refusal::from)
+}

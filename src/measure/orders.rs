@@ -1,0 +1,97 @@
+//! Gives every spot of a photo its order, through the rough geometry.
+
+use super::rough::Rough;
+use crate::{
+    frames::PixelPoint,
+    lattice::{self, Expected, IndexOptions, Indexed, LatticeError, Point, Reason},
+    spots::Spot,
+};
+
+/// Spots of one photo with their orders; everything refers to the photo's list of spots.
+#[derive(Debug, Clone)]
+pub(super) struct Ordered {
+    pub(super) indexed: Indexed,
+    /// Which spot each point given to `lattice` was.
+    pub(super) spot_of_point: Vec<usize>,
+    /// The rough geometry with the zero order in its place.
+    pub(super) rough: Rough,
+}
+
+/// How rough the geometry is, for [`lattice::index`].
+#[derive(Debug, Clone, Copy)]
+pub(super) struct Roughness {
+    pub(super) expected: Expected,
+    pub(super) bend: f64,
+}
+
+/// The zero order moves the origin of the wide-angle mapping, so indexing is repeated until it stays where it was put.
+const ZERO_ORDER_PASSES: usize = 3;
+
+/// Indexes the spots of a photo. The zero order is first taken to be the brightest spot.
+pub(super) fn order_spots(spots: &[Spot], mut rough: Rough, roughness: Roughness) -> Result<Ordered, LatticeError> {
+    let mut zero = brightest(spots).unwrap_or(PixelPoint { x_px: rough.size_px[0] / 2.0, y_px: rough.size_px[1] / 2.0 });
+    let mut last = None;
+    for _ in 0..ZERO_ORDER_PASSES {
+        if !rough.put_zero_order(zero) {
+            break;
+        }
+        let (points, spot_of_point) = points(spots, &rough);
+        let options = IndexOptions { expected: roughness.expected, bend: roughness.bend, ..IndexOptions::default() };
+        let indexed = lattice::index(&points, &options, &|place| rough.in_frame(place))?;
+        let found = rough.pixel(indexed.zero);
+        last = Some(Ordered { indexed, spot_of_point, rough: rough.clone() });
+        match found {
+            Some(found) if found.distance_px(zero) > 2.0 => zero = found,
+            _ => break,
+        }
+    }
+    last.ok_or(LatticeError::TooFewSpots { found: 0, needed: 3 })
+}
+
+fn brightest(spots: &[Spot]) -> Option<PixelPoint> {
+    spots.iter().max_by(|a, b| light_of(a).total_cmp(&light_of(b))).map(|spot| spot.at)
+}
+
+/// Light in a spot: peak times area of the profile.
+pub(super) fn light_of(spot: &Spot) -> f64 {
+    spot.peak * (spot.shape.xx * spot.shape.yy - spot.shape.xy.powi(2)).max(0.0).sqrt()
+}
+
+fn points(spots: &[Spot], rough: &Rough) -> (Vec<Point>, Vec<usize>) {
+    let point = |(i, spot): (usize, &Spot)| {
+        let at = rough.lattice_place(spot.at)?;
+        let u = rough.lattice_u(spot.at, spot.covariance)?;
+        Some((Point::new(at, u, light_of(spot).max(1e-12)), i))
+    };
+    spots.iter().enumerate().filter_map(point).unzip()
+}
+
+impl Ordered {
+    /// Why a spot carries no order, in words.
+    pub(super) fn reason(&self, spot: usize) -> String {
+        let Some(point) = self.spot_of_point.iter().position(|&s| s == spot) else {
+            return "not on the screen as the camera model sees it".to_owned();
+        };
+        let reason = self.indexed.rejected.iter().find(|(rejected, _)| *rejected == point);
+        reason.map_or_else(|| "off the model".to_owned(), |(_, reason)| in_words(reason))
+    }
+
+    /// Pairs of spot number and order.
+    pub(super) fn orders(&self) -> impl Iterator<Item = (usize, (i32, i32))> + '_ {
+        self.spot_of_point.iter().zip(&self.indexed.order).filter_map(|(&spot, order)| order.map(|order| (spot, order)))
+    }
+}
+
+/// A reason for the overlay and the order table.
+fn in_words(reason: &Reason) -> String {
+    match reason {
+        Reason::NotANumber => "no usable place".to_owned(),
+        Reason::OffLattice { offset } => format!("between orders ({:+.2}, {:+.2})", offset[0], offset[1]),
+        Reason::OffLine { distance } => format!("off the row by {distance:.2} orders"),
+        Reason::Duplicate { .. } => "a better spot holds this order".to_owned(),
+        Reason::Ghost { copies, .. } => format!("ghost, one of {copies} with the same offset"),
+        Reason::SecondLattice => "on a second lattice".to_owned(),
+        Reason::OutOfReach => "too far out to number".to_owned(),
+        _ => "off the lattice".to_owned(),
+    }
+}

@@ -1,0 +1,15 @@
+//! One test binary; one comment line per file.
+#![allow(clippy::unwrap_used, clippy::print_stdout, reason = "a test says what it measured, and fails where it stands")]
+
+// the house rules that a machine can check: who may use whom, sources that exist
+mod layering;
+// runs a reference library (Python) beside our own code, where one is available
+mod live;
+// NIST Statistical Reference Datasets against the least-squares solver
+mod nist;
+// OpenCV beside our rotations, camera and solver
+mod opencv;
+// worked examples and tables from the GUM, its supplement and textbooks
+mod published;
+// spots of photos with known truth, where those photos are at hand
+mod spots_on_known_photos;

@@ -1,0 +1,182 @@
+//! Spots found on rendered photos with known truth, where that collection is at hand (`SPOTRULE_SHARED` or `../shared`).
+
+use std::path::{Path, PathBuf};
+
+use serde_json::Value;
+use spotrule::{photo, spots};
+
+fn collection() -> Option<PathBuf> {
+    let shared = std::env::var_os("SPOTRULE_SHARED").map_or_else(|| PathBuf::from("../shared"), PathBuf::from);
+    let cases = shared.join("corpus/cases");
+    cases.is_dir().then_some(cases)
+}
+
+#[derive(Default, Clone)]
+struct Score {
+    wanted: [usize; 2],
+    seen: [usize; 2],
+    false_spots: usize,
+    photos: usize,
+    /// Per kind (0 unclipped, 1 clipped): error², floor², pull² and their number (two axes each).
+    error2: [f64; 2],
+    /// Squared pulls and their number for signal-to-noise ratios 8..16, 16..40 and above, unclipped.
+    by_strength: [(f64, f64); 3],
+    floor2: [f64; 2],
+    pull2: [f64; 2],
+    beyond3: [usize; 2],
+    number: [usize; 2],
+}
+
+fn number(value: &Value) -> f64 {
+    value.as_f64().unwrap_or(f64::NAN)
+}
+
+fn places(photo: &Value, list: &str) -> Vec<([f64; 2], f64)> {
+    let entries = photo[list].as_array().cloned().unwrap_or_default();
+    entries.iter().map(|e| ([number(&e["px"][0]), number(&e["px"][1])], number(&e["sigma_px"][0]).max(number(&e["sigma_px"][1])))).collect()
+}
+
+fn score_photo(case: &Path, truth: &Value, photo: &Value, score: &mut Score) {
+    let file = photo["file"].as_str().unwrap();
+    let verbose = std::env::var_os("SPOTS_VERBOSE").is_some();
+    let decoded = photo::decode(&std::fs::read(case.join(file)).unwrap()).unwrap();
+    let Ok(found) = spots::find(&decoded, &spots::SpotOptions::default()) else { return };
+    if std::env::var_os("DBG").is_some() { println!("  truth contrast2 {:.3} grain {:.2} floor {:.3}", number(&truth["look"]["speckle"]).powi(2), number(&truth["look"]["grain"]), 0.3 * number(&truth["look"]["speckle"]) * number(&truth["look"]["grain"])); }
+    score.photos += 1;
+    let floor = 0.3 * number(&truth["look"]["speckle"]) * number(&truth["look"]["grain"]);
+    let mut is_known = vec![false; found.spots.len()];
+    for list in ["orders", "ghosts", "blobs", "glints"] {
+        for ([x, y], sigma) in places(photo, list) {
+            for (spot, known) in found.spots.iter().zip(&mut is_known) {
+                *known |= (spot.at.x_px - x).hypot(spot.at.y_px - y) < (2.0 * sigma).max(4.0);
+            }
+        }
+    }
+    for (spot, _) in found.spots.iter().zip(&is_known).filter(|(_, known)| !**known) {
+        score.false_spots += 1;
+        if verbose {
+            println!(
+                "  false {file} {:.1} {:.1} peak {:.4} bg {:.4} snr {:.1} axes {:?} clipped {}",
+                spot.at.x_px,
+                spot.at.y_px,
+                spot.peak,
+                spot.background,
+                spot.signal_to_noise,
+                [spot.shape.xx.sqrt(), spot.shape.yy.sqrt()],
+                spot.clipped_px
+            );
+        }
+    }
+    for order in photo["orders"].as_array().unwrap() {
+        let (x, y) = (number(&order["px"][0]), number(&order["px"][1]));
+        let snr = number(&order["snr"]);
+        let sigma = number(&order["sigma_px"][0]).max(number(&order["sigma_px"][1]));
+        let kind = usize::from(order["saturated"].as_bool().unwrap());
+        if snr < 8.0 {
+            continue;
+        }
+        score.wanted[kind] += 1;
+        let best = found.spots.iter().min_by(|a, b| {
+            let d = |s: &spots::Spot| (s.at.x_px - x).hypot(s.at.y_px - y);
+            d(a).total_cmp(&d(b))
+        });
+        let Some(spot) = best.filter(|s| (s.at.x_px - x).hypot(s.at.y_px - y) < (1.5 * sigma).max(2.0)) else {
+            if verbose {
+                println!("  missed {file} {x:.1} {y:.1} snr {snr} peak {} sigma {sigma:.1} kind {kind}", order["peak"]);
+            }
+            continue;
+        };
+        score.seen[kind] += 1;
+        let (dx, dy) = (spot.at.x_px - x, spot.at.y_px - y);
+        let c = spot.covariance;
+        let pull2 = (c.yy * dx * dx - 2.0 * c.xy * dx * dy + c.xx * dy * dy) / (c.xx * c.yy - c.xy * c.xy);
+        score.error2[kind] += dx * dx + dy * dy;
+        score.floor2[kind] += 2.0 * floor * floor;
+        score.pull2[kind] += pull2;
+        score.beyond3[kind] += usize::from(pull2 > 11.83);
+        score.number[kind] += 2;
+        if kind == 0 {
+            let class = usize::from(snr > 16.0) + usize::from(snr > 40.0);
+            score.by_strength[class].0 += pull2;
+            score.by_strength[class].1 += 2.0;
+        }
+        if verbose && pull2 > 18.0 {
+            println!(
+                "  pull {file} {x:.1} {y:.1} dx {dx:.3} dy {dy:.3} u {:.3} {:.3} chi2 {:.2} sigma {sigma:.2} fit {:.2} {:.2} peak {} / {:.3} snr {snr} kind {kind} cut {}",
+                c.xx.sqrt(),
+                c.yy.sqrt(),
+                spot.profile_chi2,
+                spot.shape.xx.sqrt(),
+                spot.shape.yy.sqrt(),
+                order["peak"],
+                spot.peak,
+                spot.cut_by_frame
+            );
+        }
+    }
+}
+
+impl Score {
+    fn add(&mut self, other: &Self) {
+        self.false_spots += other.false_spots;
+        self.photos += other.photos;
+        for (sum, more) in self.by_strength.iter_mut().zip(other.by_strength) {
+            sum.0 += more.0;
+            sum.1 += more.1;
+        }
+        for kind in 0..2 {
+            self.wanted[kind] += other.wanted[kind];
+            self.seen[kind] += other.seen[kind];
+            self.error2[kind] += other.error2[kind];
+            self.floor2[kind] += other.floor2[kind];
+            self.pull2[kind] += other.pull2[kind];
+            self.beyond3[kind] += other.beyond3[kind];
+            self.number[kind] += other.number[kind];
+        }
+    }
+
+    fn print(&self, name: &str) {
+        let rms = |sum: f64, kind: usize| (sum / self.number[kind].max(1) as f64).sqrt();
+        println!(
+            "{name:8} open {:4}/{:4} error {:.3} px (speckle floor {:.3}) pull {:.2} beyond {:2} | clipped {:3}/{:3} error {:.3} px pull {:.2} beyond {:2} | false {:5.1} per photo",
+            self.seen[0],
+            self.wanted[0],
+            rms(self.error2[0], 0),
+            rms(self.floor2[0], 0),
+            rms(self.pull2[0], 0),
+            self.beyond3[0],
+            self.seen[1],
+            self.wanted[1],
+            rms(self.error2[1], 1),
+            rms(self.pull2[1], 1),
+            self.beyond3[1],
+            self.false_spots as f64 / self.photos.max(1) as f64
+        );
+    }
+}
+
+#[test]
+fn spots_lie_where_they_were_rendered() {
+    let Some(cases) = collection() else {
+        println!("skipped: no photos with known truth at hand");
+        return;
+    };
+    let only = std::env::var("SPOTS_ONLY").unwrap_or_default();
+    let mut names: Vec<PathBuf> = std::fs::read_dir(cases).unwrap().map(|entry| entry.unwrap().path()).collect();
+    names.sort();
+    let mut all = Score::default();
+    for case in names {
+        let name = case.file_name().unwrap().to_string_lossy().into_owned();
+        if name.starts_with('S') || !name.starts_with(&only) {
+            continue;
+        }
+        let truth: Value = serde_json::from_slice(&std::fs::read(case.join("truth.json")).unwrap()).unwrap();
+        let mut score = Score::default();
+        for photo in truth["photos"].as_array().unwrap().iter().filter(|photo| photo["role"] == "pattern") {
+            score_photo(&case, &truth, photo, &mut score);
+        }
+        score.print(&name);
+        all.add(&score);
+    }
+    all.print("all");
+}
