@@ -68,6 +68,18 @@ pub enum Note {
         lead: f64,
     },
     // target
+    /// Dots of the target that did not fit among their neighbours.
+    TargetDotsLeftOut {
+        /// Dots left out.
+        left_out: usize,
+        /// Dots used.
+        kept: usize,
+    },
+    /// One of the three larger dots was not seen.
+    TargetMarkHidden {
+        /// Its place on the print, pitches.
+        index: (i32, i32),
+    },
     // bench
     /// A wavelength is stated in vacuum and the state of the air is not fully stated.
     StandardAirAssumed,
@@ -102,6 +114,8 @@ impl Note {
     pub fn code(&self) -> &'static str {
         match self {
             Self::ToneCurveAssumed => "tone-curve-assumed",
+            Self::TargetDotsLeftOut { .. } => "target-dots-left-out",
+            Self::TargetMarkHidden { .. } => "target-mark-hidden",
             Self::SpotsLeftOut { .. } => "spots-left-out",
             Self::ThinNumbering { .. } => "thin-numbering",
             Self::FewDeciders { .. } => "few-deciders",
@@ -125,6 +139,16 @@ impl std::fmt::Display for Note {
         match self {
             Self::ToneCurveAssumed => f.write_str(
                 "8-bit photo without a colour profile: the sRGB curve was undone; brightness is approximate, places are not affected",
+            ),
+            Self::TargetDotsLeftOut { left_out, kept } => write!(
+                f,
+                "{left_out} dots of the target lie off their neighbours' trend and were left out, {kept} are used; \
+                 look for glare, laser light, dirt or a crease on them"
+            ),
+            Self::TargetMarkHidden { index: (i, j) } => write!(
+                f,
+                "the larger dot at ({i},{j}) of the target was not seen; the other two and their neighbours fix the orientation, \
+                 but uncover it if you can"
             ),
             Self::SpotsLeftOut { found, kept } => write!(
                 f,

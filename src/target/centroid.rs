@@ -54,8 +54,12 @@ pub(super) struct Ground {
 #[derive(Debug, Clone, Copy)]
 pub(super) struct ToPitches([f64; 4]);
 
+/// The neighbours in the order of [`Expected::neighbours_pitches`]; the middle one is put out of the way.
+const AROUND: [[f64; 2]; 9] =
+    [[-1.0, -1.0], [0.0, -1.0], [1.0, -1.0], [-1.0, 0.0], [f64::MAX, 0.0], [1.0, 0.0], [-1.0, 1.0], [0.0, 1.0], [1.0, 1.0]];
+
 /// Most pixels of paper that are looked at for one dot; more are thinned out.
-const ENOUGH_PAPER_PX: f64 = 800.0;
+const ENOUGH_PAPER_PX: f64 = 600.0;
 
 /// Paler spots than this (1 - ink / paper) are no printed dots.
 const LEAST_CONTRAST: f64 = 0.05;
@@ -133,10 +137,12 @@ pub(super) struct Window {
     pub(super) rim_pitches: f64,
     outer_pitches: f64,
     /// Short side of the cell as px per pitch, for margins.
-    px_per_pitch: f64,
+    pub(super) px_per_pitch: f64,
     radius_px: f64,
     /// Half width and height of the darkness window and of the outer ellipse, px.
     pub(super) half_px: [f64; 2],
+    /// Of a large dot only every so many-th pixel and row is summed: the rim gives its place.
+    stride: usize,
     outer_half_px: [f64; 2],
 }
 
@@ -160,6 +166,7 @@ impl Window {
             outer_pitches,
             px_per_pitch,
             radius_px: r * px_per_pitch,
+            stride: stride_for((r * px_per_pitch / 12.0).powi(2)).min(4),
             half_px: [rim_pitches * ex + 1.0, rim_pitches * ey + 1.0],
             outer_half_px: [outer_pitches * ex, outer_pitches * ey],
         }
@@ -192,13 +199,11 @@ fn paper_plane(light: &Light, window: &Window, expected: &Expected) -> Option<Gr
     let area = 4.0 * window.outer_half_px[0] * window.outer_half_px[1];
     let stride = stride_for(area / 2.0 / ENOUGH_PAPER_PX);
     let margin = (2.0 * expected.blur_px + 0.5) / window.px_per_pitch;
-    let clear = |v: [f64; 2]| {
-        (0..9_u8).filter(|n| *n != 4).all(|n| {
-            let (i, j) = (f64::from(n % 3) - 1.0, f64::from(n / 3) - 1.0);
-            let reach = expected.neighbours_pitches[usize::from(n)] + margin;
-            (v[0] - i).powi(2) + (v[1] - j).powi(2) > reach * reach
-        })
-    };
+    let reach2 = expected.neighbours_pitches.map(|radius| (radius + margin).powi(2));
+    // Nearer to the middle than this no neighbour reaches.
+    let farthest = expected.neighbours_pitches.iter().copied().fold(0.0, f64::max) + margin;
+    let free2 = (1.0 - farthest).max(0.0).powi(2);
+    let clear = |v: [f64; 2]| reach2.iter().zip(AROUND).all(|(reach2, [i, j])| (v[0] - i).powi(2) + (v[1] - j).powi(2) > *reach2);
     let inner = window.rim_pitches.min(expected.radius_pitches + margin.max(0.0));
     let mut samples: Vec<[f64; 3]> = Vec::new();
     for y in pixels(window.at.y_px, window.outer_half_px[1], light.height).step_by(stride) {
@@ -206,7 +211,7 @@ fn paper_plane(light: &Light, window: &Window, expected: &Expected) -> Option<Gr
             let (dx, dy) = (small_f64(x) - window.at.x_px, small_f64(y) - window.at.y_px);
             let v = window.map.apply(dx, dy);
             let rho2 = v[0] * v[0] + v[1] * v[1];
-            if rho2 > inner * inner && rho2 < window.outer_pitches * window.outer_pitches && clear(v) {
+            if rho2 > inner * inner && rho2 < window.outer_pitches * window.outer_pitches && (rho2 < free2 || clear(v)) {
                 samples.push([dx, dy, sample(light, x, y)]);
             }
         }
@@ -216,7 +221,7 @@ fn paper_plane(light: &Light, window: &Window, expected: &Expected) -> Option<Gr
 
 #[expect(clippy::cast_possible_truncation, clippy::cast_sign_loss, reason = "clamped to 1..=64")]
 fn stride_for(excess: f64) -> usize {
-    excess.max(1.0).sqrt().floor().min(64.0) as usize
+    excess.max(1.0).sqrt().round().min(64.0) as usize
 }
 
 fn sample(light: &Light, x: usize, y: usize) -> f64 {
@@ -316,9 +321,9 @@ impl Sums {
         let full = (window.rim_pitches - 0.5 / window.px_per_pitch).max(0.0);
         let end = window.rim_pitches + 0.5 / window.px_per_pitch;
         let (core2, full2, end2) = (core * core, full * full, end * end);
-        for y in pixels(window.at.y_px, window.half_px[1], light.height) {
+        for y in pixels(window.at.y_px, window.half_px[1], light.height).step_by(window.stride) {
             let dy = small_f64(y) - window.at.y_px;
-            for x in pixels(window.at.x_px, window.half_px[0], light.width) {
+            for x in pixels(window.at.x_px, window.half_px[0], light.width).step_by(window.stride) {
                 let dx = small_f64(x) - window.at.x_px;
                 let v = window.map.apply(dx, dy);
                 let rho2 = v[0] * v[0] + v[1] * v[1];
@@ -383,12 +388,13 @@ fn window_sums(light: &Light, window: &Window, ground: &Ground, expected: &Expec
     // Sum of s (1 - s), s = share of ink, freed from what noise adds to it on average.
     let edge =
         sums.d / contrast - (sums.dd - (sums.w - sums.d / contrast) * noise.paper - sums.d / contrast * noise.ink) / (contrast * contrast);
-    let perimeter = 2.0 * (std::f64::consts::PI * sums.d / contrast).sqrt();
+    let (edge, sum_px2) = (edge * small_f64(window.stride).powi(2), sums.d * small_f64(window.stride).powi(2));
+    let perimeter = 2.0 * (std::f64::consts::PI * sum_px2 / contrast).sqrt();
     let at = PixelPoint { x_px: window.at.x_px + sums.dx / sums.d, y_px: window.at.y_px + sums.dy / sums.d };
     let found = Darkness {
         at,
         covariance,
-        sum_px2: sums.d,
+        sum_px2,
         contrast,
         // The integral of s (1 - s) across a step blurred by a Gaussian of width b is b / √π.
         blur_px: (std::f64::consts::PI.sqrt() * edge / perimeter).max(0.0),

@@ -203,7 +203,8 @@ fn targets_of_known_truth() {
             reading.dot_radius_pitches,
             reading.mark_radius_pitches
         );
-        if s.wrong > 0 || s.found * 100 < truth.expected_inside * 95 || !(0.3..1.5).contains(&s.pull_rms) {
+        // Found with this reader: 0.006 to 0.021 px, pulls 0.94 to 1.09 (see the printed lines).
+        if s.wrong > 0 || s.found * 100 < truth.expected_inside * 95 || s.rms_px > 0.03 || !(0.8..1.25).contains(&s.pull_rms) {
             failures.push(format!("{name}: wrong {}, found {} of {}, pull {}", s.wrong, s.found, truth.expected_inside, s.pull_rms));
         }
     }
@@ -253,36 +254,39 @@ fn targets_under_laser_spots() {
     assert!(failures.is_empty(), "{}", failures.join("\n"));
 }
 
-/// Real lenses: equal dots without marks, indexed without one wrong step, spacing as measured by hand.
+/// Real lenses and imperfect dots, no marks: nearly all dots are taken in, and the spacing in the middle of the photo is the one
+/// measured by hand with another script (nearest neighbours, to about 0.2 %).
 #[test]
 fn sheets_from_real_cameras() {
     let options = ReadOptions { marks: super::Marks::Absent, ..ReadOptions::default() };
     for (file, least, spacing_px) in [
-        ("dot-sheet-01.jpg", 100, 26.77),
-        ("dot-sheet-02.jpg", 1300, 62.6),
-        ("dot-sheet-03.jpg", 100, 45.1),
-        ("dot-sheet-fisheye.jpg", 800, 0.0),
+        ("dot-sheet-01.jpg", 6000, Some(26.78)),
+        ("dot-sheet-02.jpg", 1200, Some(62.6)),
+        ("dot-sheet-03.jpg", 4500, Some(45.15)),
+        ("dot-sheet-fisheye.jpg", 1200, None),
     ] {
         let Some(path) = shared(&format!("photos/{file}")) else { continue };
         let light = linear_light(&path, None, 1, false);
-        let start = std::time::Instant::now();
-        let reading = read(&light, &options);
-        let took_ms = start.elapsed().as_secs_f64() * 1e3;
-        match reading {
-            Ok(r) => {
-                let mut u: Vec<f64> = r.dots.iter().map(|d| d.covariance.xx.sqrt()).collect();
-                let spacing = r.pixel_from_pitches;
-                println!(
-                    "{file} {}x{}: {} dots, u {:?} radius {} {spacing:?} {took_ms:.0} ms",
-                    light.width,
-                    light.height,
-                    r.dots.len(),
-                    super::median(&mut u),
-                    r.dot_radius_pitches
-                );
-                let _ = (least, spacing_px);
+        let reading = read(&light, &options).unwrap();
+        let mut u: Vec<f64> = reading.dots.iter().map(|dot| dot.covariance.xx.sqrt()).collect();
+        let at: HashMap<_, _> = reading.dots.iter().map(|dot| (dot.index, dot.at)).collect();
+        let central = |i: &(i32, i32)| i.0.abs() < 8 && i.1.abs() < 8;
+        let mut steps: Vec<f64> = at
+            .iter()
+            .filter(|(index, _)| central(index))
+            .filter_map(|(index, here)| Some(here.distance_px(*at.get(&(index.0 + 1, index.1))?)))
+            .collect();
+        let step = super::median(&mut steps).unwrap();
+        println!("{file}: {} dots, u {:.3} px, spacing {step:.2} px", reading.dots.len(), super::median(&mut u).unwrap());
+        assert!(reading.dots.len() >= least, "{file}: {} dots", reading.dots.len());
+        if let Some(want) = spacing_px {
+            assert!((step / want - 1.0).abs() < 0.005, "{file}: spacing {step}, by hand {want}");
+        }
+        // No wrong index: every neighbour lies where a step takes it.
+        for (index, here) in &at {
+            if let Some(next) = at.get(&(index.0 + 1, index.1)) {
+                assert!((0.4..1.6).contains(&(here.distance_px(*next) / step)), "{file}: {index:?}");
             }
-            Err(e) => println!("{file}: {e}"),
         }
     }
 }

@@ -1,12 +1,13 @@
 //! Giving each blob its place on a regular grid, growing outward from a seed with locally predicted steps.
 
-use std::collections::{HashMap, VecDeque};
+use std::collections::{BTreeMap, HashMap, VecDeque};
 
 use super::{blobs::Blob, paper::small_f64};
 use crate::frames::PixelPoint;
 
 /// Which blob sits at which grid place. Origin and axes are arbitrary until the marks are known.
-pub(super) type Places = HashMap<(i32, i32), usize>;
+/// Sorted, so that the same photo always gives the same figures to the last digit.
+pub(super) type Places = BTreeMap<(i32, i32), usize>;
 
 /// A displacement in the photo, px.
 type Step = [f64; 2];

@@ -1,14 +1,14 @@
 //! Finding origin, X direction and handedness from the three larger dots.
 
-use std::collections::{HashMap, HashSet};
+use std::collections::{BTreeMap, BTreeSet};
 
-use super::error::TargetError;
+use super::{MARKS, error::TargetError};
 
 /// A place on the grid whose origin and axes are arbitrary.
 type Place = (i32, i32);
 
 /// How the print lies on the arbitrary grid: its origin and its X step; Y follows with the hand of the print.
-#[derive(Debug, Clone, Copy, PartialEq, Eq, Hash)]
+#[derive(Debug, Clone, Copy, PartialEq, Eq, PartialOrd, Ord)]
 pub(super) struct Orientation {
     origin: Place,
     x: Place,
@@ -77,8 +77,8 @@ impl Hand {
 /// Two of the three marks suffice where the third place is hidden and no other reading fits.
 ///
 /// - `radius`: radius of each dot, in pitches, from any threshold (only ratios to neighbours count)
-pub(super) fn orientation(radius: &HashMap<Place, f64>, hand: Hand) -> Result<Orientation, TargetError> {
-    let relative: HashMap<Place, f64> = radius.iter().map(|(place, r)| (*place, r / neighbours_radius(*place, radius))).collect();
+pub(super) fn orientation(radius: &BTreeMap<Place, f64>, hand: Hand) -> Result<Orientation, TargetError> {
+    let relative: BTreeMap<Place, f64> = radius.iter().map(|(place, r)| (*place, r / neighbours_radius(*place, radius))).collect();
     let larger: Vec<Place> = relative.iter().filter(|(_, r)| **r > MARK_FROM).map(|(place, _)| *place).collect();
     let (matched, best) = best_readings(&relative, &larger, hand);
     let (mirrored, mirrored_best) = best_readings(&relative, &larger, hand.other());
@@ -93,7 +93,7 @@ pub(super) fn orientation(radius: &HashMap<Place, f64>, hand: Hand) -> Result<Or
 }
 
 /// Median radius of the dots within two steps (without the dot itself).
-fn neighbours_radius(place: Place, radius: &HashMap<Place, f64>) -> f64 {
+fn neighbours_radius(place: Place, radius: &BTreeMap<Place, f64>) -> f64 {
     let mut around: Vec<f64> = (-2..=2)
         .flat_map(|i| (-2..=2).map(move |j| (i, j)))
         .filter(|d| *d != (0, 0))
@@ -106,12 +106,12 @@ fn neighbours_radius(place: Place, radius: &HashMap<Place, f64>) -> f64 {
 }
 
 /// The readings that explain most of the larger dots (at least two), and how many that is.
-fn best_readings(relative: &HashMap<Place, f64>, larger: &[Place], hand: Hand) -> (usize, Vec<Orientation>) {
-    let mut candidates: HashSet<Orientation> = HashSet::new();
+fn best_readings(relative: &BTreeMap<Place, f64>, larger: &[Place], hand: Hand) -> (usize, Vec<Orientation>) {
+    let mut candidates: BTreeSet<Orientation> = BTreeSet::new();
     for mark in larger {
         for x in STEPS {
             let y = hand.quarter_turn(x);
-            for role in [(0, 0), (2, 0), (0, 1)] {
+            for role in MARKS {
                 let origin = (mark.0 - role.0 * x.0 - role.1 * y.0, mark.1 - role.0 * x.1 - role.1 * y.1);
                 candidates.insert(Orientation { origin, x, y });
             }
@@ -125,9 +125,9 @@ fn best_readings(relative: &HashMap<Place, f64>, larger: &[Place], hand: Hand) -
 
 impl Orientation {
     /// How many of the three marks are seen in this reading; `None` when an ordinary dot sits in the place of one.
-    fn marks_seen(&self, relative: &HashMap<Place, f64>) -> Option<usize> {
+    fn marks_seen(&self, relative: &BTreeMap<Place, f64>) -> Option<usize> {
         let mut seen = 0;
-        for (i, j) in [(0, 0), (2, 0), (0, 1)] {
+        for (i, j) in MARKS {
             let place = (self.origin.0 + i * self.x.0 + j * self.y.0, self.origin.1 + i * self.x.1 + j * self.y.1);
             match relative.get(&place) {
                 Some(r) if *r > MARK_FROM => seen += 1,
@@ -144,8 +144,8 @@ mod tests {
     use super::*;
 
     /// A grid whose marks lie at origin, +2 X, +1 Y with X = (0, 1) of the arbitrary grid and this Y.
-    fn grid(y: Place, hidden: &[Place]) -> HashMap<Place, f64> {
-        let mut radius: HashMap<Place, f64> = (-5..6).flat_map(|i| (-5..6).map(move |j| ((i, j), 0.2))).collect();
+    fn grid(y: Place, hidden: &[Place]) -> BTreeMap<Place, f64> {
+        let mut radius: BTreeMap<Place, f64> = (-5..6).flat_map(|i| (-5..6).map(move |j| ((i, j), 0.2))).collect();
         for mark in [(1, -1), (1, 1), (1 + y.0, -1 + y.1)] {
             radius.insert(mark, 0.35);
         }

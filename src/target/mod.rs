@@ -18,6 +18,8 @@ mod marks;
 mod paper;
 mod pdf;
 mod reading;
+mod refine;
+mod residuals;
 mod rim;
 mod sheet;
 mod svg;
@@ -39,9 +41,11 @@ pub use reading::{Dot, Marks, ReadOptions, Reading, read};
 pub use sheet::{DOT_DIAMETER_PITCHES, MARK_DIAMETER_PITCHES, Paper, Sheet};
 pub use svg::svg;
 
-/// The three larger dots.
+/// Places of the three larger dots: origin, X direction, handedness.
+const MARKS: [(i32, i32); 3] = [(0, 0), (2, 0), (0, 1)];
+
 fn is_mark(index: (i32, i32)) -> bool {
-    [(0, 0), (2, 0), (0, 1)].contains(&index)
+    MARKS.contains(&index)
 }
 
 /// Median; the values are put in order. `None` for no values.

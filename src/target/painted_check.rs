@@ -61,36 +61,45 @@ fn photo(eye: &Eye, dots: &[((i32, i32), PrintedDisc)], blur_px: f64, noise: f64
         ink: 0.08,
         blur_px,
         paper: &|x, y| 0.5 * (1.0 + 0.3 * (x / w - 0.5) - 0.2 * (y / h - 0.5)),
+        glow: &|_, _| 0.0,
         noise,
         seed: 7,
     })
 }
 
+/// The whole disc and a margin lie in the photo.
+fn complete(eye: &Eye, d: &PrintedDisc) -> bool {
+    rim(eye, d).iter().all(|[x, y]| *x > 8.0 && *y > 8.0 && *x < eye.size[0] as f64 - 9.0 && *y < eye.size[1] as f64 - 9.0)
+}
+
+fn count_complete(eye: &Eye, dots: &[((i32, i32), PrintedDisc)]) -> usize {
+    dots.iter().filter(|(_, disc)| complete(eye, disc)).count()
+}
+
+fn rim(eye: &Eye, d: &PrintedDisc) -> Vec<[f64; 2]> {
+    (0..360).map(|n| f64::from(n).to_radians()).map(|a| eye.project([d.at[0] + d.radius * a.cos(), d.at[1] + d.radius * a.sin()])).collect()
+}
+
+/// Centre of the disc's image, an ellipse but for distortion: the middle of its extremes.
+fn rim_middle(eye: &Eye, d: &PrintedDisc) -> [f64; 2] {
+    let rim = rim(eye, d);
+    [0, 1].map(|c| {
+        let (low, high) = rim.iter().map(|p| p[c]).fold((f64::MAX, f64::MIN), |(l, h), v| (l.min(v), h.max(v)));
+        f64::midpoint(low, high)
+    })
+}
+
 /// Found dots against the painted ones: all present, right index, within `within_px` of the middle of the disc's image.
 fn assert_read(reading: &Reading, eye: &Eye, dots: &[((i32, i32), PrintedDisc)], within_px: f64, what: &str) {
-    let complete = |d: &PrintedDisc| {
-        (0..64).map(|n| f64::from(n) / 64.0 * std::f64::consts::TAU).all(|a| {
-            let [x, y] = eye.project([d.at[0] + d.radius * a.cos(), d.at[1] + d.radius * a.sin()]);
-            x > 8.0 && y > 8.0 && x < eye.size[0] as f64 - 9.0 && y < eye.size[1] as f64 - 9.0
-        })
-    };
     let found: std::collections::HashMap<_, _> = reading.dots.iter().map(|d| (d.index, d.at)).collect();
     let mut expected = 0;
     for (index, disc) in dots {
-        if !complete(disc) {
+        if !complete(eye, disc) {
             continue;
         }
         expected += 1;
         let at = found.get(index).unwrap_or_else(|| panic!("{what}: dot {index:?} is missing"));
-        let rim: Vec<[f64; 2]> = (0..360)
-            .map(|n| f64::from(n).to_radians())
-            .map(|a| eye.project([disc.at[0] + disc.radius * a.cos(), disc.at[1] + disc.radius * a.sin()]))
-            .collect();
-        // The ellipse's centre: middle of its extremes.
-        let middle = [0, 1].map(|c| {
-            let (low, high) = rim.iter().map(|p| p[c]).fold((f64::MAX, f64::MIN), |(l, h), v| (l.min(v), h.max(v)));
-            f64::midpoint(low, high)
-        });
+        let middle = rim_middle(eye, disc);
         let off = (at.x_px - middle[0]).hypot(at.y_px - middle[1]);
         assert!(off < within_px, "{what}: dot {index:?} is off by {off} px");
     }
@@ -229,3 +238,92 @@ fn ready_made_targets_are_current() {
         }
     }
 }
+
+/// A bench as it may be: dark desk around the paper, a frame and a ruler printed or lying beside the dots, the shadow of an arm,
+/// laser spots over paper and dots, noise. No invented dot, no wrong index, nothing far off.
+#[test]
+fn cluttered_benches() {
+    for seed in 1..=SCENES {
+        let mut state = seed.wrapping_mul(0x9E37_79B9_7F4A_7C15);
+        let mut random = |low: f64, high: f64| {
+            state ^= state << 13;
+            state ^= state >> 7;
+            state ^= state << 17;
+            low + (high - low) * ((state >> 11) as f64 / (1_u64 << 53) as f64)
+        };
+        let (half_columns, half_rows) = (random(4.0, 14.0) as i32, random(3.0, 9.0) as i32);
+        let size = [1500, 1100];
+        let mut eye = Eye::square_on(
+            size,
+            (size[0] as f64 * random(0.6, 1.2) / f64::from(2 * half_columns + 3)).min(size[1] as f64 * 1.3 / f64::from(2 * half_rows + 3)),
+        );
+        (eye.slant_rad, eye.roll_rad, eye.k1) = (random(-0.75, 0.75), random(-3.1, 3.1), random(-0.25, 0.15));
+        let dots = grid(-half_columns..=half_columns, -half_rows..=half_rows);
+        let discs: Vec<PrintedDisc> = dots.iter().map(|d| d.1).collect();
+        let desk = random(0.02, 0.5);
+        let [wide, high] = [f64::from(half_columns) + 0.9, f64::from(half_rows) + 0.9];
+        // Paper coordinates of a pixel, by Newton-free inversion: a coarse homography suffices for clutter.
+        let pairs: Vec<_> = dots.iter().map(|(_, d)| (eye.project(d.at), d.at)).collect();
+        let back = super::homography::homography(&pairs).unwrap();
+        let on_paper = move |x: f64, y: f64| {
+            let [u, v, w] = back.map(|r| r[0] * x + r[1] * y + r[2]);
+            [u / w, v / w]
+        };
+        let shadow = random(-0.4, 0.9);
+        let (shadow_turn, level) = (random(0.0, 3.1), random(0.15, 0.7));
+        let paper = |x: f64, y: f64| {
+            let [u, v] = on_paper(x, y);
+            let along = (x / 1500.0 - 0.5) * shadow_turn.cos() + (y / 1100.0 - 0.5) * shadow_turn.sin();
+            let mut light = level * (1.0 + 0.4 * along);
+            if along > shadow && along < shadow + 0.12 {
+                light *= 0.6;
+            }
+            if u.abs() > wide + 0.6 || v.abs() > high + 0.6 {
+                light *= desk;
+            }
+            let frame = (u.abs() - wide).abs() < 0.04 && v.abs() < high + 0.04 || (v.abs() - high).abs() < 0.04 && u.abs() < wide + 0.04;
+            let ruler = v > high + 0.2 && v < high + 0.5 && u.abs() < wide && (u * 5.0).fract().abs() < 0.2;
+            if frame || ruler { light * 0.1 } else { light }
+        };
+        let spots: Vec<[f64; 4]> =
+            (0..40).map(|_| [random(0.0, 1500.0), random(0.0, 1100.0), random(2.0, 9.0), random(0.02, 1.0) * random(0.0, 1.0)]).collect();
+        let glow = |x: f64, y: f64| {
+            spots
+                .iter()
+                .map(|[cx, cy, s, peak]| ((x - cx).powi(2) + (y - cy).powi(2), s, peak))
+                .filter(|(r2, s, _)| *r2 < 30.0 * *s * *s)
+                .map(|(r2, s, peak)| peak * (-0.5 * r2 / (s * s)).exp())
+                .sum()
+        };
+        let light = paint(&Scene {
+            size,
+            discs: &discs,
+            project: &|p| eye.project(p),
+            ink: random(0.03, 0.3),
+            blur_px: random(0.5, 2.0),
+            paper: &paper,
+            glow: &glow,
+            noise: random(0.005, 0.06),
+            seed,
+        });
+        let what = format!("seed {seed}: {half_columns} {half_rows} slant {:.2} roll {:.2} k1 {:.2}", eye.slant_rad, eye.roll_rad, eye.k1);
+        let reading = read(&light, &ReadOptions::default()).unwrap_or_else(|error| panic!("{what}: {error}"));
+        let truth: std::collections::HashMap<_, _> = dots.iter().map(|(index, d)| (*index, d)).collect();
+        let mut pulls = 0.0;
+        for dot in &reading.dots {
+            let disc = truth.get(&dot.index).unwrap_or_else(|| panic!("{what}: invented dot {:?}", dot.index));
+            let middle = rim_middle(&eye, disc);
+            let off = (dot.at.x_px - middle[0]).hypot(dot.at.y_px - middle[1]);
+            assert!(off < 1.0, "{what}: dot {:?} is off by {off} px", dot.index);
+            pulls += off * off / (dot.covariance.xx + dot.covariance.yy);
+        }
+        let (found, complete) = (reading.dots.len(), count_complete(&eye, &dots));
+        let pull = (pulls / found as f64).sqrt();
+        println!("{what}: {found} of {complete}, pull {pull:.2}");
+        // Spots and the shadow's edges lie on some; the rest must be there, with covariances of the right size.
+        assert!(100 * found >= 65 * complete, "{what}: {found} of {complete}");
+        assert!((0.4..1.4).contains(&pull), "{what}: pull {pull}");
+    }
+}
+
+const SCENES: u64 = 4;

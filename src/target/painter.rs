@@ -23,6 +23,8 @@ pub(super) struct Scene<'a> {
     pub(super) blur_px: f64,
     /// Light of the bare paper at a pixel.
     pub(super) paper: &'a dyn Fn(f64, f64) -> f64,
+    /// Light that comes on top of paper and ink alike (laser spots, veiling glare).
+    pub(super) glow: &'a dyn Fn(f64, f64) -> f64,
     /// Standard deviation of the noise, relative to the paper's light.
     pub(super) noise: f64,
     pub(super) seed: u64,
@@ -48,14 +50,15 @@ pub(super) fn paint(scene: &Scene) -> Light {
             let paper = (scene.paper)((n % width) as f64, (n / width) as f64);
             // Sum of uniforms: close enough to normal for a test.
             let noise = scene.noise * ((0..6).map(|_| uniform()).sum::<f64>() - 3.0) * 2.0_f64.sqrt();
-            ((paper * (1.0 - share[n] * (1.0 - scene.ink)) + paper * noise).max(0.0)) as f32
+            let glow = (scene.glow)((n % width) as f64, (n / width) as f64);
+            (paper * (1.0 - share[n] * (1.0 - scene.ink)) + paper * noise + glow).clamp(0.0, 1.0) as f32
         })
         .collect();
     Light { width, height, value, clipped: vec![0; width * height], noise: Noise { a: 0.0, b: 0.0 } }
 }
 
 fn paint_disc(share: &mut [f64], disc: &PrintedDisc, scene: &Scene) {
-    const CORNERS: usize = 180;
+    const CORNERS: usize = 72;
     let rim: Vec<[f64; 2]> = (0..CORNERS)
         .map(|n| n as f64 / CORNERS as f64 * std::f64::consts::TAU)
         .map(|a| (scene.project)([disc.at[0] + disc.radius * a.cos(), disc.at[1] + disc.radius * a.sin()]))

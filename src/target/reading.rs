@@ -1,17 +1,15 @@
 //! Reading the printed dots from a photo.
 
-use std::collections::HashMap;
+use std::collections::BTreeMap;
 
 use super::{
     blobs::{Blob, ink_threshold, round_blobs},
-    centroid::{Darkness, Expected, darkness},
     error::TargetError,
     grid::{Places, largest_grid},
-    homography::homography,
-    is_mark,
     marks::{Hand, Orientation, orientation},
     median,
     paper::{Binned, PaperLevel, small_f64},
+    refine::{Coarse, NOMINAL_RADIUS, refined},
     view::{Seen, View},
 };
 use crate::{
@@ -24,9 +22,10 @@ use crate::{
 pub struct Dot {
     /// Column and row on the print, in pitches from the origin mark: X right, Y up.
     pub index: (i32, i32),
-    /// Centroid of the dot's darkness (not corrected for perspective).
+    /// Centre of its rim, which is also the centroid of its darkness: the centre of the ellipse that the disc shows. Under
+    /// perspective that is not the image of the disc's centre (up to 0.1 px at 35°); a fit has to predict the ellipse's centre.
     pub at: PixelPoint,
-    /// Covariance of `at`, px².
+    /// Covariance of `at`, px²; holds the scatter between neighbouring dots of this photo, not only pixel noise.
     pub covariance: PixelCovariance,
     /// One of the three larger dots at (0,0), (2,0), (0,1).
     pub mark: bool,
@@ -84,13 +83,14 @@ const FULL_RESOLUTION_PX: usize = 2600;
 /// Radius below which blobs are sought again at a finer scale, binned px.
 const SMALL_BLOB_PX: f64 = 2.6;
 
-/// Radii, in pitches, that are used until they have been measured.
-const NOMINAL_RADIUS: f64 = 0.2;
-
 /// Reads the dot target from a plane of linear light.
 ///
 /// Give the plane with the least laser light where the pattern is in the same photo. The dots may be
 /// seen obliquely, distorted, cut off by the photo's rim (cut dots are left out), in uneven light.
+///
+/// On 52 rendered photos of known truth (9 to 42 px dot radius, up to 38° oblique, 1 to 12 megapixels) every complete dot but
+/// 1 in 600 was found, no index was wrong, places were off by 0.006 to 0.021 px rms and 0.94 to 1.09 standard uncertainties
+/// (test `targets_of_known_truth`). Dots down to 3 px radius, 5 × 4 of them, 45° and |k1| = 0.3: `painted_check`.
 ///
 /// # Errors
 /// [`TargetError`] says what was seen and what was needed.
@@ -181,22 +181,16 @@ fn read_blobs(grey: &Light, blobs: &[Blob], options: &ReadOptions, needed: usize
     }
     let radius = radii(&places, blobs, &view);
     let print = find_orientation(&places, blobs, &view, &radius, grey, options)?;
-    let marks = matches!(options.marks, Marks::Required);
-    let coarse: Vec<Coarse> = places
+    let mut coarse: Vec<Coarse> = places
         .iter()
-        .map(|(place, blob)| Coarse { index: print.index(*place), blob: &blobs[*blob], radius_pitches: radius[place] })
+        .map(|(place, blob)| Coarse { index: print.index(*place), at: blobs[*blob].at, radius_pitches: radius[place] })
         .collect();
-    refine(grey, &coarse, marks, needed).ok_or_else(|| no_grid(places.len()))
+    coarse.sort_by_key(|dot| (dot.index.1, dot.index.0));
+    let reading = refined(grey, &coarse, options.marks).filter(|reading| reading.dots.len() >= needed);
+    reading.ok_or_else(|| no_grid(places.len()))
 }
 
-/// A dot known from its thresholded blob only.
-struct Coarse<'a> {
-    index: (i32, i32),
-    blob: &'a Blob,
-    radius_pitches: f64,
-}
-
-fn grid_point(place: (i32, i32)) -> [f64; 2] {
+pub(super) fn grid_point(place: (i32, i32)) -> [f64; 2] {
     [f64::from(place.0), f64::from(place.1)]
 }
 
@@ -267,7 +261,7 @@ fn relative_radius(blob: &Blob, place: (i32, i32), view: &View) -> f64 {
     (blob.area_px2 / (std::f64::consts::PI * (x[0] * y[1] - x[1] * y[0]).abs())).sqrt()
 }
 
-fn radii(places: &Places, blobs: &[Blob], view: &View) -> HashMap<(i32, i32), f64> {
+fn radii(places: &Places, blobs: &[Blob], view: &View) -> BTreeMap<(i32, i32), f64> {
     places.iter().map(|(place, blob)| (*place, relative_radius(&blobs[*blob], *place, view))).collect()
 }
 
@@ -275,7 +269,7 @@ fn find_orientation(
     places: &Places,
     blobs: &[Blob],
     view: &View,
-    radius: &HashMap<(i32, i32), f64>,
+    radius: &BTreeMap<(i32, i32), f64>,
     grey: &Light,
     options: &ReadOptions,
 ) -> Result<Orientation, TargetError> {
@@ -291,147 +285,4 @@ fn find_orientation(
         Marks::Required => orientation(radius, hand),
         Marks::Absent => Ok(Orientation::without_marks(central, [x[0], y[0]], hand)),
     }
-}
-
-/// Full-resolution centroids, weeded and with covariances that match their scatter about a smooth view.
-fn refine(grey: &Light, coarse: &[Coarse], marks: bool, needed: usize) -> Option<Reading> {
-    let (width, height) = (small_f64(grey.width), small_f64(grey.height));
-    let mut radius = [false, true].map(|mark| {
-        let mut of_kind: Vec<f64> =
-            coarse.iter().filter(|dot| (marks && is_mark(dot.index)) == mark).map(|dot| dot.radius_pitches).collect();
-        median(&mut of_kind)
-    });
-    radius[1] = radius[1].or(radius[0]);
-    let of_index = |index: (i32, i32)| if marks && is_mark(index) { radius[1] } else { radius[0] }.unwrap_or(NOMINAL_RADIUS);
-    let seen: Vec<Seen> = coarse
-        .iter()
-        .map(|dot| Seen { index: grid_point(dot.index), radius_pitches: of_index(dot.index), at: dot.blob.at, u_px: 1.0 })
-        .collect();
-    let view = View::fit(&seen, width, height)?;
-    let measure = |blur_px: f64, indices: &[((i32, i32), PixelPoint)]| -> Vec<((i32, i32), Darkness)> {
-        use rayon::prelude::*;
-        indices
-            .par_iter()
-            .filter_map(|(index, at)| {
-                let expected = Expected {
-                    at: *at,
-                    steps_px: view.steps(grid_point(*index)),
-                    radius_pitches: of_index(*index),
-                    neighbours_pitches: std::array::from_fn(|n| {
-                        let (i, j) = [(-1, -1), (0, -1), (1, -1), (-1, 0), (0, 0), (1, 0), (-1, 1), (0, 1), (1, 1)][n];
-                        of_index((index.0 + i, index.1 + j))
-                    }),
-                    blur_px,
-                };
-                Some((*index, darkness(grey, &expected)?))
-            })
-            .collect()
-    };
-    let starts: Vec<((i32, i32), PixelPoint)> = coarse.iter().map(|dot| (dot.index, dot.blob.at)).collect();
-    // A sample of the dots tells the blur, which sets the width of the window.
-    let every = starts.len().div_ceil(40);
-    let sample: Vec<_> = starts.iter().step_by(every).copied().collect();
-    let mut blurs: Vec<f64> = measure(1.5, &sample).iter().map(|(_, d)| d.blur_px).collect();
-    let blur_px = median(&mut blurs)?.clamp(0.4, 12.0);
-    let found = measure(blur_px, &starts);
-    finish(&found, marks, needed, width, height)
-}
-
-/// Radii from the darkness, outliers out, covariances scaled, and the start homography.
-fn finish(found: &[((i32, i32), Darkness)], marks: bool, needed: usize, width: f64, height: f64) -> Option<Reading> {
-    let kind = |index: (i32, i32)| marks && is_mark(index);
-    let contrast = typical_contrast(found, marks)?;
-    let radius_of = |mark: bool| {
-        let mut of_kind: Vec<f64> = found
-            .iter()
-            .filter(|(index, _)| kind(*index) == mark)
-            .map(|(_, d)| (d.sum_px2 / (contrast * std::f64::consts::PI * d.cell_px2)).sqrt())
-            .collect();
-        median(&mut of_kind)
-    };
-    let dot_radius_pitches = radius_of(false)?;
-    let mark_radius_pitches = radius_of(true).unwrap_or(dot_radius_pitches);
-    let seen = |index: (i32, i32), d: &Darkness| Seen {
-        index: grid_point(index),
-        radius_pitches: if kind(index) { mark_radius_pitches } else { dot_radius_pitches },
-        at: d.at,
-        u_px: f64::midpoint(d.covariance.xx, d.covariance.yy).sqrt(),
-    };
-    let all: Vec<Seen> = found.iter().map(|(index, d)| seen(*index, d)).collect();
-    let view = View::fit(&all, width, height)?;
-    let local = Residuals::of(found, &all, &view);
-    let scale = local.scatter().unwrap_or_else(|| view.scatter(&all)).max(1.0);
-    let mut dots: Vec<Dot> = Vec::new();
-    for ((index, d), dot) in found.iter().zip(&all) {
-        if local.off_px(*index, dot) <= OUTLIER * scale * dot.u_px + 0.01 {
-            let c = d.covariance;
-            let s2 = scale * scale;
-            let covariance = PixelCovariance { xx: c.xx * s2, xy: c.xy * s2, yy: c.yy * s2 };
-            dots.push(Dot { index: *index, at: d.at, covariance, mark: kind(*index) });
-        }
-    }
-    if dots.len() < needed {
-        return None;
-    }
-    dots.sort_by_key(|dot| (dot.index.1, dot.index.0));
-    let pairs: Vec<_> = dots.iter().map(|dot| (grid_point(dot.index), [dot.at.x_px, dot.at.y_px])).collect();
-    let pixel_from_pitches = homography(&pairs)?;
-    Some(Reading { dots, dot_radius_pitches, mark_radius_pitches, pixel_from_pitches, notes: Vec::new() })
-}
-
-/// Farther than this many standard uncertainties from its neighbours' trend a dot is left out.
-const OUTLIER: f64 = 5.0;
-
-/// Residuals about the smooth view, seen against those of the neighbours: what a real lens does beyond
-/// the view's few terms is smooth and cancels there, noise and glare do not.
-struct Residuals {
-    at: HashMap<(i32, i32), ([f64; 2], f64)>,
-}
-
-impl Residuals {
-    fn of(found: &[((i32, i32), Darkness)], seen: &[Seen], view: &View) -> Self {
-        let at = found.iter().zip(seen).map(|((index, _), dot)| (*index, (view.residual_px(dot), dot.u_px))).collect();
-        Self { at }
-    }
-
-    fn neighbours(&self, (i, j): (i32, i32)) -> impl Iterator<Item = &([f64; 2], f64)> {
-        let around = [(-1, 0), (1, 0), (0, -1), (0, 1), (-1, -1), (1, 1), (-1, 1), (1, -1)];
-        around.into_iter().filter_map(move |(di, dj)| self.at.get(&(i + di, j + dj)))
-    }
-
-    /// Robust scatter of the differences to the mean of the neighbours, in units of their stated uncertainty.
-    fn scatter(&self) -> Option<f64> {
-        let mut sizes: Vec<f64> = Vec::new();
-        for (index, (residual, u_px)) in &self.at {
-            let (mut n, mut mean, mut u2) = (0.0, [0.0; 2], 0.0);
-            for (other, u) in self.neighbours(*index) {
-                n += 1.0;
-                mean = [mean[0] + other[0], mean[1] + other[1]];
-                u2 += u * u;
-            }
-            if n >= 5.0 {
-                let expected = (u_px * u_px + u2 / (n * n)).sqrt();
-                sizes.extend([0, 1].map(|c| ((residual[c] - mean[c] / n) / expected).abs()));
-            }
-        }
-        (sizes.len() >= 30).then(|| median(&mut sizes))?.map(|m| 1.4826 * m)
-    }
-
-    /// Distance from the median of the neighbours' residuals, or from the view where there are too few.
-    fn off_px(&self, index: (i32, i32), dot: &Seen) -> f64 {
-        let trend = [0, 1].map(|c| {
-            let mut values: Vec<f64> = self.neighbours(index).map(|(r, _)| r[c]).collect();
-            if values.len() < 5 { None } else { median(&mut values) }
-        });
-        let own = self.at.get(&index).map_or([0.0; 2], |(r, _)| *r);
-        let _ = dot;
-        (own[0] - trend[0].unwrap_or(0.0)).hypot(own[1] - trend[1].unwrap_or(0.0))
-    }
-}
-
-/// Contrast of ink and paper, from the larger dots where there are any: their cores are least blurred.
-fn typical_contrast(found: &[((i32, i32), Darkness)], marks: bool) -> Option<f64> {
-    let mut of_marks: Vec<f64> = found.iter().filter(|(index, _)| marks && is_mark(*index)).map(|(_, d)| d.contrast).collect();
-    let mut of_all: Vec<f64> = found.iter().map(|(_, d)| d.contrast).collect();
-    Some(median(&mut of_all)?.max(median(&mut of_marks).unwrap_or(0.0)))
 }
