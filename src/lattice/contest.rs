@@ -32,10 +32,13 @@ impl Candidate {
 const ZERO_SAY: f64 = 8.0;
 
 /// Credit for holding the brightest point of the scene (points are listed brightest first): between a pattern and its fainter copy, the pattern.
-const BRIGHTEST_HELD: f64 = 4.0;
+const BRIGHTEST_HELD: f64 = 7.0;
 
 /// Lattices grown in full per shape before their relatives are tried.
 const FINALISTS: usize = 4;
+
+/// Share of the best evidence below which a finalist's relatives are not tried.
+const FAR_BEHIND: f64 = 0.5;
 
 /// Lattices compared over all points where there are more than the seed points.
 const FULL_ROUND: usize = 5;
@@ -59,14 +62,20 @@ pub(super) fn candidates(scene: &Scene<'_>, among: &[usize]) -> Vec<Candidate> {
             grown.extend(growth.and_then(|g| trimmed(scene, g, bright.len())).map(|(g, s)| (s.log_evidence, g)));
         }
         grown.sort_by(|a, b| b.0.total_cmp(&a.0));
-        let mut finalists: Vec<Growth> = Vec::new();
-        for (_, growth) in grown {
-            if finalists.len() < FINALISTS && !finalists.iter().any(|f| same_assignment(f, &growth)) {
-                finalists.push(growth);
+        let mut finalists: Vec<(f64, Growth)> = Vec::new();
+        for (evidence, growth) in grown {
+            if finalists.len() < FINALISTS && !finalists.iter().any(|(_, f)| same_assignment(f, &growth)) {
+                finalists.push((evidence, growth));
             }
         }
-        for finalist in finalists {
-            found.extend(with_relatives(scene, bright, finalist));
+        // A relative of the best finalist is found from it; one far behind is looked at for itself alone.
+        for (i, finalist) in finalists.into_iter().enumerate() {
+            let far_behind = i > 0 && found.iter().any(|c: &Candidate| finalist.0 < FAR_BEHIND * c.score.log_evidence);
+            if far_behind {
+                found.extend(judge(scene, finalist.1, bright.len()));
+            } else {
+                found.extend(with_relatives(scene, bright, finalist.1));
+            }
         }
     }
     let ranked = distinct(found);
@@ -80,7 +89,7 @@ pub(super) fn candidates(scene: &Scene<'_>, among: &[usize]) -> Vec<Candidate> {
 }
 
 /// The same lattice over all points.
-fn over_all(scene: &Scene<'_>, among: &[usize], candidate: &Candidate) -> Option<Candidate> {
+pub(super) fn over_all(scene: &Scene<'_>, among: &[usize], candidate: &Candidate) -> Option<Candidate> {
     judge(scene, regrow(scene, &candidate.growth, among, nearest_whole(candidate.zero.doubled))?, among.len())
 }
 
@@ -117,7 +126,9 @@ fn with_relatives(scene: &Scene<'_>, among: &[usize], growth: Growth) -> Vec<Can
         let relatives: Vec<Candidate> = relative_starts(&best.growth.fit.warp, node, best.growth.line, sd)
             .iter()
             .filter_map(|s: &Start| grow(scene, among, s))
-            .filter_map(|g| judge(scene, g, among.len()))
+            .filter_map(|g| trimmed(scene, g, among.len()))
+            .filter(|(g, s)| !beyond_hope(g, s, &best))
+            .filter_map(|(g, s)| with_zero(scene, g, s))
             .collect();
         let better = relatives.iter().filter(|r| r.total() > best.total()).max_by(|a, b| a.total().total_cmp(&b.total())).cloned();
         seen.extend(relatives);
@@ -131,6 +142,16 @@ fn with_relatives(scene: &Scene<'_>, among: &[usize], growth: Growth) -> Vec<Can
 
 fn judge(scene: &Scene<'_>, growth: Growth, total: usize) -> Option<Candidate> {
     let (growth, score) = trimmed(scene, growth, total)?;
+    with_zero(scene, growth, score)
+}
+
+/// A denser net so far behind that no zero order can bring it back. (Coarser ones stay: they may be the parents of copies.)
+fn beyond_hope(growth: &Growth, score: &Score, best: &Candidate) -> bool {
+    let denser = growth.line == best.growth.line && cell_size(growth) < cell_size(&best.growth);
+    denser && score.log_evidence < best.score.log_evidence - 2.0 * ZERO_SAY - BRIGHTEST_HELD
+}
+
+fn with_zero(scene: &Scene<'_>, growth: Growth, score: Score) -> Option<Candidate> {
     let zero = choose_zero(scene, &growth)?;
     Some(Candidate { growth, score, zero })
 }

@@ -111,6 +111,9 @@ fn report(points: &[Point], usable: &[usize], scene: &Scene<'_>, settled: &Candi
     let explained = explain_rejected(points, usable, scene, settled);
     let mut warnings = super::rejected::numbering_warnings(scene, growth);
     warnings.extend(zero_warnings(settled, flip));
+    if growth.node.first().is_some_and(Option::is_none) {
+        warnings.push(Warning::BrightestUnexplained { point: usable[0] });
+    }
     warnings.extend(explained.warnings);
     if let Some(rival) = &runner_up {
         warnings.extend(rival_warning(settled, rival));
@@ -236,41 +239,4 @@ fn typical_spacing(at: &[[f64; 2]]) -> f64 {
         head.iter().enumerate().filter(|(j, _)| *j != i).map(|(_, q)| norm([p[0] - q[0], p[1] - q[1]])).fold(f64::MAX, f64::min)
     };
     median(head.iter().enumerate().map(nearest))
-}
-
-#[cfg(test)]
-pub(super) fn debug(points: &[Point], visible: &dyn Fn([f64; 2]) -> bool, truth: &[Option<(i32, i32)>]) {
-    let options = IndexOptions::default();
-    let usable = usable_in_canonical_order(points);
-    let scene = scene(points, &usable, &options, visible);
-    let all: Vec<usize> = (0..usable.len()).collect();
-    let bright = all.len().min(120);
-    println!(
-        "{} points, {} true in bright {}; slack {} area {} extent {}",
-        all.len(),
-        usable[..bright].iter().filter(|&&i| truth[i].is_some()).count(),
-        bright,
-        scene.slack,
-        scene.area,
-        scene.extent
-    );
-    for c in candidates(&scene, &all) {
-        let s = c.growth.fit.warp.steps(0.0, 0.0);
-        let good = c.growth.node.iter().enumerate().filter(|(i, n)| n.is_some() && truth[usable[*i]].is_some()).count();
-        println!(
-            "line {} total {:.1} ev {:.1} zero {:.1} {:?} explained {} (true {good}) nodes {} step {:.4} area {:.3e} u {:.5}",
-            c.growth.line,
-            c.total(),
-            c.score.log_evidence,
-            c.zero.score,
-            c.zero.doubled,
-            c.score.explained,
-            c.score.nodes,
-            c.growth.step,
-            (s[0][0] * s[1][1] - s[0][1] * s[1][0]).abs(),
-            scene.u[0]
-        );
-    }
-    let made = settle(&scene, &candidates(&scene, &all)[0], &all);
-    println!("settled {}", made.is_some());
 }

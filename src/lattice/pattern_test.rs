@@ -215,13 +215,25 @@ fn survey() {
 }
 
 #[test]
-fn debug_one() {
-    let (seed, recipe) = match std::env::var("DEBUG_CASE").as_deref() {
-        Ok("line") => (14, Recipe { line: true, junk: 0.5, ..PLAIN }),
-        _ => (7, Recipe { junk: 1.5, ..PLAIN }),
-    };
-    let made = make(&recipe, seed);
-    super::indexing::debug(&made.points, &|at| made.sees(at), &made.truth);
+fn speed() {
+    for (count, extra) in [(100, 0), (500, 0), (1000, 1000), (2000, 0)] {
+        let random = &mut ChaCha8Rng::seed_from_u64(1);
+        let side = (f64::from(count).sqrt() / 2.0) as i32;
+        let mut points = Vec::new();
+        for h in -side..=side {
+            for k in -side..=side {
+                let bright = sinc2(0.02 * f64::from(h)) * sinc2(0.02 * f64::from(k)) * random.random_range(0.7..1.3)
+                    + if (h, k) == (0, 0) { 9.0 } else { 0.0 };
+                points.push(Point::new([0.01 * f64::from(h), 0.002 * f64::from(h) + 0.011 * f64::from(k)], 1e-4, bright));
+            }
+        }
+        for _ in 0..extra {
+            points.push(Point::new([random.random_range(-0.2..0.2), random.random_range(-0.2..0.2)], 1e-4, random.random_range(0.1..1.0)));
+        }
+        let start = std::time::Instant::now();
+        let found = index(&points, &IndexOptions::default(), &|_| true).unwrap();
+        println!("{} points: {:.1} ms, explained {}", points.len(), start.elapsed().as_secs_f64() * 1e3, found.evidence.explained);
+    }
 }
 
 #[test]

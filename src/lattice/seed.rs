@@ -15,7 +15,7 @@ const NEIGHBOURS: usize = 16;
 /// Recurring differences that serve as steps.
 const RECURRING: usize = 10;
 /// Bases kept per origin after the quick count.
-const KEPT: usize = 6;
+const KEPT: usize = 5;
 /// Points around the origin used in the quick count.
 const QUICK_POINTS: usize = 40;
 
