@@ -18,21 +18,23 @@ pub(super) struct Candidate {
     pub growth: Growth,
     pub score: Score,
     pub zero: ZeroChoice,
+    /// Credit for holding the brightest point, nats.
+    brightest: f64,
 }
 
 impl Candidate {
     /// What candidates compete by: evidence of the places plus that of the zero order.
     pub(super) fn total(&self) -> f64 {
-        let brightest = if self.growth.node.first().is_some_and(Option::is_some) { BRIGHTEST_HELD } else { 0.0 };
-        self.score.log_evidence + self.zero.score.clamp(-ZERO_SAY, ZERO_SAY) + brightest
+        self.score.log_evidence + self.zero.score.clamp(-ZERO_SAY, ZERO_SAY) + self.brightest
     }
 }
 
 /// Most that the zero order may say for or against a lattice, nats. Its symmetry counts occupied nodes once more, so it must not outweigh the places.
 const ZERO_SAY: f64 = 8.0;
 
-/// Credit for holding the brightest point of the scene (points are listed brightest first): between a pattern and its fainter copy, the pattern.
-const BRIGHTEST_HELD: f64 = 7.0;
+/// Credit for holding the brightest point of the scene, which usually is the zero order: least, and most (one that outshines all others by far).
+/// It decides between a pattern and its fainter copy, and against nets of odd orders only that leave the zero order between their nodes.
+const BRIGHTEST_HELD: [f64; 2] = [7.0, 22.0];
 
 /// Lattices grown in full per shape before their relatives are tried.
 const FINALISTS: usize = 4;
@@ -93,6 +95,15 @@ pub(super) fn over_all(scene: &Scene<'_>, among: &[usize], candidate: &Candidate
     judge(scene, regrow(scene, &candidate.growth, among, nearest_whole(candidate.zero.doubled))?, among.len())
 }
 
+/// 7 nats and two more per factor e between the brightest and the second brightest point of the scene (listed brightest first).
+fn credit_for_brightest(scene: &Scene<'_>, growth: &Growth) -> f64 {
+    let [least, most] = BRIGHTEST_HELD;
+    match (growth.node.first(), scene.ln_weight.as_slice()) {
+        (Some(Some(_)), [first, second, ..]) => (least + 2.0 * (first - second)).min(most),
+        _ => 0.0,
+    }
+}
+
 /// Coarser relatives over the points that a lattice holds: had strays at its in-between nodes hidden them, they show now.
 fn coarser(scene: &Scene<'_>, candidate: &Candidate, total: usize) -> Vec<Candidate> {
     let growth = &candidate.growth;
@@ -148,12 +159,13 @@ fn judge(scene: &Scene<'_>, growth: Growth, total: usize) -> Option<Candidate> {
 /// A denser net so far behind that no zero order can bring it back. (Coarser ones stay: they may be the parents of copies.)
 fn beyond_hope(growth: &Growth, score: &Score, best: &Candidate) -> bool {
     let denser = growth.line == best.growth.line && cell_size(growth) < cell_size(&best.growth);
-    denser && score.log_evidence < best.score.log_evidence - 2.0 * ZERO_SAY - BRIGHTEST_HELD
+    denser && score.log_evidence < best.score.log_evidence - 2.0 * ZERO_SAY - BRIGHTEST_HELD[1]
 }
 
-fn with_zero(scene: &Scene<'_>, growth: Growth, score: Score) -> Option<Candidate> {
+pub(super) fn with_zero(scene: &Scene<'_>, growth: Growth, score: Score) -> Option<Candidate> {
     let zero = choose_zero(scene, &growth)?;
-    Some(Candidate { growth, score, zero })
+    let brightest = credit_for_brightest(scene, &growth);
+    Some(Candidate { growth, score, zero, brightest })
 }
 
 /// Same cell size, same points.

@@ -3,7 +3,7 @@
 use super::{
     Evidence, Expected, IndexOptions, Indexed, LatticeError, Point, RunnerUp, Shape, Warning,
     cell::norm,
-    contest::{Candidate, candidates, cell_size, nearest_whole},
+    contest::{Candidate, candidates, cell_size, nearest_whole, with_zero},
     evidence::{Score, row_evidence},
     grow::{Growth, Scene, Start, grow},
     rejected::explain_rejected,
@@ -54,7 +54,8 @@ fn settle(scene: &Scene<'_>, best: &Candidate, all: &[usize]) -> Option<Candidat
     let mut zero = choose_zero(scene, &growth)?;
     // The middle of symmetry lies between the nodes: the visible orders are the odd ones of a net twice as dense.
     if zero.doubled.0 % 2 != 0 || zero.doubled.1 % 2 != 0 {
-        growth = grow(scene, all, &halved(&growth, zero.doubled, scene)?)?;
+        let dense = halved(&growth, zero.doubled, scene).and_then(|start| grow(scene, all, &start));
+        growth = dense.unwrap_or(growth);
         zero = choose_zero(scene, &growth)?;
     }
     for _ in 0..3 {
@@ -66,7 +67,7 @@ fn settle(scene: &Scene<'_>, best: &Candidate, all: &[usize]) -> Option<Candidat
         zero = choose_zero(scene, &growth)?;
     }
     let (growth, score) = trimmed(scene, growth, all.len())?;
-    Some(Candidate { growth, score, zero })
+    with_zero(scene, growth, score)
 }
 
 fn halved(growth: &Growth, doubled: (i32, i32), scene: &Scene<'_>) -> Option<Start> {
@@ -82,12 +83,16 @@ fn halved(growth: &Growth, doubled: (i32, i32), scene: &Scene<'_>) -> Option<Sta
     if growth.line { Some(Start { origin, steps, sd, line: true }) } else { super::relatives::reduced_start(origin, steps, sd) }
 }
 
+/// Most that brightness and symmetry about the zero order may add where the places alone fall short of the evidence asked for, nats.
+const BRIGHTNESS_SAY: f64 = 6.0;
+
 /// The evidence that falls short of what is asked for, if any does.
 fn shortfall(scene: &Scene<'_>, settled: &Candidate) -> Option<f64> {
     let needed = scene.options.least_evidence;
     let least_points = if settled.growth.line { 3 } else { 4 };
-    if settled.score.explained < least_points || settled.score.log_evidence < needed {
-        return Some(settled.score.log_evidence);
+    let evidence = settled.score.log_evidence + settled.zero.score.clamp(0.0, BRIGHTNESS_SAY);
+    if settled.score.explained < least_points || evidence < needed {
+        return Some(evidence);
     }
     if settled.growth.line {
         let row = row_evidence(scene, &settled.growth).unwrap_or(f64::MIN_POSITIVE);

@@ -56,7 +56,8 @@ pub struct IndexOptions {
     /// Least standard deviation of a point about its node, as a share of the typical distance between neighbouring points.
     /// It belongs to the picture and not to the lattice tried, or a denser lattice would look more precise.
     pub node_slack: f64,
-    /// Log evidence over chance (nats) below which no lattice is reported.
+    /// Log evidence over chance (nats) below which no lattice is reported. Of 14 000 sets of 3 to 25 points strewn evenly or in a
+    /// cluster, none passed at 6; of 7000 sets strewn along a straight row, 3 did (see the chance test).
     pub least_evidence: f64,
     /// Number of brightest points from which lattices are guessed; bounds the pair work.
     pub seed_points: usize,
@@ -64,6 +65,6 @@ pub struct IndexOptions {
 
 impl Default for IndexOptions {
     fn default() -> Self {
-        Self { expected: Expected::Auto, zero_hint: None, bend: 0.1, node_slack: 0.01, least_evidence: 8.0, seed_points: 120 }
+        Self { expected: Expected::Auto, zero_hint: None, bend: 0.1, node_slack: 0.01, least_evidence: 7.0, seed_points: 120 }
     }
 }

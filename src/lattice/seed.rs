@@ -85,7 +85,7 @@ fn recurring_steps(scene: &Scene<'_>, bright: &[usize]) -> Vec<[f64; 2]> {
     all.sort_by(|a, b| norm(*a).total_cmp(&norm(*b)));
     let votes = |v: [f64; 2]| all.iter().filter(|w| same_step(scene, v, **w)).count();
     let mut voted: Vec<(usize, [f64; 2])> = all.iter().map(|v| (votes(*v), *v)).collect();
-    voted.sort_by(|a, b| b.0.cmp(&a.0));
+    voted.sort_by_key(|v| std::cmp::Reverse(v.0));
     let mut kept: Vec<[f64; 2]> = Vec::new();
     for (_, v) in voted {
         if kept.len() == RECURRING {
