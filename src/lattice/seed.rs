@@ -44,7 +44,7 @@ pub(super) fn starts(scene: &Scene<'_>, bright: &[usize], line: bool) -> Vec<Sta
 pub(super) fn start(scene: &Scene<'_>, origin: [f64; 2], steps: [[f64; 2]; 2], line: bool) -> Start {
     let long = if line { norm(steps[0]) } else { norm(steps[0]).max(norm(steps[1])) };
     let typical_u = median(scene.u.iter().copied());
-    Start { origin, steps, sd: typical_u.hypot(scene.options.bend * long * long), line }
+    Start { origin, steps, sd: typical_u.hypot(0.5 * scene.options.bend * long * long), line }
 }
 
 /// Points in order of distance from a place.
@@ -154,7 +154,7 @@ fn quick_count(scene: &Scene<'_>, around: &[[f64; 2]], start: &Start) -> f64 {
             if start.line { [dot(*v, p) / pp, 0.0] } else { [(v[0] * q[1] - v[1] * q[0]) / area, (p[0] * v[1] - p[1] * v[0]) / area] };
         let node = [order[0].round(), order[1].round()];
         let off = [v[0] - node[0] * p[0] - node[1] * q[0], v[1] - node[0] * p[1] - node[1] * q[1]];
-        let gate = 3.0 * base * (1.0 + 0.7 * norm(node)) + scene.options.bend * dot(*v, *v);
+        let gate = 3.0 * base * (1.0 + 0.7 * norm(node)) + 0.5 * scene.options.bend * dot(*v, *v);
         let cell = if start.line { pp } else { area.abs() };
         if gate < 0.3 * shortest && norm(off) < gate {
             total += (cell / (std::f64::consts::PI * gate * gate)).ln().max(0.0);
