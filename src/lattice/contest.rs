@@ -18,24 +18,29 @@ pub(super) struct Candidate {
     pub growth: Growth,
     pub score: Score,
     pub zero: ZeroChoice,
+    /// Credit for holding the brightest point, nats.
+    brightest: f64,
 }
 
 impl Candidate {
     /// What candidates compete by: evidence of the places plus that of the zero order.
     pub(super) fn total(&self) -> f64 {
-        let brightest = if self.growth.node.first().is_some_and(Option::is_some) { BRIGHTEST_HELD } else { 0.0 };
-        self.score.log_evidence + self.zero.score.clamp(-ZERO_SAY, ZERO_SAY) + brightest
+        self.score.log_evidence + self.zero.score.clamp(-ZERO_SAY, ZERO_SAY) + self.brightest
     }
 }
 
 /// Most that the zero order may say for or against a lattice, nats. Its symmetry counts occupied nodes once more, so it must not outweigh the places.
 const ZERO_SAY: f64 = 8.0;
 
-/// Credit for holding the brightest point of the scene (points are listed brightest first): between a pattern and its fainter copy, the pattern.
-const BRIGHTEST_HELD: f64 = 4.0;
+/// Credit for holding the brightest point of the scene, which usually is the zero order: least, and most (one that outshines all others by far).
+/// It decides between a pattern and its fainter copy, and against nets of odd orders only that leave the zero order between their nodes.
+const BRIGHTEST_HELD: [f64; 2] = [7.0, 22.0];
 
 /// Lattices grown in full per shape before their relatives are tried.
 const FINALISTS: usize = 4;
+
+/// Share of the best evidence below which a finalist's relatives are not tried.
+const FAR_BEHIND: f64 = 0.5;
 
 /// Lattices compared over all points where there are more than the seed points.
 const FULL_ROUND: usize = 5;
@@ -59,14 +64,20 @@ pub(super) fn candidates(scene: &Scene<'_>, among: &[usize]) -> Vec<Candidate> {
             grown.extend(growth.and_then(|g| trimmed(scene, g, bright.len())).map(|(g, s)| (s.log_evidence, g)));
         }
         grown.sort_by(|a, b| b.0.total_cmp(&a.0));
-        let mut finalists: Vec<Growth> = Vec::new();
-        for (_, growth) in grown {
-            if finalists.len() < FINALISTS && !finalists.iter().any(|f| same_assignment(f, &growth)) {
-                finalists.push(growth);
+        let mut finalists: Vec<(f64, Growth)> = Vec::new();
+        for (evidence, growth) in grown {
+            if finalists.len() < FINALISTS && !finalists.iter().any(|(_, f)| same_assignment(f, &growth)) {
+                finalists.push((evidence, growth));
             }
         }
-        for finalist in finalists {
-            found.extend(with_relatives(scene, bright, finalist));
+        // A relative of the best finalist is found from it; one far behind is looked at for itself alone.
+        for (i, finalist) in finalists.into_iter().enumerate() {
+            let far_behind = i > 0 && found.iter().any(|c: &Candidate| finalist.0 < FAR_BEHIND * c.score.log_evidence);
+            if far_behind {
+                found.extend(judge(scene, finalist.1, bright.len()));
+            } else {
+                found.extend(with_relatives(scene, bright, finalist.1));
+            }
         }
     }
     let ranked = distinct(found);
@@ -80,8 +91,17 @@ pub(super) fn candidates(scene: &Scene<'_>, among: &[usize]) -> Vec<Candidate> {
 }
 
 /// The same lattice over all points.
-fn over_all(scene: &Scene<'_>, among: &[usize], candidate: &Candidate) -> Option<Candidate> {
+pub(super) fn over_all(scene: &Scene<'_>, among: &[usize], candidate: &Candidate) -> Option<Candidate> {
     judge(scene, regrow(scene, &candidate.growth, among, nearest_whole(candidate.zero.doubled))?, among.len())
+}
+
+/// 7 nats and two more per factor e between the brightest and the second brightest point of the scene (listed brightest first).
+fn credit_for_brightest(scene: &Scene<'_>, growth: &Growth) -> f64 {
+    let [least, most] = BRIGHTEST_HELD;
+    match (growth.node.first(), scene.ln_weight.as_slice()) {
+        (Some(Some(_)), [first, second, ..]) => (least + 2.0 * (first - second)).min(most),
+        _ => 0.0,
+    }
 }
 
 /// Coarser relatives over the points that a lattice holds: had strays at its in-between nodes hidden them, they show now.
@@ -117,7 +137,9 @@ fn with_relatives(scene: &Scene<'_>, among: &[usize], growth: Growth) -> Vec<Can
         let relatives: Vec<Candidate> = relative_starts(&best.growth.fit.warp, node, best.growth.line, sd)
             .iter()
             .filter_map(|s: &Start| grow(scene, among, s))
-            .filter_map(|g| judge(scene, g, among.len()))
+            .filter_map(|g| trimmed(scene, g, among.len()))
+            .filter(|(g, s)| !beyond_hope(g, s, &best))
+            .filter_map(|(g, s)| with_zero(scene, g, s))
             .collect();
         let better = relatives.iter().filter(|r| r.total() > best.total()).max_by(|a, b| a.total().total_cmp(&b.total())).cloned();
         seen.extend(relatives);
@@ -131,8 +153,19 @@ fn with_relatives(scene: &Scene<'_>, among: &[usize], growth: Growth) -> Vec<Can
 
 fn judge(scene: &Scene<'_>, growth: Growth, total: usize) -> Option<Candidate> {
     let (growth, score) = trimmed(scene, growth, total)?;
+    with_zero(scene, growth, score)
+}
+
+/// A denser net so far behind that no zero order can bring it back. (Coarser ones stay: they may be the parents of copies.)
+fn beyond_hope(growth: &Growth, score: &Score, best: &Candidate) -> bool {
+    let denser = growth.line == best.growth.line && cell_size(growth) < cell_size(&best.growth);
+    denser && score.log_evidence < best.score.log_evidence - 2.0 * ZERO_SAY - BRIGHTEST_HELD[1]
+}
+
+pub(super) fn with_zero(scene: &Scene<'_>, growth: Growth, score: Score) -> Option<Candidate> {
     let zero = choose_zero(scene, &growth)?;
-    Some(Candidate { growth, score, zero })
+    let brightest = credit_for_brightest(scene, &growth);
+    Some(Candidate { growth, score, zero, brightest })
 }
 
 /// Same cell size, same points.

@@ -110,8 +110,9 @@ pub(super) fn grow(scene: &Scene<'_>, among: &[usize], start: &Start) -> Option<
     let anchors = anchors(start, scene.slack);
     let mut fit = Warp::fit(&anchors, &scale, start.line)?;
     let mut growth = Growth { node: Vec::new(), beaten: Vec::new(), beyond: Vec::new(), scale, fit: fit.clone(), step, line: start.line };
+    let mut orders = vec![[0.0; 2]; scene.at.len()];
     for _ in 0..ROUNDS {
-        let (node, beaten) = assign(scene, among, &fit.warp, step, start.line);
+        let (node, beaten) = assign(scene, among, &fit.warp, step, start.line, &mut orders);
         if node == growth.node {
             break;
         }
@@ -155,7 +156,10 @@ pub(super) struct Nearest {
 
 /// The node nearest to a place.
 pub(super) fn nearest_node(warp: &Warp, at: [f64; 2]) -> Option<Nearest> {
-    let order = warp.order_at(at)?;
+    node_near(warp, at, warp.order_at(at)?)
+}
+
+fn node_near(warp: &Warp, at: [f64; 2], order: [f64; 2]) -> Option<Nearest> {
     let node = (whole(order[0])?, whole(order[1])?);
     let (h, k) = (f64::from(node.0), f64::from(node.1));
     let place = warp.place(h, k);
@@ -164,12 +168,16 @@ pub(super) fn nearest_node(warp: &Warp, at: [f64; 2]) -> Option<Nearest> {
 
 type Assignment = (Vec<Option<(i32, i32)>>, Vec<(usize, usize)>);
 
-fn assign(scene: &Scene<'_>, among: &[usize], warp: &Warp, step: f64, line: bool) -> Assignment {
+fn assign(scene: &Scene<'_>, among: &[usize], warp: &Warp, step: f64, line: bool, orders: &mut [[f64; 2]]) -> Assignment {
     let mut node = vec![None; scene.at.len()];
     let mut holder: BTreeMap<(i32, i32), (usize, f64)> = BTreeMap::new();
     let mut beaten = Vec::new();
     for &i in among {
-        let Some(near) = nearest_node(warp, scene.at[i]) else { continue };
+        let Some(near) = warp.order_from(scene.at[i], orders[i]).and_then(|o| node_near(warp, scene.at[i], o)) else {
+            orders[i] = [0.0; 2];
+            continue;
+        };
+        orders[i] = near.order;
         if near.map_variance > (KNOWN_WELL * step).powi(2) || (line && near.node.1 != 0) {
             continue;
         }

@@ -139,6 +139,11 @@ pub enum Warning {
         /// The other node, in orders of the chosen numbering.
         other: (i32, i32),
     },
+    /// The brightest point of all carries no order, though it usually is the zero order.
+    BrightestUnexplained {
+        /// That point.
+        point: usize,
+    },
     /// So few points that nothing checks the result.
     FewPoints {
         /// Points with an order.

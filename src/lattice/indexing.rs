@@ -3,7 +3,7 @@
 use super::{
     Evidence, Expected, IndexOptions, Indexed, LatticeError, Point, RunnerUp, Shape, Warning,
     cell::norm,
-    contest::{Candidate, candidates, cell_size, nearest_whole},
+    contest::{Candidate, candidates, cell_size, nearest_whole, with_zero},
     evidence::{Score, row_evidence},
     grow::{Growth, Scene, Start, grow},
     rejected::explain_rejected,
@@ -54,7 +54,8 @@ fn settle(scene: &Scene<'_>, best: &Candidate, all: &[usize]) -> Option<Candidat
     let mut zero = choose_zero(scene, &growth)?;
     // The middle of symmetry lies between the nodes: the visible orders are the odd ones of a net twice as dense.
     if zero.doubled.0 % 2 != 0 || zero.doubled.1 % 2 != 0 {
-        growth = grow(scene, all, &halved(&growth, zero.doubled, scene)?)?;
+        let dense = halved(&growth, zero.doubled, scene).and_then(|start| grow(scene, all, &start));
+        growth = dense.unwrap_or(growth);
         zero = choose_zero(scene, &growth)?;
     }
     for _ in 0..3 {
@@ -66,7 +67,7 @@ fn settle(scene: &Scene<'_>, best: &Candidate, all: &[usize]) -> Option<Candidat
         zero = choose_zero(scene, &growth)?;
     }
     let (growth, score) = trimmed(scene, growth, all.len())?;
-    Some(Candidate { growth, score, zero })
+    with_zero(scene, growth, score)
 }
 
 fn halved(growth: &Growth, doubled: (i32, i32), scene: &Scene<'_>) -> Option<Start> {
@@ -82,12 +83,16 @@ fn halved(growth: &Growth, doubled: (i32, i32), scene: &Scene<'_>) -> Option<Sta
     if growth.line { Some(Start { origin, steps, sd, line: true }) } else { super::relatives::reduced_start(origin, steps, sd) }
 }
 
+/// Most that brightness and symmetry about the zero order may add where the places alone fall short of the evidence asked for, nats.
+const BRIGHTNESS_SAY: f64 = 6.0;
+
 /// The evidence that falls short of what is asked for, if any does.
 fn shortfall(scene: &Scene<'_>, settled: &Candidate) -> Option<f64> {
     let needed = scene.options.least_evidence;
     let least_points = if settled.growth.line { 3 } else { 4 };
-    if settled.score.explained < least_points || settled.score.log_evidence < needed {
-        return Some(settled.score.log_evidence);
+    let evidence = settled.score.log_evidence + settled.zero.score.clamp(0.0, BRIGHTNESS_SAY);
+    if settled.score.explained < least_points || evidence < needed {
+        return Some(evidence);
     }
     if settled.growth.line {
         let row = row_evidence(scene, &settled.growth).unwrap_or(f64::MIN_POSITIVE);
@@ -111,6 +116,9 @@ fn report(points: &[Point], usable: &[usize], scene: &Scene<'_>, settled: &Candi
     let explained = explain_rejected(points, usable, scene, settled);
     let mut warnings = super::rejected::numbering_warnings(scene, growth);
     warnings.extend(zero_warnings(settled, flip));
+    if growth.node.first().is_some_and(Option::is_none) {
+        warnings.push(Warning::BrightestUnexplained { point: usable[0] });
+    }
     warnings.extend(explained.warnings);
     if let Some(rival) = &runner_up {
         warnings.extend(rival_warning(settled, rival));
@@ -236,41 +244,4 @@ fn typical_spacing(at: &[[f64; 2]]) -> f64 {
         head.iter().enumerate().filter(|(j, _)| *j != i).map(|(_, q)| norm([p[0] - q[0], p[1] - q[1]])).fold(f64::MAX, f64::min)
     };
     median(head.iter().enumerate().map(nearest))
-}
-
-#[cfg(test)]
-pub(super) fn debug(points: &[Point], visible: &dyn Fn([f64; 2]) -> bool, truth: &[Option<(i32, i32)>]) {
-    let options = IndexOptions::default();
-    let usable = usable_in_canonical_order(points);
-    let scene = scene(points, &usable, &options, visible);
-    let all: Vec<usize> = (0..usable.len()).collect();
-    let bright = all.len().min(120);
-    println!(
-        "{} points, {} true in bright {}; slack {} area {} extent {}",
-        all.len(),
-        usable[..bright].iter().filter(|&&i| truth[i].is_some()).count(),
-        bright,
-        scene.slack,
-        scene.area,
-        scene.extent
-    );
-    for c in candidates(&scene, &all) {
-        let s = c.growth.fit.warp.steps(0.0, 0.0);
-        let good = c.growth.node.iter().enumerate().filter(|(i, n)| n.is_some() && truth[usable[*i]].is_some()).count();
-        println!(
-            "line {} total {:.1} ev {:.1} zero {:.1} {:?} explained {} (true {good}) nodes {} step {:.4} area {:.3e} u {:.5}",
-            c.growth.line,
-            c.total(),
-            c.score.log_evidence,
-            c.zero.score,
-            c.zero.doubled,
-            c.score.explained,
-            c.score.nodes,
-            c.growth.step,
-            (s[0][0] * s[1][1] - s[0][1] * s[1][0]).abs(),
-            scene.u[0]
-        );
-    }
-    let made = settle(&scene, &candidates(&scene, &all)[0], &all);
-    println!("settled {}", made.is_some());
 }

@@ -102,7 +102,8 @@ fn make(recipe: &Recipe, seed: u64) -> Made {
             }
         }
     }
-    let count = (recipe.junk * made.points.len() as f64).round() as usize;
+    let share = recipe.junk * evidence::real(made.points.len());
+    let count = (0_usize..).take_while(|&n| evidence::real(n) + 0.5 < share).count();
     let strewn = (0..count).map(|_| {
         let at = [random.random_range(window[0]..window[1]), random.random_range(window[2]..window[3])];
         Point::new(at, u, 10.0_f64.powf(random.random_range(faintest.log10()..0.0)))
@@ -168,94 +169,183 @@ fn fault(made: &Made, line: bool, found: &Indexed) -> Option<String> {
     Some("nothing to compare".into())
 }
 
-/// Numbers patterns of many seeds; gives the share at fault and the faults.
-fn trial(name: &str, recipe: &Recipe, seeds: std::ops::Range<u64>) -> (usize, Vec<String>) {
-    let (mut tried, mut faults) = (0, Vec::new());
-    for seed in seeds {
-        let made = make(recipe, seed);
-        if !decidable(&made, recipe.line) {
-            continue;
-        }
+/// Patterns by a recipe over many seeds: at most one in `one_in` may be numbered wrongly or refused, and none without a warning or an error.
+fn numbered(name: &str, recipe: &Recipe, seeds: u64, one_in: usize) {
+    let (mut tried, mut faults, mut silent) = (0, Vec::new(), Vec::new());
+    for made in (0..seeds).map(|seed| make(recipe, seed)).filter(|m| decidable(m, recipe.line)) {
         tried += 1;
-        let told = match made.index() {
-            Ok(found) => fault(&made, recipe.line, &found).map(|f| format!("{f}; {:?} {:?}", found.evidence, found.warnings)),
-            Err(error) => Some(error.to_string()),
-        };
-        faults.extend(told.map(|f| format!("{name} seed {seed} ({} points): {f}", made.points.len())));
+        match made.index() {
+            Ok(found) => {
+                let told = fault(&made, recipe.line, &found);
+                let wrong = told.as_ref().is_some_and(|f| !f.contains("kept"));
+                if wrong && found.warnings.is_empty() {
+                    silent.push(format!("{told:?} {:?}", found.evidence));
+                }
+                faults.extend(told);
+            }
+            Err(error) => faults.push(error.to_string()),
+        }
     }
     println!("{name}: {} of {tried} at fault", faults.len());
-    (tried, faults)
+    assert!(tried as u64 >= seeds.div_ceil(2), "{name}: only {tried} decidable patterns");
+    assert!(faults.len() * one_in <= tried, "{name}: {} of {tried} at fault: {faults:?}", faults.len());
+    assert!(silent.is_empty(), "{name}: wrong without a warning: {silent:?}");
 }
 
 #[test]
-fn survey() {
-    let n: u64 = std::env::var("SURVEY").ok().and_then(|s| s.parse().ok()).unwrap_or(40);
-    let recipes = [
-        ("plain", PLAIN),
-        ("junk", Recipe { junk: 1.5, ..PLAIN }),
-        ("ghost", Recipe { ghost: 0.1, junk: 0.3, ..PLAIN }),
-        ("hidden", Recipe { hidden_zero: true, ..PLAIN }),
-        ("odd", Recipe { odd_only: true, ..PLAIN }),
-        ("odd hidden", Recipe { odd_only: true, hidden_zero: true, ..PLAIN }),
-        ("line", Recipe { line: true, ..PLAIN }),
-        ("line junk", Recipe { line: true, junk: 0.5, ..PLAIN }),
-        ("line hidden", Recipe { line: true, hidden_zero: true, ..PLAIN }),
-        ("line odd", Recipe { line: true, odd_only: true, ..PLAIN }),
-        ("line ghost", Recipe { line: true, ghost: 0.1, ..PLAIN }),
-        ("bent", Recipe { distortion: 0.06, ..PLAIN }),
-    ];
-    for (name, recipe) in recipes {
-        let start = std::time::Instant::now();
-        let (tried, faults) = trial(name, &recipe, 0..n);
-        println!("   {:.1} ms each", start.elapsed().as_secs_f64() * 1e3 / (tried.max(1) as f64));
-        for f in faults.iter().take(4) {
-            println!("   {f}");
+fn planes_of_every_kind() {
+    numbered("plain", &PLAIN, 40, 40);
+    numbered("bent by 6 %", &Recipe { distortion: 0.06, ..PLAIN }, 20, 20);
+    numbered("odd orders only", &Recipe { odd_only: true, ..PLAIN }, 30, 30);
+}
+
+#[test]
+fn planes_under_junk_and_ghosts() {
+    numbered("60 % junk", &Recipe { junk: 1.5, ..PLAIN }, 20, 20);
+    numbered("ghost", &Recipe { ghost: 0.1, junk: 0.3, ..PLAIN }, 40, 15);
+}
+
+#[test]
+fn planes_without_zero_order() {
+    numbered("zero in a hole", &Recipe { hidden_zero: true, ..PLAIN }, 40, 20);
+    numbered("odd orders only, zero in a hole", &Recipe { odd_only: true, hidden_zero: true, ..PLAIN }, 40, 15);
+}
+
+#[test]
+fn lines() {
+    let line = Recipe { line: true, ..PLAIN };
+    numbered("line", &line, 60, 50);
+    numbered("line with junk", &Recipe { junk: 0.5, ..line }, 40, 30);
+    numbered("line, odd orders only", &Recipe { odd_only: true, ..line }, 60, 30);
+    numbered("line, zero in a hole", &Recipe { hidden_zero: true, ..line }, 60, 20);
+    numbered("line with a ghost", &Recipe { ghost: 0.1, ..line }, 40, 30);
+}
+
+/// Points strewn by chance: evenly, clustered like stars, along a row.
+fn strewn(kind: usize, count: usize, seed: u64) -> Vec<Point> {
+    let random = &mut ChaCha8Rng::seed_from_u64(seed);
+    let mut place = || match kind {
+        0 => [random.random_range(-0.27..0.27), random.random_range(-0.2..0.2)],
+        1 => [0.08 * normal(random), 0.08 * normal(random)],
+        _ => {
+            let t = random.random_range(-0.25..0.25);
+            [t, 0.3 * t + 2e-4 * normal(random)]
+        }
+    };
+    let places: Vec<[f64; 2]> = (0..count).map(|_| place()).collect();
+    places.into_iter().map(|at| Point::new(at, 2e-4, 10.0_f64.powf(random.random_range(-2.0..1.0)))).collect()
+}
+
+/// None of 720 sets of chance points passes for a lattice.
+/// (Longer runs with other seeds gave the rates stated at [`IndexOptions::least_evidence`].)
+#[test]
+fn chance_is_refused() {
+    for kind in 0..3 {
+        for (count, seeds) in [(3, 80), (4, 60), (6, 40), (10, 30), (25, 20), (80, 10)] {
+            for seed in 0..seeds {
+                let told = index(&strewn(kind, count, seed), &IndexOptions::default(), &|at| at[0].abs() < 0.3 && at[1].abs() < 0.25);
+                assert!(told.is_err(), "kind {kind}, {count} points, seed {seed}: {told:?}");
+            }
         }
     }
 }
 
 #[test]
-fn debug_one() {
-    let (seed, recipe) = match std::env::var("DEBUG_CASE").as_deref() {
-        Ok("line") => (14, Recipe { line: true, junk: 0.5, ..PLAIN }),
-        _ => (7, Recipe { junk: 1.5, ..PLAIN }),
+fn few_points() {
+    let everywhere = |_: [f64; 2]| true;
+    let row = |n: i32| {
+        (-n..=n).map(|h| Point::new([0.05 * f64::from(h), 0.01 * f64::from(h)], 1e-4, if h == 0 { 50.0 } else { 1.0 })).collect::<Vec<_>>()
     };
-    let made = make(&recipe, seed);
-    super::indexing::debug(&made.points, &|at| made.sees(at), &made.truth);
+    let options = IndexOptions::default();
+    assert_eq!(index(&[], &options, &everywhere), Err(LatticeError::TooFewSpots { found: 0, needed: 3 }));
+    assert_eq!(index(&row(1)[..2], &options, &everywhere), Err(LatticeError::TooFewSpots { found: 2, needed: 3 }));
+    let three = index(&row(1), &options, &everywhere).unwrap();
+    assert_eq!((three.shape, three.zero_seen), (Shape::Line, Some(1)));
+    assert!(three.warnings.contains(&Warning::FewPoints { explained: 3 }));
+    assert_eq!(index(&row(30), &options, &everywhere).unwrap().evidence.explained, 61);
+    let plane = IndexOptions { expected: Expected::Plane, ..options.clone() };
+    assert!(matches!(index(&row(3), &plane, &everywhere), Err(LatticeError::NoLattice { .. })), "a row is no plane");
+    let mut odd = row(3);
+    odd[2].at[0] = f64::NAN;
+    odd[3].weight = f64::INFINITY;
+    let found = index(&odd, &options, &everywhere);
+    assert!(found.is_err() || found.is_ok_and(|f| f.rejected.contains(&(2, Reason::NotANumber))));
+}
+
+/// Same place for all points, and two places only: refused without harm.
+#[test]
+fn heaps_of_points() {
+    for places in [[[0.1, 0.1]; 2], [[0.0, 0.0], [0.1, 0.0]]] {
+        let points: Vec<Point> = (0..40).map(|i| Point::new(places[i % 2], 1e-4, 1.0)).collect();
+        assert!(index(&points, &IndexOptions::default(), &|_| true).is_err());
+    }
 }
 
 #[test]
-fn chance_survey() {
-    let n: u64 = std::env::var("CHANCE").ok().and_then(|s| s.parse().ok()).unwrap_or(50);
-    for (name, kind) in [("even", 0), ("clustered", 1), ("row", 2)] {
-        for count in [3_usize, 4, 5, 6, 8, 12, 20, 40, 80, 150] {
-            let start = std::time::Instant::now();
-            let mut accepted = Vec::new();
-            for seed in 0..n {
-                let random = &mut ChaCha8Rng::seed_from_u64(seed * 1000 + count as u64);
-                let points: Vec<Point> = (0..count)
-                    .map(|_| {
-                        let at = match kind {
-                            0 => [random.random_range(-0.27..0.27), random.random_range(-0.2..0.2)],
-                            1 => [0.08 * normal(random), 0.08 * normal(random)],
-                            _ => {
-                                let t = random.random_range(-0.25..0.25);
-                                [t, 0.3 * t + 2e-4 * normal(random)]
-                            }
-                        };
-                        Point::new(at, 2e-4, 10.0_f64.powf(random.random_range(-2.0..1.0)))
-                    })
-                    .collect();
-                if let Ok(found) = index(&points, &IndexOptions::default(), &|at| at[0].abs() < 0.3 && at[1].abs() < 0.25) {
-                    accepted.push((seed, found.shape, found.evidence.explained, found.evidence.log_evidence.round()));
-                }
+fn two_lattices_in_one_picture() {
+    let mut points = Vec::new();
+    for h in -4..=4 {
+        for k in -4..=4 {
+            let (x, y) = (f64::from(h), f64::from(k));
+            let bright = (-0.15 * (x * x + y * y)).exp();
+            points.push(Point::new([0.04 * x, 0.041 * y], 1e-4, bright * if (h, k) == (0, 0) { 30.0 } else { 1.0 }));
+            if (h, k) != (0, 0) {
+                points.push(Point::new([0.027 * x - 0.011 * y, 0.011 * x + 0.027 * y], 1e-4, 0.4 * bright));
             }
-            println!(
-                "{name} {count}: {} of {n}, {:.1} ms each {:?}",
-                accepted.len(),
-                start.elapsed().as_secs_f64() * 1e3 / n as f64,
-                accepted.iter().take(5).collect::<Vec<_>>()
+        }
+    }
+    let found = index(&points, &IndexOptions::default(), &|at| at[0].abs() < 0.2 && at[1].abs() < 0.2).unwrap();
+    let second = found.warnings.iter().find_map(|w| if let Warning::SecondLattice { g, points } = w { Some((*g, *points)) } else { None });
+    let (g, members) = second.unwrap();
+    assert!(members >= 60 && found.evidence.explained >= 75, "{members} and {}", found.evidence.explained);
+    // Either may come first: they share the zero order and have as many spots.
+    let mut steps = [g[0][0].hypot(g[0][1]), found.g[0][0].hypot(found.g[0][1])];
+    steps.sort_by(f64::total_cmp);
+    assert!((steps[0] - 0.027_f64.hypot(0.011)).abs() < 3e-4 && (steps[1] - 0.04).abs() < 3e-4, "steps {steps:?}");
+}
+
+/// Turned, mirrored, scaled, shifted, listed in another order: the same points carry orders, and neighbours stay neighbours.
+#[test]
+fn what_must_not_matter_does_not_matter() {
+    type Change = fn([f64; 2]) -> [f64; 2];
+    let changes: [(&str, f64, Change); 5] = [
+        ("turned", 1.0, |p| [0.6 * p[0] - 0.8 * p[1], 0.8 * p[0] + 0.6 * p[1]]),
+        ("turned by 90 degrees", 1.0, |p| [-p[1], p[0]]),
+        ("mirrored", 1.0, |p| [-p[0], p[1]]),
+        ("scaled", 2.5, |p| [2.5 * p[0], 2.5 * p[1]]),
+        ("shifted", 1.0, |p| [p[0] + 0.3, p[1] - 0.2]),
+    ];
+    for seed in 0..6 {
+        let made = make(&Recipe { junk: 0.3, line: seed % 3 == 2, ..PLAIN }, seed);
+        let base = made.index().unwrap();
+        let explained = |f: &Indexed| f.order.iter().map(Option::is_some).collect::<Vec<bool>>();
+        for (name, factor, change) in changes {
+            let moved: Vec<Point> = made.points.iter().map(|p| Point { at: change(p.at), u: factor * p.u, ..*p }).collect();
+            let options = IndexOptions { bend: IndexOptions::default().bend / factor, ..IndexOptions::default() };
+            // The frame moves along: a place is visible if the place that it came from was.
+            let back = |q: [f64; 2]| match name {
+                "turned" => [0.6 * q[0] + 0.8 * q[1], -0.8 * q[0] + 0.6 * q[1]],
+                "turned by 90 degrees" => [q[1], -q[0]],
+                "mirrored" => [-q[0], q[1]],
+                "scaled" => [q[0] / 2.5, q[1] / 2.5],
+                _ => [q[0] - 0.3, q[1] + 0.2],
+            };
+            let found = index(&moved, &options, &|at| made.sees(back(at))).unwrap();
+            assert_eq!(
+                (found.shape, found.zero_seen, explained(&found)),
+                (base.shape, base.zero_seen, explained(&base)),
+                "{name}, seed {seed}"
+            );
+            let area = |f: &Indexed| (f.g[0][0] * f.g[1][1] - f.g[0][1] * f.g[1][0]).abs();
+            assert!(
+                (area(&found) - factor * factor * area(&base)).abs() <= 1e-6 * factor * factor * area(&base),
+                "{name}, seed {seed}: cell changed"
             );
         }
+        let mut listed: Vec<usize> = (0..made.points.len()).collect();
+        listed.reverse();
+        let shuffled: Vec<Point> = listed.iter().map(|&i| made.points[i]).collect();
+        let found = index(&shuffled, &IndexOptions::default(), &|at| made.sees(at)).unwrap();
+        assert_eq!(listed.iter().map(|&i| base.order[i]).collect::<Vec<_>>(), found.order, "listed backwards, seed {seed}");
     }
 }

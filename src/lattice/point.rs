@@ -50,13 +50,15 @@ pub struct IndexOptions {
     /// Place where the zero order should be, if known.
     pub zero_hint: Option<ZeroHint>,
     /// How rough the geometry is: relative change of the local scale per unit of direction cosine (1/cosine).
-    /// 0.1 covers a tilt wrong by a degree or two and a throw wrong by a few per cent; 0.3 and more suits a photo without target.
+    /// 0.1 covers a tilt wrong by a degree or two and a throw wrong by a few per cent; 0.15 a throw wrong by 15 % and tilts by 4 degrees
+    /// (tested). Much larger values leave wide patterns with few spots (steps above 0.3) undecided.
     /// Affine errors (scale, shear) cost nothing and are not meant here.
     pub bend: f64,
     /// Least standard deviation of a point about its node, as a share of the typical distance between neighbouring points.
     /// It belongs to the picture and not to the lattice tried, or a denser lattice would look more precise.
     pub node_slack: f64,
-    /// Log evidence over chance (nats) below which no lattice is reported.
+    /// Log evidence over chance (nats) below which no lattice is reported. Of 14 000 sets of 3 to 25 points strewn evenly or in a
+    /// cluster, none passed at 6; of 7000 sets strewn along a straight row, 3 did (see the chance test).
     pub least_evidence: f64,
     /// Number of brightest points from which lattices are guessed; bounds the pair work.
     pub seed_points: usize,
@@ -64,6 +66,6 @@ pub struct IndexOptions {
 
 impl Default for IndexOptions {
     fn default() -> Self {
-        Self { expected: Expected::Auto, zero_hint: None, bend: 0.1, node_slack: 0.01, least_evidence: 8.0, seed_points: 120 }
+        Self { expected: Expected::Auto, zero_hint: None, bend: 0.1, node_slack: 0.01, least_evidence: 7.0, seed_points: 120 }
     }
 }

@@ -5,7 +5,7 @@ use std::collections::BTreeMap;
 use super::{
     Point, Reason, Warning,
     cell::{dot, minus, norm},
-    contest::{Candidate, candidates},
+    contest::{Candidate, candidates, over_all},
     evidence::real,
     grow::{Growth, KNOWN_WELL, Nearest, Scene, nearest_node},
     seed::median,
@@ -145,12 +145,19 @@ fn poisson_tail(n: usize, mean: f64) -> f64 {
     (1.0 - below).max(0.0)
 }
 
+/// Brightest loose points among which a second lattice is looked for.
+const SECOND_SEEDS: usize = 60;
+
 /// A lattice among the loose points that owes nothing to the first one.
 fn second_lattice(scene: &Scene<'_>, settled: &Candidate, loose: &[usize]) -> Option<([[f64; 2]; 2], Vec<usize>)> {
     if loose.len() < 6 {
         return None;
     }
-    let best = candidates(scene, loose).into_iter().next()?;
+    let bright = &loose[..loose.len().min(SECOND_SEEDS)];
+    let mut best = candidates(scene, bright).into_iter().next()?;
+    if bright.len() < loose.len() {
+        best = over_all(scene, loose, &best)?;
+    }
     let members: Vec<usize> = (0..scene.at.len()).filter(|&i| best.growth.node[i].is_some()).collect();
     let convincing = best.score.log_evidence > 2.5 * scene.options.least_evidence && members.len() >= 6;
     let shared = best.growth.line && !settled.growth.line;

@@ -15,7 +15,7 @@ const NEIGHBOURS: usize = 16;
 /// Recurring differences that serve as steps.
 const RECURRING: usize = 10;
 /// Bases kept per origin after the quick count.
-const KEPT: usize = 6;
+const KEPT: usize = 5;
 /// Points around the origin used in the quick count.
 const QUICK_POINTS: usize = 40;
 
@@ -44,7 +44,7 @@ pub(super) fn starts(scene: &Scene<'_>, bright: &[usize], line: bool) -> Vec<Sta
 pub(super) fn start(scene: &Scene<'_>, origin: [f64; 2], steps: [[f64; 2]; 2], line: bool) -> Start {
     let long = if line { norm(steps[0]) } else { norm(steps[0]).max(norm(steps[1])) };
     let typical_u = median(scene.u.iter().copied());
-    Start { origin, steps, sd: typical_u.hypot(scene.options.bend * long * long), line }
+    Start { origin, steps, sd: typical_u.hypot(0.5 * scene.options.bend * long * long), line }
 }
 
 /// Points in order of distance from a place.
@@ -85,7 +85,7 @@ fn recurring_steps(scene: &Scene<'_>, bright: &[usize]) -> Vec<[f64; 2]> {
     all.sort_by(|a, b| norm(*a).total_cmp(&norm(*b)));
     let votes = |v: [f64; 2]| all.iter().filter(|w| same_step(scene, v, **w)).count();
     let mut voted: Vec<(usize, [f64; 2])> = all.iter().map(|v| (votes(*v), *v)).collect();
-    voted.sort_by(|a, b| b.0.cmp(&a.0));
+    voted.sort_by_key(|v| std::cmp::Reverse(v.0));
     let mut kept: Vec<[f64; 2]> = Vec::new();
     for (_, v) in voted {
         if kept.len() == RECURRING {
@@ -154,7 +154,7 @@ fn quick_count(scene: &Scene<'_>, around: &[[f64; 2]], start: &Start) -> f64 {
             if start.line { [dot(*v, p) / pp, 0.0] } else { [(v[0] * q[1] - v[1] * q[0]) / area, (p[0] * v[1] - p[1] * v[0]) / area] };
         let node = [order[0].round(), order[1].round()];
         let off = [v[0] - node[0] * p[0] - node[1] * q[0], v[1] - node[0] * p[1] - node[1] * q[1]];
-        let gate = 3.0 * base * (1.0 + 0.7 * norm(node)) + scene.options.bend * dot(*v, *v);
+        let gate = 3.0 * base * (1.0 + 0.7 * norm(node)) + 0.5 * scene.options.bend * dot(*v, *v);
         let cell = if start.line { pp } else { area.abs() };
         if gate < 0.3 * shortest && norm(off) < gate {
             total += (cell / (std::f64::consts::PI * gate * gate)).ln().max(0.0);

@@ -6,6 +6,8 @@
 
 use nalgebra::{Cholesky, SMatrix, SVector};
 
+/// Newton stops at steps of this many orders; it converges quadratically, so the last step is far more accurate.
+const SETTLED: f64 = 1e-3;
 /// Terms 1, h, k, h², hk, k², h³, h²k, hk², k³.
 const TERMS: usize = 10;
 type Vector = SVector<f64, TERMS>;
@@ -105,7 +107,12 @@ impl Warp {
     /// Real-valued order whose place is `at`; for a line the order of the nearest place on the row (k = 0).
     /// Newton's method from the affine map; none where it does not settle (folded map far outside).
     pub(super) fn order_at(&self, at: [f64; 2]) -> Option<[f64; 2]> {
-        let (mut h, mut k) = (0.0_f64, 0.0_f64);
+        self.order_from(at, [0.0; 2])
+    }
+
+    /// [`Self::order_at`] from a guess; a good one halves the work.
+    pub(super) fn order_from(&self, at: [f64; 2], guess: [f64; 2]) -> Option<[f64; 2]> {
+        let [mut h, mut k] = guess;
         for _ in 0..12 {
             let place = self.place(h, k);
             let miss = [at[0] - place[0], at[1] - place[1]];
@@ -115,7 +122,7 @@ impl Warp {
             if !(h.abs() < 1e6 && k.abs() < 1e6) {
                 return None;
             }
-            if dh.abs() + dk.abs() < 1e-6 {
+            if dh.abs() + dk.abs() < SETTLED {
                 return Some([h, k]);
             }
         }
