@@ -23,12 +23,16 @@ pub(super) struct Candidate {
 impl Candidate {
     /// What candidates compete by: evidence of the places plus that of the zero order.
     pub(super) fn total(&self) -> f64 {
-        self.score.log_evidence + self.zero.score.clamp(-ZERO_SAY, ZERO_SAY)
+        let brightest = if self.growth.node.first().is_some_and(Option::is_some) { BRIGHTEST_HELD } else { 0.0 };
+        self.score.log_evidence + self.zero.score.clamp(-ZERO_SAY, ZERO_SAY) + brightest
     }
 }
 
 /// Most that the zero order may say for or against a lattice, nats. Its symmetry counts occupied nodes once more, so it must not outweigh the places.
 const ZERO_SAY: f64 = 8.0;
+
+/// Credit for holding the brightest point of the scene (points are listed brightest first): between a pattern and its fainter copy, the pattern.
+const BRIGHTEST_HELD: f64 = 4.0;
 
 /// Lattices grown in full per shape before their relatives are tried.
 const FINALISTS: usize = 4;
@@ -69,12 +73,26 @@ pub(super) fn candidates(scene: &Scene<'_>, among: &[usize]) -> Vec<Candidate> {
     if among.len() <= bright.len() {
         return parents_first(scene, ranked);
     }
-    parents_first(scene, distinct(ranked.iter().take(FULL_ROUND).filter_map(|c| over_all(scene, among, c)).collect()))
+    let mut full: Vec<Candidate> = ranked.iter().take(FULL_ROUND).filter_map(|c| over_all(scene, among, c)).collect();
+    let best = full.iter().max_by(|a, b| a.total().total_cmp(&b.total())).cloned();
+    full.extend(best.into_iter().flat_map(|b| coarser(scene, &b, among.len())));
+    parents_first(scene, distinct(full))
 }
 
 /// The same lattice over all points.
 fn over_all(scene: &Scene<'_>, among: &[usize], candidate: &Candidate) -> Option<Candidate> {
     judge(scene, regrow(scene, &candidate.growth, among, nearest_whole(candidate.zero.doubled))?, among.len())
+}
+
+/// Coarser relatives over the points that a lattice holds: had strays at its in-between nodes hidden them, they show now.
+fn coarser(scene: &Scene<'_>, candidate: &Candidate, total: usize) -> Vec<Candidate> {
+    let growth = &candidate.growth;
+    let held: Vec<usize> = (0..growth.node.len()).filter(|&i| growth.node[i].is_some()).collect();
+    relative_starts(&growth.fit.warp, nearest_whole(candidate.zero.doubled), growth.line, scene.slack)
+        .iter()
+        .filter_map(|s| grow(scene, &held, s))
+        .filter_map(|g| judge(scene, g, total))
+        .collect()
 }
 
 /// Best first, each lattice once.

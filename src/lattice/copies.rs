@@ -21,6 +21,8 @@ const OWN_EVIDENCE: f64 = 0.25;
 const COARSER: f64 = 1.3;
 /// Factor two in brightness, nats.
 const FAINTER: f64 = std::f64::consts::LN_2;
+/// Two copies were dimmed by the same factor if their ratios agree this well (nats).
+const SAME_FACTOR: f64 = 0.6;
 /// How far above the faintest orders a point must be before its missing partner counts (nats).
 const ABOVE_FAINTEST: f64 = 0.7;
 
@@ -56,7 +58,25 @@ fn extra_points_are_copies(scene: &Scene<'_>, dense: &Candidate, parent: &Candid
     let node_at = |place: [f64; 2]| nearest_node(&dense.growth.fit.warp, place).map(|n| n.node);
     let (of_parent, of_dense) = (node_at(zero_of(parent)), node_at(zero_of(dense)));
     // Where the parent's zero order outshines all others it is beyond doubt; else the denser net may be right about its own.
-    lonely(of_parent) && (outshines(scene, parent, &kept) || lonely(of_dense))
+    let shining = outshines(scene, parent, &kept);
+    lonely(of_parent) && (shining || lonely(of_dense)) || shining && of_parent.is_some_and(|zero| repeats(scene, dense, zero, &extra))
+}
+
+/// The extra points repeat the pattern displaced by one offset: each is fainter than its parent by the same factor, the zero order's copy included.
+fn repeats(scene: &Scene<'_>, dense: &Candidate, zero: (i32, i32), extra: &[usize]) -> bool {
+    let brightest = extra.iter().max_by(|&&i, &&j| scene.ln_weight[i].total_cmp(&scene.ln_weight[j]));
+    let Some(copy_of_zero) = brightest.and_then(|&i| dense.growth.node[i]) else { return false };
+    let offset = (copy_of_zero.0 - zero.0, copy_of_zero.1 - zero.1);
+    let by_node: std::collections::BTreeMap<(i32, i32), usize> =
+        dense.growth.node.iter().enumerate().filter_map(|(i, n)| n.map(|n| (n, i))).collect();
+    let parent = |n: (i32, i32)| by_node.get(&(n.0 - offset.0, n.1 - offset.1)).copied();
+    let factor = |i: usize| Some(scene.ln_weight[i] - scene.ln_weight[parent(dense.growth.node[i]?)?]);
+    let factors: Vec<f64> = extra.iter().filter_map(|&i| factor(i)).collect();
+    let typical = median(factors.iter().copied());
+    let like = |f: f64| (f - typical).abs() < SAME_FACTOR;
+    let of_zero = by_node.get(&copy_of_zero).and_then(|&i| factor(i));
+    let alike = factors.iter().filter(|f| like(**f)).count();
+    extra.len() >= 3 && typical < -FAINTER && of_zero.is_some_and(like) && 5 * alike >= 4 * extra.len()
 }
 
 /// The extra points as a set are fainter than the parent's: their brightest, and their third brightest (a copy of the zero order may be bright).

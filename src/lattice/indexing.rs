@@ -91,7 +91,7 @@ fn shortfall(scene: &Scene<'_>, settled: &Candidate) -> Option<f64> {
     }
     if settled.growth.line {
         let row = row_evidence(scene, &settled.growth).unwrap_or(f64::MIN_POSITIVE);
-        let asked = (0.5 * needed).min(1.2 * (super::evidence::real(settled.score.explained) - 2.0));
+        let asked = (0.35 * needed).min(0.8 * (super::evidence::real(settled.score.explained) - 2.0));
         return (row < asked).then_some(row);
     }
     None
@@ -166,7 +166,9 @@ fn zero_warnings(settled: &Candidate, flip: i32) -> Vec<Warning> {
 fn runner_up(settled: &Candidate, ranked: &[Candidate]) -> Option<RunnerUp> {
     let mine = cell_size(&settled.growth);
     let differs = |c: &&Candidate| c.growth.line != settled.growth.line || (cell_size(&c.growth) / mine).ln().abs() > 0.2;
-    let rival = ranked.iter().find(differs)?;
+    // A denser net that lost because it holds displaced copies of the pattern is no rival.
+    let best = ranked.first()?.total();
+    let rival = ranked.iter().filter(|c| c.total() <= best).find(differs)?;
     let line = rival.growth.line;
     let steps = rival.growth.fit.warp.steps(0.0, 0.0);
     Some(RunnerUp {
@@ -175,7 +177,7 @@ fn runner_up(settled: &Candidate, ranked: &[Candidate]) -> Option<RunnerUp> {
         cell_ratio: cell_size(&rival.growth) / mine,
         explained: rival.score.explained,
         // Compared on the seed points, where all candidates were judged.
-        log_evidence: settled.score.log_evidence + rival.total() - ranked.first()?.total(),
+        log_evidence: settled.score.log_evidence + rival.total() - best,
     })
 }
 

@@ -83,6 +83,10 @@ fn make(recipe: &Recipe, seed: u64) -> Made {
     let reach = if recipe.line { 0 } else { 40 };
     for h in -40..=40 {
         for k in -reach..=reach {
+            let flat = [0, 1].map(|i| f64::from(h) * g[0][i] + f64::from(k) * g[1][i]);
+            if flat[0].hypot(flat[1]) > 0.45 {
+                continue; // The made distortion folds back further out.
+            }
             let place = warp([0, 1].map(|i| f64::from(h) * g[0][i] + f64::from(k) * g[1][i]));
             let envelope = sinc2(open[0] * f64::from(h)) * sinc2(open[1] * f64::from(k));
             let bright = envelope * (1.0 + 0.3 * (2.0 * random.random::<f64>() - 1.0)) * if (h, k) == (0, 0) { zero_factor } else { 1.0 };
@@ -133,7 +137,9 @@ fn fault(made: &Made, line: bool, found: &Indexed) -> Option<String> {
     let pairs: Vec<((i32, i32), (i32, i32))> = made.truth.iter().zip(&found.order).filter_map(|(t, f)| Some(((*t)?, (*f)?))).collect();
     let orders = made.truth.iter().flatten().count();
     if pairs.len() + orders / 20 + 1 < orders {
-        return Some(format!("{} of {orders} orders kept", pairs.len()));
+        let lost: Vec<_> =
+            found.rejected.iter().filter(|(i, _)| made.truth[*i].is_some()).take(6).map(|(i, r)| (made.truth[*i], r)).collect();
+        return Some(format!("{} of {orders} orders kept, lost {lost:?}", pairs.len()));
     }
     for i in 0..pairs.len() {
         for j in i + 1..pairs.len() {
@@ -216,4 +222,40 @@ fn debug_one() {
     };
     let made = make(&recipe, seed);
     super::indexing::debug(&made.points, &|at| made.sees(at), &made.truth);
+}
+
+#[test]
+fn chance_survey() {
+    let n: u64 = std::env::var("CHANCE").ok().and_then(|s| s.parse().ok()).unwrap_or(50);
+    for (name, kind) in [("even", 0), ("clustered", 1), ("row", 2)] {
+        for count in [3_usize, 4, 5, 6, 8, 12, 20, 40, 80, 150] {
+            let start = std::time::Instant::now();
+            let mut accepted = Vec::new();
+            for seed in 0..n {
+                let random = &mut ChaCha8Rng::seed_from_u64(seed * 1000 + count as u64);
+                let points: Vec<Point> = (0..count)
+                    .map(|_| {
+                        let at = match kind {
+                            0 => [random.random_range(-0.27..0.27), random.random_range(-0.2..0.2)],
+                            1 => [0.08 * normal(random), 0.08 * normal(random)],
+                            _ => {
+                                let t = random.random_range(-0.25..0.25);
+                                [t, 0.3 * t + 2e-4 * normal(random)]
+                            }
+                        };
+                        Point::new(at, 2e-4, 10.0_f64.powf(random.random_range(-2.0..1.0)))
+                    })
+                    .collect();
+                if let Ok(found) = index(&points, &IndexOptions::default(), &|at| at[0].abs() < 0.3 && at[1].abs() < 0.25) {
+                    accepted.push((seed, found.shape, found.evidence.explained, found.evidence.log_evidence.round()));
+                }
+            }
+            println!(
+                "{name} {count}: {} of {n}, {:.1} ms each {:?}",
+                accepted.len(),
+                start.elapsed().as_secs_f64() * 1e3 / n as f64,
+                accepted.iter().take(5).collect::<Vec<_>>()
+            );
+        }
+    }
 }

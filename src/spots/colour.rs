@@ -2,7 +2,7 @@
 
 use nalgebra::{Matrix3, Vector3};
 
-use super::scale::{Level, Peak};
+use super::scale::{KERNEL_ENERGY, Level, Peak};
 use crate::photo::HalfPlanes;
 
 /// Share of the channels' own variance that is added before the inversion, so that no weight rests on a rounding error.
@@ -25,6 +25,8 @@ pub(super) struct Colour {
     pub(super) weights: [f64; 3],
     /// The strongest channel.
     pub(super) main: usize,
+    /// Variance of one pixel of each channel, as a fit over many pixels feels it.
+    pub(super) pixel_variance: [f64; 3],
 }
 
 /// Colour of the spots in the photo, and the weights that show them best.
@@ -32,7 +34,7 @@ pub(super) struct Colour {
 /// Colour: the response of the matched filter at cells of 4 px, summed over the strong peaks that clip nowhere.
 pub(super) fn of_spots(half: &HalfPlanes) -> Colour {
     if half.planes.len() < 3 {
-        return Colour { share: [0.0; 3], weights: [1.0, 0.0, 0.0], main: 0 };
+        return Colour { share: [0.0; 3], weights: [1.0, 0.0, 0.0], main: 0, pixel_variance: [0.0; 3] };
     }
     let levels: Vec<Level> = half.planes.iter().map(|plane| Level::of(&plane.halved(), 4.0)).collect();
     let [trusted, all] = light_of_spots(&levels);
@@ -49,7 +51,9 @@ fn weigh(light: [f64; 3], noise: Matrix3<f64>) -> Colour {
     let share = if total > 0.0 { light.map(|part| part / total) } else { [1.0 / 3.0; 3] };
     let main = (0..3).max_by(|&a, &b| share[a].total_cmp(&share[b])).unwrap_or(0);
     let loaded = noise + Matrix3::from_diagonal(&noise.diagonal()) * LOADING + Matrix3::identity() * (LOADING * noise.trace() / 3.0);
-    Colour { share, weights: non_negative_weights(share, main, loaded).into(), main }
+    // The response of cells of 4 px has KERNEL_ENERGY / 16 of the variance of a pixel.
+    let pixel_variance = (noise.diagonal() * (16.0 / KERNEL_ENERGY)).into();
+    Colour { share, weights: non_negative_weights(share, main, loaded).into(), main, pixel_variance }
 }
 
 /// The best weights of which none is negative or tiny: the channel with the lowest one is left out until none is.
@@ -102,7 +106,7 @@ fn noise_covariance(levels: &[Level]) -> Matrix3<f64> {
 fn light_of_spots(levels: &[Level]) -> [[f64; 3]; 2] {
     let mut light = [[0.0; 3]; 2];
     for level in levels {
-        for peak in level.peaks(STRONG, &|_| 1e-7) {
+        for peak in level.extremes(STRONG, &|_| 1e-7).peaks {
             let Some(heights) = heights(levels, &peak) else { continue };
             let is_trusted = heights.iter().all(|&(height, around)| height * 2.0 + around < TRUSTED_LIGHT);
             for (channel, (height, _)) in heights.into_iter().enumerate() {

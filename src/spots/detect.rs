@@ -33,16 +33,22 @@ pub(super) fn detect(half: &Plane, noise: Noise, false_spots: f64) -> Detection 
     let levels = levels(half);
     let cells: usize = levels.iter().map(|level| level.response.len()).sum();
     let floor = |cell_px: f64| move |light: f64| (noise.variance(light) * KERNEL_ENERGY).sqrt() / cell_px;
-    let peaks_above = |threshold: f64| -> Vec<Peak> { levels.iter().flat_map(|level| level.peaks(threshold, &floor(level.cell_px))).collect() };
+    let extremes_beyond = |threshold: f64| {
+        let of_level = |level: &Level| level.extremes(threshold, &floor(level.cell_px));
+        levels.iter().map(of_level).fold((Vec::new(), Vec::new()), |(mut peaks, mut dips), more| {
+            peaks.extend(more.peaks);
+            dips.extend(more.dips);
+            (peaks, dips)
+        })
+    };
     let normal = threshold(cells, false_spots);
-    let mut peaks = peaks_above(normal);
-    let dips: Vec<Peak> = levels.iter().flat_map(|level| level.dips(normal, &floor(level.cell_px))).collect();
+    let (mut peaks, dips) = extremes_beyond(normal);
     let threshold = with_tails(normal, &peaks, &dips);
     peaks.retain(|peak| peak.signal_to_noise > threshold);
     peaks.sort_by(|a, b| rank(b).total_cmp(&rank(a)));
     let peaks = one_per_place(peaks, half);
     let best_reject = if peaks.is_empty() {
-        peaks_above(0.5 * normal).into_iter().max_by(|a, b| a.signal_to_noise.total_cmp(&b.signal_to_noise))
+        extremes_beyond(0.5 * normal).0.into_iter().max_by(|a, b| a.signal_to_noise.total_cmp(&b.signal_to_noise))
     } else {
         None
     };

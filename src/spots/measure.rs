@@ -21,6 +21,10 @@ const ROUGH_CELLS: f64 = 2.0;
 const FINE_CELLS: f64 = 2.8;
 /// No optic forms a sharper spot; a hot pixel is one, px.
 const MIN_SIGMA_PX: f64 = 0.5;
+/// Sharper than most lenses draw: only a hot pixel, where the other spots are wider, px.
+const SHARP_PX: f64 = 1.0;
+/// Strong spots that make the beam's picture known.
+const BEAM_SPOTS: usize = 6;
 /// Widest spot that is fitted, px.
 const MAX_SIGMA_PX: f64 = 40.0;
 /// A streak longer than this times its width is no spot.
@@ -31,6 +35,8 @@ const FIRST_SPECKLE: f64 = 0.2;
 const USUAL_SPECKLE: f64 = 0.3;
 const MIN_SPECKLE: f64 = 0.01;
 const MAX_SPECKLE: f64 = 4.0;
+/// Share of the laser's light that a channel must carry to be asked about a clipped spot.
+const LEAST_SHARE: f64 = 0.01;
 /// Height over the noise of one pixel above which speckle rules the fit.
 const STRONG: f64 = 12.0;
 /// Height over the noise of one pixel, times the width in px, below which a fit has found nothing.
@@ -90,10 +96,9 @@ pub(super) fn measure(linear: &LinearPhoto, colour: &Colour, noise: Noise, found
     let first = one_per_place(first, linear);
     let speckle = FIRST_SPECKLE * scatter::excess(&shapes(&first, linear, STRONG..f64::INFINITY), USUAL_SPECKLE / FIRST_SPECKLE);
     let speckle = speckle.clamp(MIN_SPECKLE, MAX_SPECKLE);
-    let grid = grid_of(&first, linear);
-    let again = |index: usize| fit_among(&mix, &first, index, &grid, noise, speckle);
-    let second: Vec<Found> = (0..first.len()).into_par_iter().filter_map(again).filter(Found::is_spot).collect();
-    let second = one_per_place(second, linear);
+    let scene = Scene { linear, colour, all: &first, grid: grid_of(&first, linear), noise, speckle };
+    let second: Vec<Found> = (0..first.len()).into_par_iter().filter_map(|index| scene.fit(index)).filter(Found::is_spot).collect();
+    let second = like_the_beam(one_per_place(second, linear));
     let excess = Excess::of(&second, linear);
     if std::env::var_os("DBG").is_some() {
         eprintln!("unique {} speckle {speckle:.3} excess {excess:?}", first.len());
@@ -132,6 +137,29 @@ impl Excess {
     }
 }
 
+/// Leaves out what cannot be a picture of the beam that made the strong spots: hot pixels (much sharper), and weak things of
+/// another size or shape, as JPEG blocks are. With few strong spots all stay.
+fn like_the_beam(all: Vec<Found>) -> Vec<Found> {
+    let is_model = |found: &&Found| found.missing_px == 0 && found.strength() > STRONG && found.sigma_px() > SHARP_PX;
+    let mut widths: Vec<f64> = all.iter().filter(is_model).map(Found::sigma_px).collect();
+    if widths.len() < BEAM_SPOTS {
+        return all;
+    }
+    let middle = widths.len() / 2;
+    let usual = *widths.select_nth_unstable_by(middle, f64::total_cmp).1;
+    let is_alike = |found: &Found| {
+        let (width, [long, short]) = (found.sigma_px(), found.fitted.profile.axes_px());
+        if found.clipped_px > 0 {
+            return true;
+        }
+        if found.strength() > STRONG {
+            return width > SHARP_PX || width > 0.6 * usual;
+        }
+        (0.5..2.0).contains(&(width / usual)) && long < 2.5 * short
+    };
+    all.into_iter().filter(is_alike).collect()
+}
+
 fn pixel_noise(peak: &Peak, noise: Noise, speckle: f64) -> PixelNoise {
     PixelNoise { background: peak.pixel_variance.max(1e-12), per_light: noise.b, speckle }
 }
@@ -148,18 +176,70 @@ fn fit_alone(mix: &Mix, peak: &Peak, noise: Noise) -> Option<Found> {
     Some(Found { peak: *peak, middle_px: window.middle_px, fitted, clipped_px: window.clipped_px, missing_px: window.missing_px })
 }
 
-fn fit_among(mix: &Mix, all: &[Found], index: usize, grid: &Grid, noise: Noise, speckle: f64) -> Option<Found> {
-    let found = &all[index];
-    let sigma_px = found.sigma_px();
-    let mut window = Window::cut(mix, found.at_px(), sigma_px / FINE_CELLS, reach_px(sigma_px));
-    take_off_neighbours(&mut window, all, index, grid, speckle);
-    let at = found.at_px();
-    let start = Profile { x_px: at[0] - window.middle_px[0], y_px: at[1] - window.middle_px[1], slope: [0.0; 2], ..found.fitted.profile };
-    let fitted = profile::fit(&window, start, &pixel_noise(&found.peak, noise, speckle))?;
-    Some(Found { peak: found.peak, middle_px: window.middle_px, fitted, clipped_px: window.clipped_px, missing_px: window.missing_px })
+/// What the second fit of a spot needs besides the spot.
+struct Scene<'a> {
+    linear: &'a LinearPhoto<'a>,
+    colour: &'a Colour,
+    all: &'a [Found],
+    grid: Grid,
+    noise: Noise,
+    speckle: f64,
 }
 
-fn take_off_neighbours(window: &mut Window, all: &[Found], index: usize, grid: &Grid, speckle: f64) {
+impl Scene<'_> {
+    fn fit(&self, index: usize) -> Option<Found> {
+        let found = &self.all[index];
+        let laser = Mix { linear: self.linear, weights: self.colour.weights };
+        let whole = self.fit_through(&laser, index, found, 1.0, pixel_noise(&found.peak, self.noise, self.speckle))?;
+        if whole.clipped_px == 0 || self.linear.channels() < 3 {
+            return Some(whole);
+        }
+        // A weaker channel still sees the core of a spot that clips in the main one.
+        let weaker = (0..3).filter(|&c| c != self.colour.main && self.colour.share[c] > LEAST_SHARE);
+        let views = weaker.filter_map(|channel| self.fit_in_channel(index, channel, &whole));
+        let spread = |found: &Found| found.fitted.covariance[0] + found.fitted.covariance[2];
+        Some(views.chain([whole]).min_by(|a, b| spread(a).total_cmp(&spread(b))).unwrap_or(whole))
+    }
+
+    fn fit_in_channel(&self, index: usize, channel: usize, whole: &Found) -> Option<Found> {
+        let mut weights = [0.0; 3];
+        weights[channel] = 1.0;
+        let ratio = self.colour.share[channel] / self.colour.share[self.colour.main];
+        let noise = PixelNoise { background: self.colour.pixel_variance[channel].max(1e-12), per_light: self.noise.b, speckle: self.speckle };
+        let mut seen = self.fit_through(&Mix { linear: self.linear, weights }, index, whole, ratio, noise).filter(Found::is_spot)?;
+        if distance_px(&seen, whole) > 2.0 * whole.sigma_px() {
+            return None;
+        }
+        seen.fitted.profile.height /= ratio;
+        seen.clipped_px = whole.clipped_px;
+        Some(seen)
+    }
+
+    /// Fits in a view of the photo in which the spot is `ratio` times as high as in the laser's own, from `start`.
+    fn fit_through(&self, mix: &Mix, index: usize, start: &Found, ratio: f64, noise: PixelNoise) -> Option<Found> {
+        let sigma_px = start.sigma_px();
+        let at = start.at_px();
+        let mut window = Window::cut(mix, at, sigma_px / FINE_CELLS, reach_px(sigma_px));
+        take_off_neighbours(&mut window, self.all, index, &self.grid, self.speckle, ratio);
+        let profile = start.fitted.profile;
+        let from = Profile {
+            x_px: at[0] - window.middle_px[0],
+            y_px: at[1] - window.middle_px[1],
+            height: profile.height * ratio,
+            slope: [0.0; 2],
+            ..profile
+        };
+        let fitted = profile::fit(&window, from, &noise)?;
+        Some(Found { peak: start.peak, middle_px: window.middle_px, fitted, clipped_px: window.clipped_px, missing_px: window.missing_px })
+    }
+}
+
+fn distance_px(a: &Found, b: &Found) -> f64 {
+    let ([ax, ay], [bx, by]) = (a.at_px(), b.at_px());
+    (ax - bx).hypot(ay - by)
+}
+
+fn take_off_neighbours(window: &mut Window, all: &[Found], index: usize, grid: &Grid, speckle: f64, ratio: f64) {
     let [x, y] = window.middle_px;
     let own_sigma = all[index].sigma_px();
     for other in grid.near(x, y, window.reach_px + 4.0 * MAX_SIGMA_PX).filter(|&other| other != index).map(|other| &all[other]) {
@@ -169,7 +249,7 @@ fn take_off_neighbours(window: &mut Window, all: &[Found], index: usize, grid: &
             continue;
         }
         for cell in &mut window.cells {
-            let light = other.light_at(cell.x_px + x, cell.y_px + y);
+            let light = ratio * other.light_at(cell.x_px + x, cell.y_px + y);
             cell.value -= light;
             cell.neighbours += light;
             cell.neighbours_variance += (speckle / window.pixels_per_cell + 0.01) * light * light;

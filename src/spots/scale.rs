@@ -12,8 +12,9 @@ const RIM_CELLS: usize = 6;
 const RIM_RATIO: f64 = 2.5;
 /// Edge of the tiles in which the noise of the response is measured, cells.
 const TILE_CELLS: usize = 32;
+const HALF_TILE: usize = TILE_CELLS / 2;
 /// Cells of a tile that enter its noise estimate.
-const TILE_SAMPLES: usize = 256;
+const TILE_SAMPLES: usize = 128;
 /// Quantile of |response| that gives the noise. Below the median, so that spots may cover a third of a tile.
 const QUANTILE: f64 = 0.4;
 /// |x| that a standard normal variable stays below with probability `QUANTILE`.
@@ -53,13 +54,19 @@ pub(super) struct Peak {
     pub(super) surround: f64,
 }
 
+/// Local maxima and minima; a minimum is told as if it were a maximum.
+#[derive(Debug, Default)]
+pub(super) struct Extremes {
+    pub(super) peaks: Vec<Peak>,
+    pub(super) dips: Vec<Peak>,
+}
+
 impl Level {
     /// Filters a plane of cells of `cell_px`.
     pub(super) fn of(plane: &Plane, cell_px: f64) -> Self {
         let (width, height) = (plane.width, plane.height);
-        let narrow = blurred(&plane.value, width, 1);
-        let surround = blurred(&narrow, width, 2);
-        let mut response = narrow;
+        let mut response = blurred(&plane.value, width, 1);
+        let surround = blurred(&response, width, 2);
         response.par_chunks_mut(1 << 14).zip(surround.par_chunks(1 << 14)).for_each(|(response, surround)| {
             response.iter_mut().zip(surround).for_each(|(narrow, wide)| *narrow -= wide);
         });
@@ -67,41 +74,61 @@ impl Level {
         Self { cell_px, width, height, response, surround, tiles }
     }
 
-    /// Local maxima above `threshold` times the local noise that are no ridges.
+    /// Local maxima and minima beyond `threshold` times the local noise that are no ridges.
+    ///
+    /// Minima that are the dark rim of something bright are left out: what noise alone does in either direction shows in the rest
+    /// undisturbed.
     ///
     /// - `floor`: noise of the response that is assumed at least, as a function of the light there
-    pub(super) fn peaks(&self, threshold: f64, floor: &(impl Fn(f64) -> f64 + Sync)) -> Vec<Peak> {
-        self.extremes(1.0, threshold, floor)
-    }
-
-    /// Local minima, told as if they were peaks, that are not the dark rim of something bright: what noise alone does in either
-    /// direction shows here undisturbed.
-    pub(super) fn dips(&self, threshold: f64, floor: &(impl Fn(f64) -> f64 + Sync)) -> Vec<Peak> {
-        let mut dips = self.extremes(-1.0, threshold, floor);
-        dips.retain(|dip| !self.is_rim(dip));
-        dips
-    }
-
-    fn extremes(&self, sign: f32, threshold: f64, floor: &(impl Fn(f64) -> f64 + Sync)) -> Vec<Peak> {
+    pub(super) fn extremes(&self, threshold: f64, floor: &(impl Fn(f64) -> f64 + Sync)) -> Extremes {
         if self.width < 3 || self.height < 3 {
-            return Vec::new();
+            return Extremes::default();
         }
-        let row = |y: usize| (1..self.width - 1).filter_map(move |x| self.extreme_at(sign, x, y, threshold, floor));
-        (1..self.height - 1).into_par_iter().flat_map_iter(row).collect()
+        let rows = (1..self.height - 1).into_par_iter().with_min_len(16);
+        let found = rows.fold(Extremes::default, |mut found, y| {
+            self.scan_row(y, threshold, floor, &mut found);
+            found
+        });
+        found.reduce(Extremes::default, |mut all, more| {
+            all.peaks.extend(more.peaks);
+            all.dips.extend(more.dips);
+            all
+        })
+    }
+
+    fn scan_row(&self, y: usize, threshold: f64, floor: &impl Fn(f64) -> f64, found: &mut Extremes) {
+        // Between the centres of two tiles the least noise is one number, so that most cells cost one comparison.
+        let mut left = 1;
+        while left < self.width - 1 {
+            let right = ((left / HALF_TILE + 1) * HALF_TILE).min(self.width - 1);
+            let limit = threshold as f32 * self.tiles.least(left, y);
+            let row = &self.response[y * self.width + left..y * self.width + right];
+            if row.iter().fold(false, |any, height| any | (height.abs() > limit)) {
+                for x in (left..right).filter(|x| row[x - left].abs() > limit) {
+                    let sign = self.response[y * self.width + x].signum();
+                    let Some(extreme) = self.extreme_at(sign, x, y, threshold, floor) else { continue };
+                    if sign > 0.0 {
+                        found.peaks.push(extreme);
+                    } else if !self.is_rim(&extreme) {
+                        found.dips.push(extreme);
+                    }
+                }
+            }
+            left = right;
+        }
     }
 
     fn extreme_at(&self, sign: f32, x: usize, y: usize, threshold: f64, floor: &impl Fn(f64) -> f64) -> Option<Peak> {
         let at = y * self.width + x;
-        let height = sign * self.response[at];
-        if height <= 0.0 || !self.is_extreme(sign, at) || f64::from(height) <= threshold * self.tiles.least(x, y) {
+        if !self.is_extreme(sign, at) {
             return None;
         }
+        let height = f64::from(sign * self.response[at]);
         let around = f64::from(self.surround[at]);
         let (tile_sigma, tile_light) = self.tiles.at(x, y);
         // Shot noise grows with the light above the tile's own.
         let (least, tile_least) = (floor(around), floor(tile_light));
         let sigma = (tile_sigma.powi(2).max(tile_least.powi(2)) + (least.powi(2) - tile_least.powi(2)).max(0.0)).sqrt();
-        let height = f64::from(height);
         if height <= threshold * sigma {
             return None;
         }
@@ -220,10 +247,10 @@ impl Tiles {
     }
 
     /// The least noise among the tiles that share in the interpolation at a cell.
-    fn least(&self, x: usize, y: usize) -> f64 {
+    fn least(&self, x: usize, y: usize) -> f32 {
         let ([left, right], [top, bottom], _, _) = self.neighbours(x, y);
         let sigma = |column: usize, row: usize| self.sigma[row * self.columns + column];
-        f64::from(sigma(left, top).min(sigma(right, top)).min(sigma(left, bottom)).min(sigma(right, bottom)))
+        sigma(left, top).min(sigma(right, top)).min(sigma(left, bottom)).min(sigma(right, bottom))
     }
 
     /// Noise and light at a cell, interpolated between the centres of the tiles.
@@ -278,7 +305,7 @@ mod tests {
     #[test]
     fn blob_on_a_slope_gives_one_peak_at_its_place() {
         let seen = level(|x, y| 0.3 + 0.004 * x + (-((x - 30.3).powi(2) + (y - 20.6).powi(2)) / 4.0).exp());
-        let peaks = seen.peaks(5.0, &|_| 1e-3);
+        let peaks = seen.extremes(5.0, &|_| 1e-3).peaks;
         assert_eq!(peaks.len(), 1);
         // Cell 30.3 of 2 px is pixel 2 * 30.8 - 0.5; the parabola is good to a tenth of a cell.
         assert!((peaks[0].x_px - 61.1).abs() < 0.2 && (peaks[0].y_px - 41.7).abs() < 0.2, "{peaks:?}");
@@ -287,14 +314,14 @@ mod tests {
     #[test]
     fn line_and_edge_give_no_peak() {
         let line = level(|x, y| (-(x - 0.4 * y - 20.0).powi(2)).exp());
-        assert_eq!(line.peaks(5.0, &|_| 1e-2).iter().filter(|p| (20.0..70.0).contains(&p.y_px)).count(), 0);
+        assert_eq!(line.extremes(5.0, &|_| 1e-2).peaks.iter().filter(|p| (20.0..70.0).contains(&p.y_px)).count(), 0);
         let edge = level(|x, _| if x < 30.0 { 1.0 } else { 0.0 });
-        assert_eq!(edge.peaks(5.0, &|_| 1e-3).len(), 0);
+        assert_eq!(edge.extremes(5.0, &|_| 1e-3).peaks.len(), 0);
     }
 
     #[test]
     fn tiny_planes_give_nothing() {
         let plane = Plane { width: 1, height: 2, value: vec![1.0, 2.0] };
-        assert!(Level::of(&plane, 2.0).peaks(3.0, &|_| 0.0).is_empty());
+        assert!(Level::of(&plane, 2.0).extremes(3.0, &|_| 0.0).peaks.is_empty());
     }
 }
