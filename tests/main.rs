@@ -1,6 +1,8 @@
 //! One test binary; one comment line per file.
 #![allow(clippy::unwrap_used, clippy::print_stdout, reason = "a test says what it measured, and fails where it stands")]
 
+// the examples of GUM Supplement 1 by our Monte Carlo
+mod jcgm101;
 // the house rules that a machine can check: who may use whom, sources that exist
 mod layering;
 // runs a reference library (Python) beside our own code, where one is available

@@ -24,13 +24,14 @@ fn variances(u: &[f64]) -> DMatrix<f64> {
     DMatrix::from_diagonal(&DVector::from_iterator(u.len(), u.iter().map(|u| u * u)))
 }
 
-/// JCGM 100:2008 H.1, model (H.3): standard, comparator difference, δα, θ̄, α_S, δθ (the mean and the cyclic part of θ apart).
+/// JCGM 100:2008 H.1, model (H.3): standard, comparator difference, then the difference of the
+/// expansion coefficients, the deviation from 20 °C, the coefficient of the standard, the difference of temperatures.
 fn end_gauge(x: [DualSVec64<6>; 6]) -> DualSVec64<6> {
     let [standard, difference, d_alpha, theta, alpha, d_theta] = x;
     standard + difference - standard * (d_alpha * theta + alpha * d_theta)
 }
 
-/// End gauge of 50 mm in a given unit of length: value, u_c and ν_eff must not depend on the unit.
+/// End gauge of 50 mm in a given unit of length: value, `u_c` and `ν_eff` must not depend on the unit.
 fn end_gauge_in(unit_per_nm: f64, u_difference_nm: f64, nu_difference: f64) -> (f64, f64, f64) {
     let at = [50_000_623.0 * unit_per_nm, 215.0 * unit_per_nm, 0.0, -0.1, 11.5e-6, 0.0];
     let (length, gradient) = linearised(end_gauge, at);
@@ -41,7 +42,7 @@ fn end_gauge_in(unit_per_nm: f64, u_difference_nm: f64, nu_difference: f64) -> (
     (length / unit_per_nm, got.u / unit_per_nm, got.degrees_of_freedom)
 }
 
-/// JCGM 100:2008 H.1.5 and H.1.6: l = 50.000 838 mm, u_c = 32 nm, ν_eff = 16, t_99 = 2.92, U_99 = 93 nm.
+/// JCGM 100:2008 H.1.5 and H.1.6: `l = 50.000 838 mm`, `u_c = 32 nm`, `ν_eff = 16`, `t_99 = 2.92`, `U_99 = 93 nm`.
 ///
 /// Table H.1 rounds u(d) to 9.7 nm with ν 25.6; from its parts (5.8, 3.9, 6.7 nm with ν 24, 5, 8) it is 9.69 nm with ν 25.4. Both must
 /// give the printed result, in nanometres and in metres.
@@ -336,9 +337,9 @@ fn weighted_fit_with_priors_by_scipy() {
         for (i, &want) in row(&reference["parameters"]).iter().enumerate() {
             let u = covariance[i][i].sqrt();
             close(&format!("parameter {i} in units of its u"), (fit.parameters[i] - want) / u, 0.0, 1e-6);
-            for j in 0..3 {
-                let scale = u * covariance[j][j].sqrt();
-                close(&format!("covariance {i} {j}, scaled"), fit.covariance[(i, j)] / scale, covariance[i][j] / scale, 1e-8);
+            for (j, of_j) in covariance.iter().enumerate() {
+                let scale = u * of_j[j].sqrt();
+                close(&format!("covariance {i} {j}, scaled"), fit.covariance[(i, j)] / scale, of_j[i] / scale, 1e-8);
             }
         }
         close("χ²", fit.chi_square(), number(reference, "chi_square"), 1e-9);

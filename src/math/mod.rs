@@ -5,6 +5,7 @@
 pub mod finite_difference;
 pub mod gum;
 pub mod least_squares;
+pub mod monte_carlo;
 pub mod normal_inverse;
 pub mod robust;
 pub mod rotation;

@@ -38,7 +38,7 @@ impl NormalInverse {
         for (mut column, scale) in scaled.column_iter_mut().zip(column_scales.iter()) {
             column /= *scale;
         }
-        let singular = right_singular(&scaled)?;
+        let singular = right_singular(scaled)?;
         let largest = singular.values.iter().copied().fold(0.0, f64::max);
         let threshold = largest * rank_tolerance;
         let rank = singular.values.iter().take_while(|&&value| value > threshold).count();

@@ -26,7 +26,7 @@ const MAX_SWEEPS: usize = 60;
 ///
 /// Source: `[DemmelVeselic1992]` in docs/sources.md (relative accuracy of one-sided Jacobi).
 #[must_use]
-pub fn right_singular(matrix: &DMatrix<f64>) -> Option<RightSingular> {
+pub fn right_singular(matrix: DMatrix<f64>) -> Option<RightSingular> {
     if !matrix.iter().all(|v| v.is_finite()) || !matrix.norm_squared().is_finite() {
         return None;
     }
@@ -48,9 +48,9 @@ pub fn right_singular(matrix: &DMatrix<f64>) -> Option<RightSingular> {
 }
 
 /// The triangle R of a QR factorisation, filled up with zero rows to n × n.
-fn square_triangle(matrix: &DMatrix<f64>) -> DMatrix<f64> {
+fn square_triangle(matrix: DMatrix<f64>) -> DMatrix<f64> {
     let n = matrix.ncols();
-    let r = if matrix.nrows() > n { matrix.clone().qr().r() } else { matrix.clone() };
+    let r = if matrix.nrows() > n { matrix.qr().r() } else { matrix };
     let mut square = DMatrix::zeros(n, n);
     square.rows_mut(0, r.nrows()).copy_from(&r);
     square
@@ -99,7 +99,7 @@ mod tests {
         let (c, s) = (0.6, 0.8);
         let v = DMatrix::from_row_slice(3, 3, &[c, -s, 0.0, s, c, 0.0, 0.0, 0.0, 1.0]);
         let a = &u * DMatrix::from_diagonal(&DVector::from_vec(vec![1.0, 1e-5, 1e-10])) * v.transpose();
-        let got = right_singular(&a).unwrap();
+        let got = right_singular(a.clone()).unwrap();
         for (value, want) in got.values.iter().zip([1.0, 1e-5, 1e-10]) {
             // absolute error of the planted product is eps, so 1e-10 is known to about 1e-6 of itself
             assert!((value - want).abs() < 4.0 * f64::EPSILON, "got {value:e}, want {want:e}");
@@ -111,15 +111,15 @@ mod tests {
     #[test]
     fn wide_and_zero_matrices_have_their_null_vectors() {
         let wide = DMatrix::from_row_slice(1, 3, &[3.0, 0.0, 4.0]);
-        let got = right_singular(&wide).unwrap();
+        let got = right_singular(wide.clone()).unwrap();
         assert!((got.values[0] - 5.0).abs() < 1e-15 && got.values[1] == 0.0 && got.values[2] == 0.0);
         assert!((&wide * got.vectors.columns(1, 2)).norm() < 1e-15);
-        assert_eq!(right_singular(&DMatrix::zeros(3, 2)).unwrap().values, DVector::zeros(2));
+        assert_eq!(right_singular(DMatrix::zeros(3, 2)).unwrap().values, DVector::zeros(2));
     }
 
     #[test]
     fn refuses_what_is_not_finite() {
-        assert!(right_singular(&DMatrix::from_element(2, 2, f64::NAN)).is_none());
-        assert!(right_singular(&DMatrix::from_element(2, 2, 1e200)).is_none());
+        assert!(right_singular(DMatrix::from_element(2, 2, f64::NAN)).is_none());
+        assert!(right_singular(DMatrix::from_element(2, 2, 1e200)).is_none());
     }
 }
