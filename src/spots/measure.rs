@@ -87,17 +87,18 @@ impl Found {
 pub(super) fn measure(linear: &LinearPhoto, colour: &Colour, noise: Noise, found: &Detection) -> Vec<Spot> {
     let t0 = std::time::Instant::now();
     let mix = Mix { linear, weights: colour.weights };
-    let alone = |peak: &Peak| fit_alone(&mix, peak, noise);
+    let room = (colour.marks > super::MANY_MARKS && linear.channels() == 3).then_some(Mix { linear, weights: colour.paper_weights });
+    let alone = |peak: &Peak| fit_alone(&mix, room.as_ref(), peak, noise);
     let first: Vec<Found> = found.peaks.par_iter().filter_map(alone).filter(Found::is_spot).collect();
     if std::env::var_os("LAP").is_some() { eprintln!("  first {:.1} of {}", t0.elapsed().as_secs_f64()*1e3, found.peaks.len()); }
     let first = one_per_place(first, linear);
     let speckle = FIRST_SPECKLE * scatter::excess(&shapes(&first, linear, STRONG..f64::INFINITY), USUAL_SPECKLE / FIRST_SPECKLE);
     let speckle = speckle.clamp(MIN_SPECKLE, MAX_SPECKLE);
-    let scene = Scene { linear, colour, all: &first, grid: grid_of(&first, linear), noise, speckle };
+    let scene = Scene { linear, colour, all: &first, grid: grid_of(&first, linear), noise, speckle, room };
     let second: Vec<Found> = (0..first.len()).into_par_iter().filter_map(|index| scene.fit(index)).filter(Found::is_spot).collect();
     let second = like_the_beam(one_per_place(second, linear));
     let excess = Excess::of(&second, linear);
-    if std::env::var_os("DBG").is_some() { eprintln!("unique {} speckle {speckle:.3} excess {excess:?}", first.len()); }
+    if std::env::var_os("DBG").is_some() { eprintln!("dark {} unique {} speckle {speckle:.3} excess {excess:?}", colour.marks, first.len()); }
     second.iter().map(|found| spot_of(found, &excess)).collect()
 }
 
@@ -163,9 +164,9 @@ fn reach_px(sigma_px: f64) -> f64 {
     REACH_SIGMAS * sigma_px + REACH_MARGIN_PX
 }
 
-fn fit_alone(mix: &Mix, peak: &Peak, noise: Noise) -> Option<Found> {
+fn fit_alone(mix: &Mix, room: Option<&Mix>, peak: &Peak, noise: Noise) -> Option<Found> {
     let sigma_px = 1.2 * peak.cell_px;
-    let window = Window::cut(mix, [peak.x_px, peak.y_px], peak.cell_px / ROUGH_CELLS, reach_px(sigma_px));
+    let window = Window::cut(mix, room, [peak.x_px, peak.y_px], peak.cell_px / ROUGH_CELLS, reach_px(sigma_px));
     let start = Profile::round(3.0 * peak.response, sigma_px, peak.surround - peak.response.min(peak.surround));
     let fitted = profile::fit(&window, start, &pixel_noise(peak, noise, FIRST_SPECKLE))?;
     Some(Found { peak: *peak, middle_px: window.middle_px, fitted, clipped_px: window.clipped_px, missing_px: window.missing_px })
@@ -179,6 +180,7 @@ struct Scene<'a> {
     grid: Grid,
     noise: Noise,
     speckle: f64,
+    room: Option<Mix<'a>>,
 }
 
 impl Scene<'_> {
@@ -214,7 +216,7 @@ impl Scene<'_> {
     fn fit_through(&self, mix: &Mix, index: usize, start: &Found, ratio: f64, noise: PixelNoise) -> Option<Found> {
         let sigma_px = start.sigma_px();
         let at = start.at_px();
-        let mut window = Window::cut(mix, at, sigma_px / FINE_CELLS, reach_px(sigma_px));
+        let mut window = Window::cut(mix, self.room.as_ref(), at, sigma_px / FINE_CELLS, reach_px(sigma_px));
         take_off_neighbours(&mut window, self.all, index, &self.grid, self.speckle, ratio);
         let profile = start.fitted.profile;
         let from = Profile {
