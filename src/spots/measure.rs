@@ -17,8 +17,8 @@ const REACH_SIGMAS: f64 = 3.5;
 const REACH_MARGIN_PX: f64 = 3.0;
 /// Standard deviation of a spot in cells, above which its window is binned, in the first and in the last fit: finer sampling costs
 /// time and adds nothing.
-const ROUGH_CELLS: f64 = 2.0;
-const FINE_CELLS: f64 = 2.8;
+const ROUGH_CELLS: f64 = 1.5;
+const FINE_CELLS: f64 = 2.0;
 /// No optic forms a sharper spot; a hot pixel is one, px.
 const MIN_SIGMA_PX: f64 = 0.5;
 /// Sharper than most lenses draw: only a hot pixel, where the other spots are wider, px.
@@ -104,7 +104,11 @@ pub(super) fn measure(linear: &LinearPhoto, colour: &Colour, noise: Noise, found
 
 /// Shapes of the whole, unclipped spots whose height over the noise of one pixel lies in a range.
 fn shapes(all: &[Found], linear: &LinearPhoto, strength: std::ops::Range<f64>) -> Vec<Shape> {
-    let is_fit = |found: &&Found| found.clipped_px == 0 && found.missing_px == 0 && strength.contains(&found.strength());
+    let usual = usual_sigma_px(all);
+    let is_fit = |found: &&Found| {
+        let is_whole = found.clipped_px == 0 && found.missing_px == 0;
+        is_whole && strength.contains(&found.strength()) && usual.is_none_or(|usual| (0.6..1.7).contains(&(found.sigma_px() / usual)))
+    };
     let shape = |found: &Found| {
         let ([x, y], [xx, xy, yy]) = (found.at_px(), found.fitted.profile.inverse_shape);
         let size = linear.width().max(linear.height()) as f64;
@@ -136,13 +140,7 @@ impl Excess {
 /// Leaves out what cannot be a picture of the beam that made the strong spots: hot pixels (much sharper), and weak things of
 /// another size or shape, as JPEG blocks are. With few strong spots all stay.
 fn like_the_beam(all: Vec<Found>) -> Vec<Found> {
-    let is_model = |found: &&Found| found.missing_px == 0 && found.strength() > STRONG && found.sigma_px() > SHARP_PX;
-    let mut widths: Vec<f64> = all.iter().filter(is_model).map(Found::sigma_px).collect();
-    if widths.len() < BEAM_SPOTS {
-        return all;
-    }
-    let middle = widths.len() / 2;
-    let usual = *widths.select_nth_unstable_by(middle, f64::total_cmp).1;
+    let Some(usual) = usual_sigma_px(&all) else { return all };
     let is_alike = |found: &Found| {
         let (width, [long, short]) = (found.sigma_px(), found.fitted.profile.axes_px());
         if found.clipped_px > 0 {
@@ -156,6 +154,14 @@ fn like_the_beam(all: Vec<Found>) -> Vec<Found> {
     all.into_iter().filter(is_alike).collect()
 }
 
+/// Median width of the strong spots; `None` where they are few.
+fn usual_sigma_px(all: &[Found]) -> Option<f64> {
+    let is_model = |found: &&Found| found.missing_px == 0 && found.strength() > STRONG && found.sigma_px() > SHARP_PX;
+    let mut widths: Vec<f64> = all.iter().filter(is_model).map(Found::sigma_px).collect();
+    let middle = widths.len() / 2;
+    (widths.len() >= BEAM_SPOTS).then(|| *widths.select_nth_unstable_by(middle, f64::total_cmp).1)
+}
+
 fn pixel_noise(peak: &Peak, noise: Noise, speckle: f64) -> PixelNoise {
     PixelNoise { background: peak.pixel_variance.max(1e-12), per_light: noise.b, speckle }
 }
@@ -166,7 +172,7 @@ fn reach_px(sigma_px: f64) -> f64 {
 
 fn fit_alone(mix: &Mix, room: Option<&Mix>, peak: &Peak, noise: Noise) -> Option<Found> {
     let sigma_px = 1.2 * peak.cell_px;
-    let window = Window::cut(mix, room, [peak.x_px, peak.y_px], peak.cell_px / ROUGH_CELLS, reach_px(sigma_px));
+    let window = Window::cut(mix, room, [peak.x_px, peak.y_px], 1.2 * peak.cell_px / ROUGH_CELLS, reach_px(sigma_px));
     let start = Profile::round(3.0 * peak.response, sigma_px, peak.surround - peak.response.min(peak.surround));
     let fitted = profile::fit(&window, start, &pixel_noise(peak, noise, FIRST_SPECKLE))?;
     Some(Found { peak: *peak, middle_px: window.middle_px, fitted, clipped_px: window.clipped_px, missing_px: window.missing_px })
