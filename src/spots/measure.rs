@@ -18,7 +18,11 @@ const REACH_MARGIN_PX: f64 = 3.0;
 /// Standard deviation of a spot in cells, above which its window is binned, in the first and in the last fit: finer sampling costs
 /// time and adds nothing.
 const ROUGH_CELLS: f64 = 1.5;
-const FINE_CELLS: f64 = 2.0;
+const FINE_CELLS: f64 = 1.7;
+const FINE_CELLS_CLIPPED: f64 = 2.8;
+/// How still the centre must stand in the first and in the last fit, px.
+const ROUGH_PX: f64 = 0.05;
+const FINE_PX: f64 = 2e-3;
 /// No optic forms a sharper spot; a hot pixel is one, px.
 const MIN_SIGMA_PX: f64 = 0.5;
 /// Sharper than most lenses draw: only a hot pixel, where the other spots are wider, px.
@@ -172,9 +176,9 @@ fn reach_px(sigma_px: f64) -> f64 {
 
 fn fit_alone(mix: &Mix, room: Option<&Mix>, peak: &Peak, noise: Noise) -> Option<Found> {
     let sigma_px = 1.2 * peak.cell_px;
-    let window = Window::cut(mix, room, [peak.x_px, peak.y_px], 1.2 * peak.cell_px / ROUGH_CELLS, reach_px(sigma_px));
+    let window = Window::cut(mix, room, [peak.x_px, peak.y_px], sigma_px / ROUGH_CELLS, 2.6 * sigma_px + 2.0);
     let start = Profile::round(3.0 * peak.response, sigma_px, peak.surround - peak.response.min(peak.surround));
-    let fitted = profile::fit(&window, start, &pixel_noise(peak, noise, FIRST_SPECKLE))?;
+    let fitted = profile::fit(&window, start, &pixel_noise(peak, noise, FIRST_SPECKLE), ROUGH_PX)?;
     Some(Found { peak: *peak, middle_px: window.middle_px, fitted, clipped_px: window.clipped_px, missing_px: window.missing_px })
 }
 
@@ -222,7 +226,9 @@ impl Scene<'_> {
     fn fit_through(&self, mix: &Mix, index: usize, start: &Found, ratio: f64, noise: PixelNoise) -> Option<Found> {
         let sigma_px = start.sigma_px();
         let at = start.at_px();
-        let mut window = Window::cut(mix, self.room.as_ref(), at, sigma_px / FINE_CELLS, reach_px(sigma_px));
+        // A bin loses all its pixels to one that clips.
+        let fine_cells = if start.clipped_px > 0 { FINE_CELLS_CLIPPED } else { FINE_CELLS };
+        let mut window = Window::cut(mix, self.room.as_ref(), at, sigma_px / fine_cells, reach_px(sigma_px));
         take_off_neighbours(&mut window, self.all, index, &self.grid, self.speckle, ratio);
         let profile = start.fitted.profile;
         let from = Profile {
@@ -232,7 +238,7 @@ impl Scene<'_> {
             slope: [0.0; 2],
             ..profile
         };
-        let fitted = profile::fit(&window, from, &noise)?;
+        let fitted = profile::fit(&window, from, &noise, FINE_PX)?;
         Some(Found { peak: start.peak, middle_px: window.middle_px, fitted, clipped_px: window.clipped_px, missing_px: window.missing_px })
     }
 }

@@ -121,7 +121,9 @@ impl PixelNoise {
 /// Weighted least squares from a start, Levenberg-Marquardt with the weights following the model.
 ///
 /// `None` where fewer cells than parameters are free, the normal matrix is singular, or the profile leaves the window.
-pub(super) fn fit(window: &Window, start: Profile, noise: &PixelNoise) -> Option<Fitted> {
+///
+/// - `tolerance_px`: the centre is settled when a step moves it by less
+pub(super) fn fit(window: &Window, start: Profile, noise: &PixelNoise, tolerance_px: f64) -> Option<Fitted> {
     if window.cells.len() <= COUNT + 3 {
         return None;
     }
@@ -140,7 +142,7 @@ pub(super) fn fit(window: &Window, start: Profile, noise: &PixelNoise) -> Option
         next_weights.copy_from_slice(&weights);
         let next = evaluate(window, &tried, noise, &mut next_weights);
         if next.cost_before <= state.cost {
-            let is_settled = step[X].hypot(step[Y]) < 2e-3 && state.cost - next.cost_before < 1e-4 * state.cost;
+            let is_settled = step[X].hypot(step[Y]) < tolerance_px && state.cost - next.cost_before < 0.1 * tolerance_px * state.cost;
             (profile, state) = (tried, next);
             std::mem::swap(&mut weights, &mut next_weights);
             damping = (damping * 0.2).max(1e-9);
