@@ -7,8 +7,11 @@ use crate::photo::HalfPlanes;
 
 /// Share of the channels' own variance that is added before the inversion, so that no weight rests on a rounding error.
 const LOADING: f64 = 0.1;
+/// Response over surrounding room light of a dark mark; a black dot of the filter's size gives 0.4.
+const MARK_DEPTH: f64 = 0.12;
 /// A channel of less relative weight is not worth reading.
 const LEAST_WEIGHT: f64 = 0.03;
+const GREY: [f64; 3] = [1.0, 0.0, 0.0];
 /// Cells that enter the covariance of the channels.
 const NOISE_SAMPLES: usize = 40_000;
 /// Light of a cell above which its colour is not trusted: part of it may clip.
@@ -21,8 +24,14 @@ const STRONG: f64 = 10.0;
 pub(super) struct Colour {
     /// Share of the spots' light in red, green, blue (sums to 1); all 0 for grey.
     pub(super) share: [f64; 3],
-    /// Weights of the channels in the plane of laser light.
+    /// Weights of the channels in the plane of laser light in which spots are measured; none is negative.
     pub(super) weights: [f64; 3],
+    /// Weights with as much room light taken off as cancels what is printed or drawn on the screen.
+    pub(super) without_room: [f64; 3],
+    /// The channel with the least laser light, which shows what is printed on the screen; all 0 for grey.
+    pub(super) paper_weights: [f64; 3],
+    /// Number of dark marks on the screen (a dark blob counts once in each channel).
+    pub(super) marks: usize,
     /// The strongest channel.
     pub(super) main: usize,
     /// Variance of one pixel of each channel, as a fit over many pixels feels it.
@@ -34,26 +43,65 @@ pub(super) struct Colour {
 /// Colour: the response of the matched filter at cells of 4 px, summed over the strong peaks that clip nowhere.
 pub(super) fn of_spots(half: &HalfPlanes) -> Colour {
     if half.planes.len() < 3 {
-        return Colour { share: [0.0; 3], weights: [1.0, 0.0, 0.0], main: 0, pixel_variance: [0.0; 3] };
+        return Colour { share: [0.0; 3], weights: GREY, without_room: GREY, paper_weights: [0.0; 3], marks: 0, main: 0, pixel_variance: [0.0; 3] };
     }
     let levels: Vec<Level> = half.planes.iter().map(|plane| Level::of(&plane.halved(), 4.0)).collect();
-    let [trusted, all] = light_of_spots(&levels);
+    let (Light { trusted, all }, dips) = light_of_blobs(&levels);
     let light = if trusted.iter().sum::<f64>() > 0.0 { trusted } else { all };
-    weigh(light, noise_covariance(&levels))
+    weigh(light, &dips, noise_covariance(&levels))
 }
 
 /// Weights `w = k N⁻¹ s` give the best signal-to-noise ratio for a spot of colour `s` in noise of covariance `N`
 /// between the channels; k keeps a spot as high as in its main channel, `Σ w s = s_main`.
 ///
 /// The chroma rounding of a JPEG, for one, moves red against green and drops out of their sum.
-fn weigh(light: [f64; 3], noise: Matrix3<f64>) -> Colour {
+fn weigh(light: [f64; 3], dips: &[Seen], noise: Matrix3<f64>) -> Colour {
     let total: f64 = light.iter().sum();
     let share = if total > 0.0 { light.map(|part| part / total) } else { [1.0 / 3.0; 3] };
     let main = (0..3).max_by(|&a, &b| share[a].total_cmp(&share[b])).unwrap_or(0);
     let loaded = noise + Matrix3::from_diagonal(&noise.diagonal()) * LOADING + Matrix3::identity() * (LOADING * noise.trace() / 3.0);
+    let weights = non_negative_weights(share, main, loaded);
     // The response of cells of 4 px has KERNEL_ENERGY / 16 of the variance of a pixel.
     let pixel_variance = (noise.diagonal() * (16.0 / KERNEL_ENERGY)).into();
-    Colour { share, weights: non_negative_weights(share, main, loaded).into(), main, pixel_variance }
+    let room_weights = room_weights(share, main);
+    let (marks, depth) = marks_of(dips, room_weights);
+    let without_room = without_room(weights, Vector3::from(room_weights), Vector3::from(depth));
+    Colour { share, weights: weights.into(), without_room: without_room.into(), paper_weights: room_weights.map(|w| f64::from(u8::from(w > 0.0))), marks, main, pixel_variance }
+}
+
+/// Number of dips that are dark in room light, and how much each channel loses there.
+fn marks_of(dips: &[Seen], room_weights: [f64; 3]) -> (usize, [f64; 3]) {
+    let in_room = |seen: &Seen| (0..3).fold((0.0, 0.0), |(response, around), c| (response + room_weights[c] * seen[c].0, around + room_weights[c] * seen[c].1));
+    let is_mark = |seen: &&Seen| {
+        let (response, around) = in_room(seen);
+        around > 0.0 && -response > MARK_DEPTH * around
+    };
+    let mut depth = [0.0; 3];
+    let mut count = 0;
+    for seen in dips.iter().filter(is_mark) {
+        count += 1;
+        depth.iter_mut().zip(seen).for_each(|(depth, (response, _))| *depth -= response);
+    }
+    (count, depth)
+}
+
+/// `weights` less so much of the view without laser that what is drawn on the screen cancels.
+///
+/// - `marks`: how much room light the marks take from each channel
+fn without_room(weights: Vector3<f64>, room_weights: Vector3<f64>, marks: Vector3<f64>) -> Vector3<f64> {
+    let (seen, in_room) = (weights.dot(&marks), room_weights.dot(&marks));
+    if in_room > 0.1 * seen && seen > 0.0 { weights - room_weights * (seen / in_room) } else { weights }
+}
+
+/// The channel with the least laser light, the laser's share of it taken off by the main channel.
+fn room_weights(share: [f64; 3], main: usize) -> [f64; 3] {
+    let least = (0..3).min_by(|&a, &b| share[a].total_cmp(&share[b])).unwrap_or(0);
+    let mut weights = [0.0; 3];
+    if share[least] < 0.5 * share[main] {
+        weights[least] = 1.0;
+        weights[main] = -share[least] / share[main];
+    }
+    weights
 }
 
 /// The best weights of which none is negative or tiny: the channel with the lowest one is left out until none is.
@@ -102,24 +150,40 @@ fn noise_covariance(levels: &[Level]) -> Matrix3<f64> {
     if count > 10.0 { sum / count } else { Matrix3::identity() }
 }
 
-/// Light of the strong peaks per channel: of those that clip nowhere, and of all.
-fn light_of_spots(levels: &[Level]) -> [[f64; 3]; 2] {
-    let mut light = [[0.0; 3]; 2];
+/// Responses per channel, summed over strong blobs.
+#[derive(Default)]
+struct Light {
+    /// Bright ones that clip nowhere.
+    trusted: [f64; 3],
+    /// All bright ones.
+    all: [f64; 3],
+}
+
+/// Response and surround in each channel.
+type Seen = [(f64, f64); 3];
+
+/// Light of the bright blobs, and what is seen at the dark ones.
+fn light_of_blobs(levels: &[Level]) -> (Light, Vec<Seen>) {
+    let mut light = Light::default();
+    let add = |sum: &mut [f64; 3], heights: [f64; 3]| sum.iter_mut().zip(heights).for_each(|(sum, height)| *sum += height.max(0.0));
+    let mut dips = Vec::new();
     for level in levels {
-        for peak in level.extremes(STRONG, &|_| 1e-7).peaks {
-            let Some(heights) = heights(levels, &peak) else { continue };
-            let is_trusted = heights.iter().all(|&(height, around)| height * 2.0 + around < TRUSTED_LIGHT);
-            for (channel, (height, _)) in heights.into_iter().enumerate() {
-                light[1][channel] += height.max(0.0);
-                light[0][channel] += if is_trusted { height.max(0.0) } else { 0.0 };
+        let strong = level.extremes(STRONG, &|_| 1e-7);
+        for seen in strong.peaks.iter().filter_map(|peak| heights(levels, peak)) {
+            let is_trusted = seen.iter().all(|&(height, around)| height * 2.0 + around < TRUSTED_LIGHT);
+            let heights = seen.map(|(height, _)| height);
+            add(&mut light.all, heights);
+            if is_trusted {
+                add(&mut light.trusted, heights);
             }
         }
+        dips.extend(strong.dips.iter().filter_map(|dip| heights(levels, dip)));
     }
-    light
+    (light, dips)
 }
 
 #[expect(clippy::cast_possible_truncation, clippy::cast_sign_loss, reason = "peaks lie inside their level")]
-fn heights(levels: &[Level], peak: &Peak) -> Option<[(f64, f64); 3]> {
+fn heights(levels: &[Level], peak: &Peak) -> Option<Seen> {
     let cell = |at_px: f64| ((at_px + 0.5) / peak.cell_px).max(0.0) as usize;
     let at = |level: &Level| {
         let at = cell(peak.y_px).min(level.height - 1) * level.width + cell(peak.x_px).min(level.width - 1);
@@ -136,7 +200,7 @@ mod tests {
     #[test]
     fn weights_keep_the_height_of_the_main_channel() {
         for light in [[0.0, 5.0, 0.0], [0.4, 0.1, 0.5], [1.0, 1.0, 1.0]] {
-            let colour = weigh(light, nalgebra::Matrix3::new(2.0, -0.5, 0.1, -0.5, 1.0, 0.2, 0.1, 0.2, 3.0));
+            let colour = weigh(light, &[], nalgebra::Matrix3::new(2.0, -0.5, 0.1, -0.5, 1.0, 0.2, 0.1, 0.2, 3.0));
             let height: f64 = (0..3).map(|c| colour.weights[c] * colour.share[c]).sum();
             assert!((height - colour.share[colour.main]).abs() < 1e-12, "{colour:?}");
         }
@@ -144,6 +208,6 @@ mod tests {
 
     #[test]
     fn nothing_seen_is_treated_as_white() {
-        assert!((weigh([0.0; 3], nalgebra::Matrix3::identity()).weights.iter().sum::<f64>() - 1.0).abs() < 1e-12);
+        assert!((weigh([0.0; 3], &[], nalgebra::Matrix3::identity()).weights.iter().sum::<f64>() - 1.0).abs() < 1e-12);
     }
 }

@@ -17,8 +17,12 @@ const REACH_SIGMAS: f64 = 3.5;
 const REACH_MARGIN_PX: f64 = 3.0;
 /// Standard deviation of a spot in cells, above which its window is binned, in the first and in the last fit: finer sampling costs
 /// time and adds nothing.
-const ROUGH_CELLS: f64 = 2.0;
-const FINE_CELLS: f64 = 2.8;
+const ROUGH_CELLS: f64 = 1.5;
+const FINE_CELLS: f64 = 1.7;
+const FINE_CELLS_CLIPPED: f64 = 2.8;
+/// How still the centre must stand in the first and in the last fit, px.
+const ROUGH_PX: f64 = 0.05;
+const FINE_PX: f64 = 2e-3;
 /// No optic forms a sharper spot; a hot pixel is one, px.
 const MIN_SIGMA_PX: f64 = 0.5;
 /// Sharper than most lenses draw: only a hot pixel, where the other spots are wider, px.
@@ -90,7 +94,8 @@ impl Found {
 pub(super) fn measure(linear: &LinearPhoto, colour: &Colour, noise: Noise, found: &Detection) -> Vec<Spot> {
     let t0 = std::time::Instant::now();
     let mix = Mix { linear, weights: colour.weights };
-    let alone = |peak: &Peak| fit_alone(&mix, peak, noise);
+    let room = (colour.marks > super::MANY_MARKS && linear.channels() == 3).then_some(Mix { linear, weights: colour.paper_weights });
+    let alone = |peak: &Peak| fit_alone(&mix, room.as_ref(), peak, noise);
     let first: Vec<Found> = found.peaks.par_iter().filter_map(alone).filter(Found::is_spot).collect();
     if std::env::var_os("LAP").is_some() {
         eprintln!("  first {:.1} of {}", t0.elapsed().as_secs_f64() * 1e3, found.peaks.len());
@@ -98,19 +103,21 @@ pub(super) fn measure(linear: &LinearPhoto, colour: &Colour, noise: Noise, found
     let first = one_per_place(first, linear);
     let speckle = FIRST_SPECKLE * scatter::excess(&shapes(&first, linear, STRONG..f64::INFINITY), USUAL_SPECKLE / FIRST_SPECKLE);
     let speckle = speckle.clamp(MIN_SPECKLE, MAX_SPECKLE);
-    let scene = Scene { linear, colour, all: &first, grid: grid_of(&first, linear), noise, speckle };
+    let scene = Scene { linear, colour, all: &first, grid: grid_of(&first, linear), noise, speckle, room };
     let second: Vec<Found> = (0..first.len()).into_par_iter().filter_map(|index| scene.fit(index)).filter(Found::is_spot).collect();
     let second = like_the_beam(one_per_place(second, linear));
     let excess = Excess::of(&second, linear);
-    if std::env::var_os("DBG").is_some() {
-        eprintln!("unique {} speckle {speckle:.3} excess {excess:?}", first.len());
-    }
+    if std::env::var_os("DBG").is_some() { eprintln!("dark {} unique {} speckle {speckle:.3} excess {excess:?}", colour.marks, first.len()); }
     second.iter().map(|found| spot_of(found, &excess)).collect()
 }
 
 /// Shapes of the whole, unclipped spots whose height over the noise of one pixel lies in a range.
 fn shapes(all: &[Found], linear: &LinearPhoto, strength: std::ops::Range<f64>) -> Vec<Shape> {
-    let is_fit = |found: &&Found| found.clipped_px == 0 && found.missing_px == 0 && strength.contains(&found.strength());
+    let usual = usual_sigma_px(all);
+    let is_fit = |found: &&Found| {
+        let is_whole = found.clipped_px == 0 && found.missing_px == 0;
+        is_whole && strength.contains(&found.strength()) && usual.is_none_or(|usual| (0.6..1.7).contains(&(found.sigma_px() / usual)))
+    };
     let shape = |found: &Found| {
         let ([x, y], [xx, xy, yy]) = (found.at_px(), found.fitted.profile.inverse_shape);
         let size = linear.width().max(linear.height()) as f64;
@@ -142,13 +149,7 @@ impl Excess {
 /// Leaves out what cannot be a picture of the beam that made the strong spots: hot pixels (much sharper), and weak things of
 /// another size or shape, as JPEG blocks are. With few strong spots all stay.
 fn like_the_beam(all: Vec<Found>) -> Vec<Found> {
-    let is_model = |found: &&Found| found.missing_px == 0 && found.strength() > STRONG && found.sigma_px() > SHARP_PX;
-    let mut widths: Vec<f64> = all.iter().filter(is_model).map(Found::sigma_px).collect();
-    if widths.len() < BEAM_SPOTS {
-        return all;
-    }
-    let middle = widths.len() / 2;
-    let usual = *widths.select_nth_unstable_by(middle, f64::total_cmp).1;
+    let Some(usual) = usual_sigma_px(&all) else { return all };
     let is_alike = |found: &Found| {
         let (width, [long, short]) = (found.sigma_px(), found.fitted.profile.axes_px());
         if found.clipped_px > 0 {
@@ -162,6 +163,14 @@ fn like_the_beam(all: Vec<Found>) -> Vec<Found> {
     all.into_iter().filter(is_alike).collect()
 }
 
+/// Median width of the strong spots; `None` where they are few.
+fn usual_sigma_px(all: &[Found]) -> Option<f64> {
+    let is_model = |found: &&Found| found.missing_px == 0 && found.strength() > STRONG && found.sigma_px() > SHARP_PX;
+    let mut widths: Vec<f64> = all.iter().filter(is_model).map(Found::sigma_px).collect();
+    let middle = widths.len() / 2;
+    (widths.len() >= BEAM_SPOTS).then(|| *widths.select_nth_unstable_by(middle, f64::total_cmp).1)
+}
+
 fn pixel_noise(peak: &Peak, noise: Noise, speckle: f64) -> PixelNoise {
     PixelNoise { background: peak.pixel_variance.max(1e-12), per_light: noise.b, speckle }
 }
@@ -170,11 +179,11 @@ fn reach_px(sigma_px: f64) -> f64 {
     REACH_SIGMAS * sigma_px + REACH_MARGIN_PX
 }
 
-fn fit_alone(mix: &Mix, peak: &Peak, noise: Noise) -> Option<Found> {
+fn fit_alone(mix: &Mix, room: Option<&Mix>, peak: &Peak, noise: Noise) -> Option<Found> {
     let sigma_px = 1.2 * peak.cell_px;
-    let window = Window::cut(mix, [peak.x_px, peak.y_px], peak.cell_px / ROUGH_CELLS, reach_px(sigma_px));
+    let window = Window::cut(mix, room, [peak.x_px, peak.y_px], sigma_px / ROUGH_CELLS, 2.6 * sigma_px + 2.0);
     let start = Profile::round(3.0 * peak.response, sigma_px, peak.surround - peak.response.min(peak.surround));
-    let fitted = profile::fit(&window, start, &pixel_noise(peak, noise, FIRST_SPECKLE))?;
+    let fitted = profile::fit(&window, start, &pixel_noise(peak, noise, FIRST_SPECKLE), ROUGH_PX)?;
     Some(Found { peak: *peak, middle_px: window.middle_px, fitted, clipped_px: window.clipped_px, missing_px: window.missing_px })
 }
 
@@ -186,6 +195,7 @@ struct Scene<'a> {
     grid: Grid,
     noise: Noise,
     speckle: f64,
+    room: Option<Mix<'a>>,
 }
 
 impl Scene<'_> {
@@ -221,7 +231,9 @@ impl Scene<'_> {
     fn fit_through(&self, mix: &Mix, index: usize, start: &Found, ratio: f64, noise: PixelNoise) -> Option<Found> {
         let sigma_px = start.sigma_px();
         let at = start.at_px();
-        let mut window = Window::cut(mix, at, sigma_px / FINE_CELLS, reach_px(sigma_px));
+        // A bin loses all its pixels to one that clips.
+        let fine_cells = if start.clipped_px > 0 { FINE_CELLS_CLIPPED } else { FINE_CELLS };
+        let mut window = Window::cut(mix, self.room.as_ref(), at, sigma_px / fine_cells, reach_px(sigma_px));
         take_off_neighbours(&mut window, self.all, index, &self.grid, self.speckle, ratio);
         let profile = start.fitted.profile;
         let from = Profile {
@@ -231,7 +243,7 @@ impl Scene<'_> {
             slope: [0.0; 2],
             ..profile
         };
-        let fitted = profile::fit(&window, from, &noise)?;
+        let fitted = profile::fit(&window, from, &noise, FINE_PX)?;
         Some(Found { peak: start.peak, middle_px: window.middle_px, fitted, clipped_px: window.clipped_px, missing_px: window.missing_px })
     }
 }

@@ -66,6 +66,9 @@ impl Default for SpotOptions {
     }
 }
 
+/// Dark marks that make it a photo of a printed sheet.
+const MANY_MARKS: usize = 30;
+
 /// Finds the laser spots of a photo.
 ///
 /// 1. The channels that carry the laser are found from the spots themselves.
@@ -77,25 +80,16 @@ impl Default for SpotOptions {
 /// # Errors
 /// [`SpotError::NothingFound`] with the brightest thing seen.
 pub fn find(photo: &Photo, options: &SpotOptions) -> Result<Spots, SpotError> {
-    let t0 = std::time::Instant::now();
-    let lap = |n: &str| {
-        if std::env::var_os("LAP").is_some() {
-            eprintln!("{n} {:.1}", t0.elapsed().as_secs_f64() * 1e3)
-        }
-    };
-    let linear = photo.linear();
-    lap("linear");
-    let half = linear.half_planes();
-    lap("half");
-    let colour = colour::of_spots(&half);
-    lap("colour");
-    let plane = half.mixed(colour.weights);
-    let noise = plane.halved().noise(16.0);
-    lap("noise");
-    let found = detect::detect(&plane, noise, options.false_spots);
-    lap("detect");
-    let mut spots = measure::measure(&linear, &colour, noise, &found);
-    lap("measure");
+    let t0 = std::time::Instant::now(); let lap = |n: &str| if std::env::var_os("LAP").is_some() { eprintln!("{n} {:.1}", t0.elapsed().as_secs_f64()*1e3) };
+    let linear = photo.linear();lap("linear");
+    let half = linear.half_planes();lap("half");
+    let colour = colour::of_spots(&half);lap("colour");
+    // On a printed sheet the marks hide the spots beside them until the room light is taken off.
+    let search_weights = if colour.marks > MANY_MARKS { colour.without_room } else { colour.weights };
+    let plane = half.mixed(search_weights);
+    let noise = half.mixed(colour.weights).halved().noise(16.0);lap("noise");
+    let found = detect::detect(&plane, noise, options.false_spots);lap("detect");
+    let mut spots = measure::measure(&linear, &colour, noise, &found);lap("measure");
     if spots.is_empty() {
         let best = found.peaks.first().copied().or(found.best_reject);
         return Err(SpotError::NothingFound {

@@ -9,9 +9,7 @@ const COUNT: usize = 9;
 /// Position of the centre among them.
 const X: usize = 1;
 const Y: usize = 2;
-const MAX_STEPS: usize = 24;
-/// Weights follow the model for so many steps, then rest: a moving target never converges.
-const FREE_STEPS: usize = 8;
+const MAX_STEPS: usize = 16;
 /// Residuals beyond so many standard deviations lose weight (Huber): lines, dust and undetected neighbours.
 const HUBER: f64 = 4.0;
 
@@ -101,24 +99,15 @@ impl Profile {
         (is_ellipse && moved.height > 0.0 && moved.height.is_finite()).then_some(moved)
     }
 
-    fn value_and_gradient(&self, cell: &Cell) -> (f64, f64, Vector) {
+    fn value_and_gradient(&self, cell: &Cell) -> (f64, f64, [f64; COUNT]) {
         let (dx, dy) = (cell.x_px - self.x_px, cell.y_px - self.y_px);
         let [xx, xy, yy] = self.inverse_shape;
         let (px, py) = (xx * dx + xy * dy, xy * dx + yy * dy);
         let bell = (-0.5 * (px * dx + py * dy)).exp();
         let spot = self.height * bell;
         let value = spot + self.background + self.slope[0] * cell.x_px + self.slope[1] * cell.y_px;
-        let gradient = Vector::from([
-            bell,
-            spot * px,
-            spot * py,
-            -0.5 * spot * dx * dx,
-            -spot * dx * dy,
-            -0.5 * spot * dy * dy,
-            1.0,
-            cell.x_px,
-            cell.y_px,
-        ]);
+        let gradient =
+            [bell, spot * px, spot * py, -0.5 * spot * dx * dx, -spot * dx * dy, -0.5 * spot * dy * dy, 1.0, cell.x_px, cell.y_px];
         (value, spot, gradient)
     }
 }
@@ -132,39 +121,38 @@ impl PixelNoise {
 /// Weighted least squares from a start, Levenberg-Marquardt with the weights following the model.
 ///
 /// `None` where fewer cells than parameters are free, the normal matrix is singular, or the profile leaves the window.
-pub(super) fn fit(window: &Window, start: Profile, noise: &PixelNoise) -> Option<Fitted> {
+///
+/// - `tolerance_px`: the centre is settled when a step moves it by less
+pub(super) fn fit(window: &Window, start: Profile, noise: &PixelNoise, tolerance_px: f64) -> Option<Fitted> {
     if window.cells.len() <= COUNT + 3 {
         return None;
     }
     let mut profile = start;
-    let mut weights = weights(window, &profile, noise);
-    let mut state = normal_equations(window, &profile, &weights);
+    let mut weights = vec![0.0; window.cells.len()];
+    let mut state = evaluate(window, &profile, noise, &mut weights);
+    let mut next_weights = weights.clone();
     let mut damping = 1e-2;
     for step_number in 0..MAX_STEPS {
-        let Some(step) = damped_step(&state, damping) else {
-            damping *= 10.0;
+        let step = damped_step(&state, damping);
+        let tried = step.and_then(|step| profile.shifted(&step)).filter(|tried| tried.x_px.hypot(tried.y_px) < window.reach_px);
+        let Some((tried, step)) = tried.zip(step) else {
+            damping *= 8.0;
             continue;
         };
-        let tried = profile.shifted(&step).filter(|tried| tried.x_px.hypot(tried.y_px) < window.reach_px);
-        let cost = tried.map(|tried| cost(window, &tried, &weights));
-        match (tried, cost) {
-            (Some(tried), Some(cost)) if cost <= state.cost => {
-                let is_settled = step[X].hypot(step[Y]) < 2e-3 && state.cost - cost < 1e-4 * state.cost;
-                profile = tried;
-                damping = (damping * 0.2).max(1e-9);
-                if step_number < FREE_STEPS {
-                    weights = self::weights(window, &profile, noise);
-                }
-                state = normal_equations(window, &profile, &weights);
-                if is_settled && step_number > 2 {
-                    break;
-                }
+        next_weights.copy_from_slice(&weights);
+        let next = evaluate(window, &tried, noise, &mut next_weights);
+        if next.cost_before <= state.cost {
+            let is_settled = step[X].hypot(step[Y]) < tolerance_px && state.cost - next.cost_before < 0.1 * tolerance_px * state.cost;
+            (profile, state) = (tried, next);
+            std::mem::swap(&mut weights, &mut next_weights);
+            damping = (damping * 0.2).max(1e-9);
+            if is_settled && step_number > 1 {
+                break;
             }
-            _ => {
-                damping *= 8.0;
-                if damping > 1e8 {
-                    break;
-                }
+        } else {
+            damping *= 8.0;
+            if damping > 1e6 {
+                break;
             }
         }
     }
@@ -174,30 +162,27 @@ pub(super) fn fit(window: &Window, start: Profile, noise: &PixelNoise) -> Option
 struct State {
     normal: Matrix,
     gradient: Vector,
+    /// With the weights of this profile.
     cost: f64,
+    /// With the weights of the profile before, which alone can be compared with its cost.
+    cost_before: f64,
 }
 
-fn weights(window: &Window, profile: &Profile, noise: &PixelNoise) -> Vec<f64> {
-    let weight = |cell: &Cell| {
-        let spot = profile.spot(cell.x_px, cell.y_px);
-        let value = spot + profile.background + profile.slope[0] * cell.x_px + profile.slope[1] * cell.y_px;
-        let variance = noise.variance(spot, cell, window.pixels_per_cell).max(1e-14);
-        let deviation = (cell.value - value).abs() / variance.sqrt();
-        if deviation > HUBER { HUBER / deviation / variance } else { 1.0 / variance }
-    };
-    window.cells.iter().map(weight).collect()
-}
-
-fn normal_equations(window: &Window, profile: &Profile, weights: &[f64]) -> State {
+/// One pass over the cells: the normal equations with the weights that this profile deserves.
+///
+/// - `weights`: those of the profile before; replaced by the new ones
+fn evaluate(window: &Window, profile: &Profile, noise: &PixelNoise, weights: &mut [f64]) -> State {
     let mut normal = [[0.0; COUNT]; COUNT];
     let mut gradient = [0.0; COUNT];
-    let mut cost = 0.0;
-    for (cell, &weight) in window.cells.iter().zip(weights) {
-        let (value, _, slope) = profile.value_and_gradient(cell);
+    let (mut cost, mut cost_before) = (0.0, 0.0);
+    for (cell, weight) in window.cells.iter().zip(weights) {
+        let (value, spot, slope) = profile.value_and_gradient(cell);
         let residual = cell.value - value;
-        cost += weight * residual * residual;
+        cost_before += *weight * residual * residual;
+        *weight = cell_weight(residual, noise.variance(spot, cell, window.pixels_per_cell));
+        cost += *weight * residual * residual;
         for i in 0..COUNT {
-            let weighted = weight * slope[i];
+            let weighted = *weight * slope[i];
             gradient[i] += weighted * residual;
             for j in 0..=i {
                 normal[i][j] += weighted * slope[j];
@@ -205,15 +190,15 @@ fn normal_equations(window: &Window, profile: &Profile, weights: &[f64]) -> Stat
         }
     }
     let normal = Matrix::from_fn(|i, j| if j <= i { normal[i][j] } else { normal[j][i] });
-    State { normal, gradient: Vector::from(gradient), cost }
+    State { normal, gradient: Vector::from(gradient), cost, cost_before }
 }
 
-fn cost(window: &Window, profile: &Profile, weights: &[f64]) -> f64 {
-    let term = |(cell, weight): (&Cell, &f64)| {
-        let model = profile.spot(cell.x_px, cell.y_px) + profile.background + profile.slope[0] * cell.x_px + profile.slope[1] * cell.y_px;
-        weight * (cell.value - model).powi(2)
-    };
-    window.cells.iter().zip(weights).map(term).sum()
+/// Inverse variance, less for outliers.
+fn cell_weight(residual: f64, variance: f64) -> f64 {
+    let variance = variance.max(1e-14);
+    let limit2 = HUBER * HUBER * variance;
+    let residual2 = residual * residual;
+    if residual2 > limit2 { (limit2 / residual2).sqrt() / variance } else { 1.0 / variance }
 }
 
 fn damped_step(state: &State, damping: f64) -> Option<Vector> {

@@ -58,13 +58,18 @@ impl Window {
     /// Cuts a square of `reach_px` to each side of a place, in cells of `bin_px` (rounded down).
     ///
     /// A clipped pixel takes its eight neighbours with it: charge, demosaicing and JPEG spill over.
-    pub(super) fn cut(mix: &Mix, at_px: [f64; 2], bin_px: f64, reach_px: f64) -> Self {
+    ///
+    /// - `room`: a view that shows little of the laser; where it is dark the screen is printed, and the spot is not what it would be
+    pub(super) fn cut(mix: &Mix, room: Option<&Mix>, at_px: [f64; 2], bin_px: f64, reach_px: f64) -> Self {
         let bin = to_count(bin_px).max(1);
         let cells_reach = to_count((reach_px / bin as f64).ceil()).max(3);
         let side = (2 * cells_reach + 1) * bin;
         let half = (side - 1) / 2;
         let corner = at_px.map(|at| at.round().clamp(-1e6, 1e6) - half as f64);
-        let raster = Raster::read(mix, corner, side);
+        let mut raster = Raster::read(mix, corner, side);
+        if let Some(room) = room {
+            raster.mark_ink(&Raster::read(room, corner, side));
+        }
         let mut window = Self {
             middle_px: corner.map(|c| c + 0.5 * (side - 1) as f64),
             reach_px: 0.5 * side as f64,
@@ -84,10 +89,14 @@ impl Window {
     }
 }
 
+/// Share of the paper's room light below which a pixel is taken as printed.
+const INK_LIGHT: f64 = 0.7;
+
 #[derive(Clone, Copy, PartialEq)]
 enum State {
     Good,
     Clipped,
+    Ink,
     Missing,
 }
 
@@ -114,6 +123,30 @@ impl Raster {
         raster
     }
 
+    /// Marks the pixels around which the room light of `room` falls below `INK_LIGHT` of what the screen reflects here.
+    fn mark_ink(&mut self, room: &Self) {
+        let side = self.side;
+        let mean = |at: usize| -> f64 {
+            let (x, y) = (at % side, at / side);
+            let rows = y.saturating_sub(1)..(y + 2).min(side);
+            let columns = x.saturating_sub(1)..(x + 2).min(side);
+            let count = (rows.len() * columns.len()) as f64;
+            rows.flat_map(|row| columns.clone().map(move |column| room.value[row * side + column])).sum::<f64>() / count
+        };
+        let means: Vec<f64> = (0..side * side).map(mean).collect();
+        let mut sorted: Vec<f64> = means.iter().zip(&self.state).filter(|(_, state)| **state == State::Good).map(|(mean, _)| *mean).collect();
+        if sorted.len() < 20 {
+            return;
+        }
+        let bright = sorted.len() * 7 / 10;
+        let paper = *sorted.select_nth_unstable_by(bright, f64::total_cmp).1;
+        for (state, mean) in self.state.iter_mut().zip(means) {
+            if *state == State::Good && mean < INK_LIGHT * paper {
+                *state = State::Ink;
+            }
+        }
+    }
+
     /// Mean of `bin`² pixels; `None` if one of them is missing, clipped, or beside a clipped one.
     fn cell(&self, left: usize, top: usize, bin: usize) -> Option<f64> {
         let mut sum = 0.0;
@@ -122,7 +155,7 @@ impl Raster {
                 let at = y * self.side + x;
                 let is_inside = x >= left && y >= top && x < left + bin && y < top + bin;
                 match self.state[at] {
-                    State::Clipped => return None,
+                    State::Clipped | State::Ink => return None,
                     State::Missing if is_inside => return None,
                     _ if is_inside => sum += self.value[at],
                     _ => {}
