@@ -41,14 +41,7 @@ fn score_photo(case: &Path, truth: &Value, photo: &Value, score: &mut Score) {
     let verbose = std::env::var_os("SPOTS_VERBOSE").is_some();
     let decoded = photo::decode(&std::fs::read(case.join(file)).unwrap()).unwrap();
     let Ok(found) = spots::find(&decoded, &spots::SpotOptions::default()) else { return };
-    if std::env::var_os("DBG").is_some() {
-        println!(
-            "  truth contrast2 {:.3} grain {:.2} floor {:.3}",
-            number(&truth["look"]["speckle"]).powi(2),
-            number(&truth["look"]["grain"]),
-            0.3 * number(&truth["look"]["speckle"]) * number(&truth["look"]["grain"])
-        );
-    }
+    if std::env::var_os("DBG").is_some() { println!("  truth contrast2 {:.3} grain {:.2} floor {:.3}", number(&truth["look"]["speckle"]).powi(2), number(&truth["look"]["grain"]), 0.3 * number(&truth["look"]["speckle"]) * number(&truth["look"]["grain"])); }
     score.photos += 1;
     let floor = 0.3 * number(&truth["look"]["speckle"]) * number(&truth["look"]["grain"]);
     let mut is_known = vec![false; found.spots.len()];

@@ -27,6 +27,9 @@ pub(super) enum Command {
         after_help = "Example:\n  spotrule target --paper a4 --pitch 10 --out target.pdf\n\nPrint at 100 %, then measure the print with a steel rule in both directions: printers scale by 0.1 to 0.5 %."
     )]
     Target(TargetArguments),
+    /// Draw the photos of an invented bench, with the truth behind them
+    #[command(after_help = "Example:\n  spotrule render --demo embossed-film --out my-demo")]
+    Render(super::render::RenderArgs),
     /// Print the completion script for a shell
     #[command(after_help = "Example:\n  spotrule completions bash > ~/.local/share/bash-completion/completions/spotrule")]
     Completions(CompletionArguments),

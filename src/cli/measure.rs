@@ -111,7 +111,9 @@ fn deliver(arguments: &MeasureArguments, measurement: &Measurement, loaded: &Loa
     if let Some(path) = &arguments.overlay {
         let unreadable = |error| Failure::Measurement { about: Some(loaded.patterns[0].0.clone()), error: Error::Photo(error) };
         let photo = photo::decode(&loaded.patterns[0].1).map_err(unreadable)?;
-        files::write(path, &Vec::new(), Existing::Replaced)?;
+        let unwritable = |cause| Failure::Unwritable { path: path.clone(), cause: std::io::Error::other(cause) };
+        let picture = report::png(&report::overlay(&photo, measurement, 0)).map_err(unwritable)?;
+        files::write(path, &picture, Existing::Replaced)?;
     }
     match &arguments.json {
         Some(path) if path.as_os_str() == "-" => return files::print(&report::json(measurement, &report::Program::this())),

@@ -8,7 +8,7 @@ mod failure;
 mod files;
 mod measure;
 mod new;
-pub mod render;
+mod render;
 mod target;
 
 pub use arguments::command;
@@ -29,6 +29,7 @@ pub fn run() -> ExitCode {
         Command::Measure(arguments) => measure::run(&arguments),
         Command::New(arguments) => new::run(&arguments),
         Command::Target(arguments) => target::run(&arguments),
+        Command::Render(arguments) => render::run(&arguments),
         Command::Completions(arguments) => completions::shell(&arguments),
         Command::Manual(arguments) => completions::manual(&arguments),
     };

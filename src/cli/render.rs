@@ -15,26 +15,26 @@ use std::{path::PathBuf, process::ExitCode};
 ///
 /// Example: spotrule render --demo embossed-film --out my-demo
 #[derive(Debug, clap::Args)]
-pub struct RenderArgs {
+pub(super) struct RenderArgs {
     /// Scene file (TOML).
     #[arg(required_unless_present = "demo", conflicts_with = "demo")]
-    pub scene: Option<PathBuf>,
+    pub(super) scene: Option<PathBuf>,
     /// A built-in scene instead of a file.
     #[arg(long, value_name = "NAME", value_parser = clap::builder::PossibleValuesParser::new(DEMO_NAMES))]
-    pub demo: Option<String>,
+    pub(super) demo: Option<String>,
     /// Folder to write into; made if it does not exist.
     #[arg(long, value_name = "DIR")]
-    pub out: PathBuf,
+    pub(super) out: PathBuf,
     /// Replace files that exist.
     #[arg(long)]
-    pub force: bool,
+    pub(super) force: bool,
 }
 
 /// Runs the command; names each file written on stdout.
 ///
 /// # Errors
 /// A scene that cannot be read or drawn, files that exist (all are looked for before the first is written) or cannot be written.
-pub fn run(arguments: &RenderArgs) -> Result<ExitCode, Failure> {
+pub(super) fn run(arguments: &RenderArgs) -> Result<ExitCode, Failure> {
     let scene = scene(arguments)?;
     let taken = file_names(&scene).into_iter().map(|name| arguments.out.join(name)).find(|path| path.exists());
     if let (Some(path), false) = (taken, arguments.force) {

@@ -82,16 +82,17 @@ fn blaming(file: &PhotoFile<'_>, error: Error) -> Refusal {
 fn look_at_pattern(file: &PhotoFile<'_>, dots_in_pattern: bool) -> Result<SeenPattern, Error> {
     let photo = photo::decode(file.bytes)?;
     let spots = spots::find(&photo, &spots::SpotOptions::default())?;
-    let dots = if dots_in_pattern { Some(target::read(&dimmest_channel(&photo, &spots), &target::ReadOptions::default())?) } else { None };
+    let dots = if dots_in_pattern { Some(target::read(&without_laser(&photo, &spots), &target::ReadOptions::default())?) } else { None };
     Ok(SeenPattern { size_px: [photo.width, photo.height], exif: photo.exif, spots, dots })
 }
 
-/// The plane in which the laser shows least, for reading dots that lie under the pattern.
-fn dimmest_channel(photo: &Photo, spots: &Spots) -> photo::Light {
-    let dimmest = (0..3).min_by(|&a, &b| spots.colour[a].total_cmp(&spots.colour[b])).unwrap_or(0);
-    let mut weights = [0.0; 3];
-    weights[dimmest] = 1.0;
-    photo.light(weights)
+/// Luminance without the laser's own channel, for reading dots that lie under the pattern.
+fn without_laser(photo: &Photo, spots: &Spots) -> photo::Light {
+    let own = (0..3).max_by(|&a, &b| spots.colour[a].total_cmp(&spots.colour[b])).unwrap_or(0);
+    let mut weights = photo::LUMINANCE;
+    weights[own] = 0.0;
+    let sum: f64 = weights.iter().sum();
+    photo.light(weights.map(|weight| weight / sum))
 }
 
 fn look_at_target(file: &PhotoFile<'_>) -> Result<SeenTarget, Error> {

@@ -33,8 +33,14 @@ pub(super) fn detect(half: &Plane, noise: Noise, false_spots: f64) -> Detection 
     let levels = levels(half);
     let cells: usize = levels.iter().map(|level| level.response.len()).sum();
     let floor = |cell_px: f64| move |light: f64| (noise.variance(light) * KERNEL_ENERGY).sqrt() / cell_px;
-    let peaks_above =
-        |threshold: f64| -> Vec<Peak> { levels.iter().flat_map(|level| level.peaks(threshold, &floor(level.cell_px))).collect() };
+    let extremes_beyond = |threshold: f64| {
+        let of_level = |level: &Level| level.extremes(threshold, &floor(level.cell_px));
+        levels.iter().map(of_level).fold((Vec::new(), Vec::new()), |(mut peaks, mut dips), more| {
+            peaks.extend(more.peaks);
+            dips.extend(more.dips);
+            (peaks, dips)
+        })
+    };
     let normal = threshold(cells, false_spots);
     let (mut peaks, dips) = extremes_beyond(normal);
     let threshold = with_tails(normal, &peaks, &dips);
@@ -54,8 +60,7 @@ pub(super) fn detect(half: &Plane, noise: Noise, false_spots: f64) -> Detection 
 /// At most two dips, or one for every twenty peaks, may remain between the threshold and `TAIL_END`; deeper ones are dark things
 /// (marks, dust, a ruler), not noise.
 fn with_tails(normal: f64, peaks: &[Peak], dips: &[Peak]) -> f64 {
-    let above =
-        |list: &[Peak], threshold: f64, end: f64| list.iter().filter(|p| p.signal_to_noise > threshold && p.signal_to_noise < end).count();
+    let above = |list: &[Peak], threshold: f64, end: f64| list.iter().filter(|p| p.signal_to_noise > threshold && p.signal_to_noise < end).count();
     let mut threshold = normal;
     while threshold < TAIL_END {
         let allowed = (above(peaks, threshold, f64::INFINITY) / 20).max(2);
@@ -132,8 +137,7 @@ impl Grid {
     pub(super) fn near(&self, x_px: f64, y_px: f64, reach_px: f64) -> impl Iterator<Item = usize> {
         let span = |at: f64, count: usize| bucket(at - reach_px).min(count - 1)..=bucket(at + reach_px).min(count - 1);
         let columns = span(x_px, self.columns);
-        span(y_px, self.rows)
-            .flat_map(move |row| columns.clone().flat_map(move |column| self.buckets[row * self.columns + column].iter().copied()))
+        span(y_px, self.rows).flat_map(move |row| columns.clone().flat_map(move |column| self.buckets[row * self.columns + column].iter().copied()))
     }
 }
 

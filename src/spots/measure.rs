@@ -78,10 +78,7 @@ impl Found {
 
     fn is_spot(&self) -> bool {
         let [long, short] = self.fitted.profile.axes_px();
-        short >= MIN_SIGMA_PX
-            && long <= MAX_SIGMA_PX
-            && long <= MAX_ELONGATION * short
-            && self.strength() * (long * short).sqrt() > LEAST_STRENGTH
+        short >= MIN_SIGMA_PX && long <= MAX_SIGMA_PX && long <= MAX_ELONGATION * short && self.strength() * (long * short).sqrt() > LEAST_STRENGTH
     }
 
     /// Height over the noise of one pixel.
@@ -97,9 +94,7 @@ pub(super) fn measure(linear: &LinearPhoto, colour: &Colour, noise: Noise, found
     let room = (colour.marks > super::MANY_MARKS && linear.channels() == 3).then_some(Mix { linear, weights: colour.paper_weights });
     let alone = |peak: &Peak| fit_alone(&mix, room.as_ref(), peak, noise);
     let first: Vec<Found> = found.peaks.par_iter().filter_map(alone).filter(Found::is_spot).collect();
-    if std::env::var_os("LAP").is_some() {
-        eprintln!("  first {:.1} of {}", t0.elapsed().as_secs_f64() * 1e3, found.peaks.len());
-    }
+    if std::env::var_os("LAP").is_some() { eprintln!("  first {:.1} of {}", t0.elapsed().as_secs_f64()*1e3, found.peaks.len()); }
     let first = one_per_place(first, linear);
     let speckle = FIRST_SPECKLE * scatter::excess(&shapes(&first, linear, STRONG..f64::INFINITY), USUAL_SPECKLE / FIRST_SPECKLE);
     let speckle = speckle.clamp(MIN_SPECKLE, MAX_SPECKLE);

@@ -2,6 +2,7 @@
 
 use crate::photo::LinearPhoto;
 
+
 /// One or several pixels.
 #[derive(Debug, Clone, Copy)]
 pub(super) struct Cell {
