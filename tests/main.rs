@@ -1,6 +1,10 @@
 //! One test binary; one comment line per file.
-#![allow(clippy::unwrap_used, clippy::print_stdout, reason = "a test says what it measured, and fails where it stands")]
+#![allow(clippy::unwrap_used, clippy::print_stdout, clippy::cast_possible_truncation, reason = "a test says what it measured, and fails where it stands")]
 
+// the program as a user and a script meet it
+mod cli;
+// what must not matter: turned photos, units of length
+mod invariance;
 // the examples of GUM Supplement 1 by our Monte Carlo
 mod jcgm101;
 // the house rules that a machine can check: who may use whom, sources that exist
@@ -13,5 +17,9 @@ mod nist;
 mod opencv;
 // worked examples and tables from the GUM, its supplement and textbooks
 mod published;
+// photos drawn from known truth, for the tests above and below
+mod scenes;
 // spots of photos with known truth, where those photos are at hand
 mod spots_on_known_photos;
+// a planted truth comes back, as often inside its uncertainty as stated
+mod truth;
