@@ -20,7 +20,8 @@ const MAY_USE: &[(&str, &[&str])] = &[
     ("fit", &["math", "lattice", "optics", "spots", "target", "bench"]),
     ("budget", &["fit"]),
     ("measure", &["budget"]),
-    ("synth", &["lattice", "optics", "photo", "target"]),
+    // a made-up scene speaks the language of the bench file that it writes beside its photo
+    ("synth", &["lattice", "optics", "photo", "target", "bench"]),
     ("report", &["measure"]),
     ("cli", &["report", "synth"]),
 ];
@@ -51,8 +52,8 @@ const OUTER_WORLD: &[&str] = &[
     "clap::",
 ];
 
-/// Rooms that may serialise, through structs of their own.
-const MAY_SERIALISE: &[&str] = &["bench", "report", "cli"];
+/// Rooms that may serialise, through structs of their own: bench files, results, scenes and their truth.
+const MAY_SERIALISE: &[&str] = &["bench", "report", "synth", "cli"];
 
 fn root(path: &str) -> PathBuf {
     Path::new(env!("CARGO_MANIFEST_DIR")).join(path)
