@@ -41,7 +41,14 @@ fn score_photo(case: &Path, truth: &Value, photo: &Value, score: &mut Score) {
     let verbose = std::env::var_os("SPOTS_VERBOSE").is_some();
     let decoded = photo::decode(&std::fs::read(case.join(file)).unwrap()).unwrap();
     let Ok(found) = spots::find(&decoded, &spots::SpotOptions::default()) else { return };
-    if std::env::var_os("DBG").is_some() { println!("  truth contrast2 {:.3} grain {:.2} floor {:.3}", number(&truth["look"]["speckle"]).powi(2), number(&truth["look"]["grain"]), 0.3 * number(&truth["look"]["speckle"]) * number(&truth["look"]["grain"])); }
+    if std::env::var_os("DBG").is_some() {
+        println!(
+            "  truth contrast2 {:.3} grain {:.2} floor {:.3}",
+            number(&truth["look"]["speckle"]).powi(2),
+            number(&truth["look"]["grain"]),
+            0.3 * number(&truth["look"]["speckle"]) * number(&truth["look"]["grain"])
+        );
+    }
     score.photos += 1;
     let floor = 0.3 * number(&truth["look"]["speckle"]) * number(&truth["look"]["grain"]);
     let mut is_known = vec![false; found.spots.len()];
@@ -55,7 +62,16 @@ fn score_photo(case: &Path, truth: &Value, photo: &Value, score: &mut Score) {
     for (spot, _) in found.spots.iter().zip(&is_known).filter(|(_, known)| !**known) {
         score.false_spots += 1;
         if verbose {
-            println!("  false {file} {:.1} {:.1} peak {:.4} bg {:.4} snr {:.1} axes {:?} clipped {}", spot.at.x_px, spot.at.y_px, spot.peak, spot.background, spot.signal_to_noise, [spot.shape.xx.sqrt(), spot.shape.yy.sqrt()], spot.clipped_px);
+            println!(
+                "  false {file} {:.1} {:.1} peak {:.4} bg {:.4} snr {:.1} axes {:?} clipped {}",
+                spot.at.x_px,
+                spot.at.y_px,
+                spot.peak,
+                spot.background,
+                spot.signal_to_noise,
+                [spot.shape.xx.sqrt(), spot.shape.yy.sqrt()],
+                spot.clipped_px
+            );
         }
     }
     for order in photo["orders"].as_array().unwrap() {
@@ -92,7 +108,17 @@ fn score_photo(case: &Path, truth: &Value, photo: &Value, score: &mut Score) {
             score.by_strength[class].1 += 2.0;
         }
         if verbose && pull2 > 18.0 {
-            println!("  pull {file} {x:.1} {y:.1} dx {dx:.3} dy {dy:.3} u {:.3} {:.3} chi2 {:.2} sigma {sigma:.2} fit {:.2} {:.2} peak {} / {:.3} snr {snr} kind {kind} cut {}", c.xx.sqrt(), c.yy.sqrt(), spot.profile_chi2, spot.shape.xx.sqrt(), spot.shape.yy.sqrt(), order["peak"], spot.peak, spot.cut_by_frame);
+            println!(
+                "  pull {file} {x:.1} {y:.1} dx {dx:.3} dy {dy:.3} u {:.3} {:.3} chi2 {:.2} sigma {sigma:.2} fit {:.2} {:.2} peak {} / {:.3} snr {snr} kind {kind} cut {}",
+                c.xx.sqrt(),
+                c.yy.sqrt(),
+                spot.profile_chi2,
+                spot.shape.xx.sqrt(),
+                spot.shape.yy.sqrt(),
+                order["peak"],
+                spot.peak,
+                spot.cut_by_frame
+            );
         }
     }
 }
@@ -120,10 +146,18 @@ impl Score {
         let rms = |sum: f64, kind: usize| (sum / self.number[kind].max(1) as f64).sqrt();
         println!(
             "{name:6} open {:4}/{:4} error {:.3} px (speckle floor {:.3}) pull {:.2} ({}) beyond {:2} | clipped {:3}/{:3} error {:.3} px pull {:.2} beyond {:2} | false {:5.1} per photo",
-            self.seen[0], self.wanted[0], rms(self.error2[0], 0), rms(self.floor2[0], 0), rms(self.pull2[0], 0),
+            self.seen[0],
+            self.wanted[0],
+            rms(self.error2[0], 0),
+            rms(self.floor2[0], 0),
+            rms(self.pull2[0], 0),
             self.by_strength.map(|(sum, n)| format!("{:.2}", (sum / n.max(1.0)).sqrt())).join(" "),
             self.beyond3[0],
-            self.seen[1], self.wanted[1], rms(self.error2[1], 1), rms(self.pull2[1], 1), self.beyond3[1],
+            self.seen[1],
+            self.wanted[1],
+            rms(self.error2[1], 1),
+            rms(self.pull2[1], 1),
+            self.beyond3[1],
             self.false_spots as f64 / self.photos.max(1) as f64
         );
     }

@@ -13,13 +13,13 @@ use crate::frames::{PixelCovariance, PixelPoint};
 use crate::photo::{LinearPhoto, Noise};
 
 /// Half the window in standard deviations of the spot, and the margin beyond it that pins the background, px.
-const REACH_SIGMAS: f64 = 3.5;
-const REACH_MARGIN_PX: f64 = 3.0;
+const REACH_SIGMAS: f64 = 3.2;
+const REACH_MARGIN_PX: f64 = 2.5;
 /// Standard deviation of a spot in cells, above which its window is binned, in the first and in the last fit: finer sampling costs
 /// time and adds nothing.
 const ROUGH_CELLS: f64 = 1.5;
 const FINE_CELLS: f64 = 1.7;
-const FINE_CELLS_CLIPPED: f64 = 2.8;
+const FINE_CELLS_CLIPPED: f64 = 2.2;
 /// How still the centre must stand in the first and in the last fit, px.
 const ROUGH_PX: f64 = 0.05;
 const FINE_PX: f64 = 2e-3;
@@ -78,7 +78,10 @@ impl Found {
 
     fn is_spot(&self) -> bool {
         let [long, short] = self.fitted.profile.axes_px();
-        short >= MIN_SIGMA_PX && long <= MAX_SIGMA_PX && long <= MAX_ELONGATION * short && self.strength() * (long * short).sqrt() > LEAST_STRENGTH
+        short >= MIN_SIGMA_PX
+            && long <= MAX_SIGMA_PX
+            && long <= MAX_ELONGATION * short
+            && self.strength() * (long * short).sqrt() > LEAST_STRENGTH
     }
 
     /// Height over the noise of one pixel.
@@ -89,12 +92,10 @@ impl Found {
 
 /// Fits every candidate twice: alone, then with its neighbours taken off and the speckle of the photo known.
 pub(super) fn measure(linear: &LinearPhoto, colour: &Colour, noise: Noise, found: &Detection) -> Vec<Spot> {
-    let t0 = std::time::Instant::now();
     let mix = Mix { linear, weights: colour.weights };
     let room = (colour.marks > super::MANY_MARKS && linear.channels() == 3).then_some(Mix { linear, weights: colour.paper_weights });
     let alone = |peak: &Peak| fit_alone(&mix, room.as_ref(), peak, noise);
     let first: Vec<Found> = found.peaks.par_iter().filter_map(alone).filter(Found::is_spot).collect();
-    if std::env::var_os("LAP").is_some() { eprintln!("  first {:.1} of {}", t0.elapsed().as_secs_f64()*1e3, found.peaks.len()); }
     let first = one_per_place(first, linear);
     let speckle = FIRST_SPECKLE * scatter::excess(&shapes(&first, linear, STRONG..f64::INFINITY), USUAL_SPECKLE / FIRST_SPECKLE);
     let speckle = speckle.clamp(MIN_SPECKLE, MAX_SPECKLE);
@@ -102,7 +103,6 @@ pub(super) fn measure(linear: &LinearPhoto, colour: &Colour, noise: Noise, found
     let second: Vec<Found> = (0..first.len()).into_par_iter().filter_map(|index| scene.fit(index)).filter(Found::is_spot).collect();
     let second = like_the_beam(one_per_place(second, linear));
     let excess = Excess::of(&second, linear);
-    if std::env::var_os("DBG").is_some() { eprintln!("dark {} unique {} speckle {speckle:.3} excess {excess:?}", colour.marks, first.len()); }
     second.iter().map(|found| spot_of(found, &excess)).collect()
 }
 
@@ -212,7 +212,8 @@ impl Scene<'_> {
         let mut weights = [0.0; 3];
         weights[channel] = 1.0;
         let ratio = self.colour.share[channel] / self.colour.share[self.colour.main];
-        let noise = PixelNoise { background: self.colour.pixel_variance[channel].max(1e-12), per_light: self.noise.b, speckle: self.speckle };
+        let noise =
+            PixelNoise { background: self.colour.pixel_variance[channel].max(1e-12), per_light: self.noise.b, speckle: self.speckle };
         let mut seen = self.fit_through(&Mix { linear: self.linear, weights }, index, whole, ratio, noise).filter(Found::is_spot)?;
         if distance_px(&seen, whole) > 2.0 * whole.sigma_px() {
             return None;

@@ -101,7 +101,7 @@ impl Level {
         let mut left = 1;
         while left < self.width - 1 {
             let right = ((left / HALF_TILE + 1) * HALF_TILE).min(self.width - 1);
-            let limit = threshold as f32 * self.tiles.least(left, y);
+            let limit = to_f32(threshold) * self.tiles.least(left, y);
             let row = &self.response[y * self.width + left..y * self.width + right];
             if row.iter().fold(false, |any, height| any | (height.abs() > limit)) {
                 for x in (left..right).filter(|x| row[x - left].abs() > limit) {
@@ -240,7 +240,7 @@ impl Tiles {
             let cells = (top..bottom).flat_map(|y| (left..right).map(move |x| y * width + x));
             let step = ((right - left) * (bottom - top) / TILE_SAMPLES).max(1) | 1;
             let (mut scatter, mut light): (Vec<f32>, Vec<f32>) = cells.step_by(step).map(|at| (response[at].abs(), surround[at])).unzip();
-            (quantile(&mut scatter, QUANTILE) / QUANTILE_SIGMA as f32, quantile(&mut light, 0.5))
+            (quantile(&mut scatter, QUANTILE) / to_f32(QUANTILE_SIGMA), quantile(&mut light, 0.5))
         };
         let (sigma, light) = (0..columns * rows).into_par_iter().map(of_tile).unzip();
         Self { columns, rows, sigma, light }
@@ -272,6 +272,11 @@ impl Tiles {
         let ((columns, u), (rows, v)) = (axis(x, self.columns), axis(y, self.rows));
         (columns, rows, u, v)
     }
+}
+
+#[expect(clippy::cast_possible_truncation, reason = "rounding to f32 is meant")]
+fn to_f32(value: f64) -> f32 {
+    value as f32
 }
 
 /// Value below which a share of the list lies (0 for an empty list).
