@@ -37,7 +37,7 @@ const MAX_ELONGATION: f64 = 5.0;
 /// usual for card seen by a camera; and its limits.
 const FIRST_SPECKLE: f64 = 0.2;
 const USUAL_SPECKLE: f64 = 0.3;
-const MIN_SPECKLE: f64 = 0.01;
+const MIN_SPECKLE: f64 = 0.003;
 const MAX_SPECKLE: f64 = 4.0;
 /// Share of the laser's light that a channel must carry to be asked about a clipped spot.
 const LEAST_SHARE: f64 = 0.01;
@@ -97,8 +97,7 @@ pub(super) fn measure(linear: &LinearPhoto, colour: &Colour, noise: Noise, found
     let alone = |peak: &Peak| fit_alone(&mix, room.as_ref(), peak, noise);
     let first: Vec<Found> = found.peaks.par_iter().filter_map(alone).filter(Found::is_spot).collect();
     let first = one_per_place(first, linear);
-    let speckle = FIRST_SPECKLE * scatter::excess(&shapes(&first, linear, STRONG..f64::INFINITY), USUAL_SPECKLE / FIRST_SPECKLE);
-    let speckle = speckle.clamp(MIN_SPECKLE, MAX_SPECKLE);
+    let speckle = speckle_of(&first, linear);
     let scene = Scene { linear, colour, all: &first, grid: grid_of(&first, linear), noise, speckle, room };
     let second: Vec<Found> = (0..first.len()).into_par_iter().filter_map(|index| scene.fit(index)).filter(Found::is_spot).collect();
     let second = like_the_beam(one_per_place(second, linear));
@@ -106,11 +105,22 @@ pub(super) fn measure(linear: &LinearPhoto, colour: &Colour, noise: Noise, found
     second.iter().map(|found| spot_of(found, &excess)).collect()
 }
 
+/// Speckle strength at which the shapes of the strong spots scatter as the fits expect.
+fn speckle_of(first: &[Found], linear: &LinearPhoto) -> f64 {
+    let excess = scatter::excess(&shapes(first, linear, STRONG..f64::INFINITY), USUAL_SPECKLE / FIRST_SPECKLE);
+    // Sensor noise has its share in what was expected, so that a deficit is the speckle's more than in proportion.
+    let excess = if excess < 1.0 { excess * excess } else { excess };
+    (FIRST_SPECKLE * excess).clamp(MIN_SPECKLE, MAX_SPECKLE)
+}
+
 /// Shapes of the whole, unclipped spots whose height over the noise of one pixel lies in a range.
 fn shapes(all: &[Found], linear: &LinearPhoto, strength: std::ops::Range<f64>) -> Vec<Shape> {
     let usual = usual_sigma_px(all);
+    let is_open = |found: &Found| found.clipped_px == 0;
+    // Clipped spots tell less of the beam, but where nearly all clip they must do.
+    let takes_clipped = all.iter().filter(|found| is_open(found)).count() < BEAM_SPOTS;
     let is_fit = |found: &&Found| {
-        let is_whole = found.clipped_px == 0 && found.missing_px == 0;
+        let is_whole = found.missing_px == 0 && (takes_clipped || is_open(found));
         is_whole && strength.contains(&found.strength()) && usual.is_none_or(|usual| (0.6..1.7).contains(&(found.sigma_px() / usual)))
     };
     let shape = |found: &Found| {
