@@ -310,7 +310,10 @@ fn spot_of(found: &Found, excess: &Excess) -> Spot {
     let [x_px, y_px] = found.at_px();
     let [xx, xy, yy] = found.fitted.profile.shape();
     let scale = found.fitted.chi2.max(1.0) * excess.at(found.strength());
-    let [cxx, cxy, cyy] = found.fitted.covariance.map(|c| c * scale);
+    let fitted = found.fitted.covariance.map(|c| c * scale);
+    // Wherever the fit would put it, the centre lies inside what is seen: the spot and its clipped core.
+    let core = found.clipped_px as f64 / std::f64::consts::PI;
+    let [cxx, cxy, cyy] = both_known(fitted, [xx + core, xy, yy + core]);
     let floor = U_FLOOR_PX * U_FLOOR_PX;
     let profile = &found.fitted.profile;
     Spot {
@@ -323,5 +326,31 @@ fn spot_of(found: &Found, excess: &Excess) -> Spot {
         clipped_px: found.clipped_px,
         cut_by_frame: found.missing_px > 0,
         profile_chi2: found.fitted.chi2,
+    }
+}
+
+/// Covariance of a place that two independent statements tell: the inverse of the sum of their inverses.
+fn both_known([axx, axy, ayy]: [f64; 3], [bxx, bxy, byy]: [f64; 3]) -> [f64; 3] {
+    // A (A + B)⁻¹ B, which needs no inverse of either.
+    let (xx, xy, yy) = (axx + bxx, axy + bxy, ayy + byy);
+    let determinant = xx * yy - xy * xy;
+    let (ixx, ixy, iyy) = (yy / determinant, -xy / determinant, xx / determinant);
+    let (pxx, pxy) = (axx * ixx + axy * ixy, axx * ixy + axy * iyy);
+    let (pyx, pyy) = (axy * ixx + ayy * ixy, axy * ixy + ayy * iyy);
+    [pxx * bxx + pxy * bxy, pxx * bxy + pxy * byy, pyx * bxy + pyy * byy]
+}
+
+#[cfg(test)]
+mod tests {
+    use super::both_known;
+
+    #[test]
+    fn two_statements_are_joined_by_their_inverses() {
+        // Along the axes: 1 / (1/4 + 1/1) = 0.8 and 1 / (1/9 + 1/1) = 0.9.
+        let [xx, xy, yy] = both_known([4.0, 0.0, 9.0], [1.0, 0.0, 1.0]);
+        assert!((xx - 0.8).abs() < 1e-12 && xy.abs() < 1e-12 && (yy - 0.9).abs() < 1e-12);
+        // Two equal statements halve the covariance, whatever its shape.
+        let [xx, xy, yy] = both_known([2.0, 0.5, 3.0], [2.0, 0.5, 3.0]);
+        assert!((xx - 1.0).abs() < 1e-12 && (xy - 0.25).abs() < 1e-12 && (yy - 1.5).abs() < 1e-12);
     }
 }

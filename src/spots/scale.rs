@@ -294,6 +294,7 @@ mod tests {
     use super::{KERNEL_ENERGY, Level};
     use crate::photo::Plane;
 
+    #[expect(clippy::cast_possible_truncation, reason = "rounding to f32 is meant")]
     fn level(paint: impl Fn(f64, f64) -> f64) -> Level {
         let (width, height) = (64, 48);
         let value = (0..width * height).map(|i| paint((i % width) as f64, (i / width) as f64) as f32).collect();
@@ -302,7 +303,7 @@ mod tests {
 
     #[test]
     fn kernel_energy_is_the_sum_of_squares() {
-        let impulse = level(|x, y| f64::from(u8::from(x == 30.0 && y == 20.0)));
+        let impulse = level(|x, y| if (x - 30.0).hypot(y - 20.0) < 0.5 { 1.0 } else { 0.0 });
         let energy: f64 = impulse.response.iter().map(|&v| f64::from(v).powi(2)).sum();
         assert!((energy - KERNEL_ENERGY).abs() < 1e-4, "{energy}");
     }
