@@ -178,9 +178,7 @@ mod tests {
     fn jpeg(width: u32, height: u32) -> Vec<u8> {
         let mut bytes = Vec::new();
         let pixels: Vec<u8> = (0..width * height * 3).map(|i| (i * 7 % 251) as u8).collect();
-        codecs::jpeg::JpegEncoder::new_with_quality(&mut bytes, 90)
-            .write_image(&pixels, width, height, ExtendedColorType::Rgb8)
-            .unwrap();
+        codecs::jpeg::JpegEncoder::new_with_quality(&mut bytes, 90).write_image(&pixels, width, height, ExtendedColorType::Rgb8).unwrap();
         bytes
     }
 

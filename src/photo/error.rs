@@ -12,9 +12,7 @@ pub enum PhotoError {
         looks_like: String,
     },
     /// The file ends before the picture does.
-    #[error(
-        "the {format} file is cut off after {bytes} bytes: the lower part of the picture is missing; copy it again from the camera"
-    )]
+    #[error("the {format} file is cut off after {bytes} bytes: the lower part of the picture is missing; copy it again from the camera")]
     CutOff {
         /// Kind of file.
         format: &'static str,

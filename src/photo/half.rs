@@ -29,8 +29,7 @@ impl LinearPhoto<'_> {
     #[must_use]
     pub fn half_planes(&self) -> HalfPlanes {
         let (width, height) = (self.width() / 2, self.height() / 2);
-        let mut planes: Vec<Plane> =
-            (0..self.channels()).map(|_| Plane { width, height, value: vec![0.0; width * height] }).collect();
+        let mut planes: Vec<Plane> = (0..self.channels()).map(|_| Plane { width, height, value: vec![0.0; width * height] }).collect();
         match &self.photo().samples {
             Samples::U8(codes) => fill(&mut planes, codes, self.width(), self.table()),
             Samples::U16(codes) => fill(&mut planes, codes, self.width(), self.table()),

@@ -43,7 +43,15 @@ pub(super) struct Colour {
 /// Colour: the response of the matched filter at cells of 4 px, summed over the strong peaks that clip nowhere.
 pub(super) fn of_spots(half: &HalfPlanes) -> Colour {
     if half.planes.len() < 3 {
-        return Colour { share: [0.0; 3], weights: GREY, without_room: GREY, paper_weights: [0.0; 3], marks: 0, main: 0, pixel_variance: [0.0; 3] };
+        return Colour {
+            share: [0.0; 3],
+            weights: GREY,
+            without_room: GREY,
+            paper_weights: [0.0; 3],
+            marks: 0,
+            main: 0,
+            pixel_variance: [0.0; 3],
+        };
     }
     let levels: Vec<Level> = half.planes.iter().map(|plane| Level::of(&plane.halved(), 4.0)).collect();
     let (Light { trusted, all }, dips) = light_of_blobs(&levels);
@@ -66,12 +74,22 @@ fn weigh(light: [f64; 3], dips: &[Seen], noise: Matrix3<f64>) -> Colour {
     let room_weights = room_weights(share, main);
     let (marks, depth) = marks_of(dips, room_weights);
     let without_room = without_room(weights, Vector3::from(room_weights), Vector3::from(depth));
-    Colour { share, weights: weights.into(), without_room: without_room.into(), paper_weights: room_weights.map(|w| f64::from(u8::from(w > 0.0))), marks, main, pixel_variance }
+    Colour {
+        share,
+        weights: weights.into(),
+        without_room: without_room.into(),
+        paper_weights: room_weights.map(|w| f64::from(u8::from(w > 0.0))),
+        marks,
+        main,
+        pixel_variance,
+    }
 }
 
 /// Number of dips that are dark in room light, and how much each channel loses there.
 fn marks_of(dips: &[Seen], room_weights: [f64; 3]) -> (usize, [f64; 3]) {
-    let in_room = |seen: &Seen| (0..3).fold((0.0, 0.0), |(response, around), c| (response + room_weights[c] * seen[c].0, around + room_weights[c] * seen[c].1));
+    let in_room = |seen: &Seen| {
+        (0..3).fold((0.0, 0.0), |(response, around), c| (response + room_weights[c] * seen[c].0, around + room_weights[c] * seen[c].1))
+    };
     let is_mark = |seen: &&Seen| {
         let (response, around) = in_room(seen);
         around > 0.0 && -response > MARK_DEPTH * around

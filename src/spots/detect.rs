@@ -60,7 +60,8 @@ pub(super) fn detect(half: &Plane, noise: Noise, false_spots: f64) -> Detection 
 /// At most two dips, or one for every twenty peaks, may remain between the threshold and `TAIL_END`; deeper ones are dark things
 /// (marks, dust, a ruler), not noise.
 fn with_tails(normal: f64, peaks: &[Peak], dips: &[Peak]) -> f64 {
-    let above = |list: &[Peak], threshold: f64, end: f64| list.iter().filter(|p| p.signal_to_noise > threshold && p.signal_to_noise < end).count();
+    let above =
+        |list: &[Peak], threshold: f64, end: f64| list.iter().filter(|p| p.signal_to_noise > threshold && p.signal_to_noise < end).count();
     let mut threshold = normal;
     while threshold < TAIL_END {
         let allowed = (above(peaks, threshold, f64::INFINITY) / 20).max(2);
@@ -137,7 +138,8 @@ impl Grid {
     pub(super) fn near(&self, x_px: f64, y_px: f64, reach_px: f64) -> impl Iterator<Item = usize> {
         let span = |at: f64, count: usize| bucket(at - reach_px).min(count - 1)..=bucket(at + reach_px).min(count - 1);
         let columns = span(x_px, self.columns);
-        span(y_px, self.rows).flat_map(move |row| columns.clone().flat_map(move |column| self.buckets[row * self.columns + column].iter().copied()))
+        span(y_px, self.rows)
+            .flat_map(move |row| columns.clone().flat_map(move |column| self.buckets[row * self.columns + column].iter().copied()))
     }
 }
 

@@ -13,13 +13,13 @@ use crate::frames::{PixelCovariance, PixelPoint};
 use crate::photo::{LinearPhoto, Noise};
 
 /// Half the window in standard deviations of the spot, and the margin beyond it that pins the background, px.
-const REACH_SIGMAS: f64 = 3.5;
-const REACH_MARGIN_PX: f64 = 3.0;
+const REACH_SIGMAS: f64 = 3.2;
+const REACH_MARGIN_PX: f64 = 2.5;
 /// Standard deviation of a spot in cells, above which its window is binned, in the first and in the last fit: finer sampling costs
 /// time and adds nothing.
 const ROUGH_CELLS: f64 = 1.5;
 const FINE_CELLS: f64 = 1.7;
-const FINE_CELLS_CLIPPED: f64 = 2.8;
+const FINE_CELLS_CLIPPED: f64 = 2.2;
 /// How still the centre must stand in the first and in the last fit, px.
 const ROUGH_PX: f64 = 0.05;
 const FINE_PX: f64 = 2e-3;
@@ -37,7 +37,7 @@ const MAX_ELONGATION: f64 = 5.0;
 /// usual for card seen by a camera; and its limits.
 const FIRST_SPECKLE: f64 = 0.2;
 const USUAL_SPECKLE: f64 = 0.3;
-const MIN_SPECKLE: f64 = 0.01;
+const MIN_SPECKLE: f64 = 0.003;
 const MAX_SPECKLE: f64 = 4.0;
 /// Share of the laser's light that a channel must carry to be asked about a clipped spot.
 const LEAST_SHARE: f64 = 0.01;
@@ -78,7 +78,10 @@ impl Found {
 
     fn is_spot(&self) -> bool {
         let [long, short] = self.fitted.profile.axes_px();
-        short >= MIN_SIGMA_PX && long <= MAX_SIGMA_PX && long <= MAX_ELONGATION * short && self.strength() * (long * short).sqrt() > LEAST_STRENGTH
+        short >= MIN_SIGMA_PX
+            && long <= MAX_SIGMA_PX
+            && long <= MAX_ELONGATION * short
+            && self.strength() * (long * short).sqrt() > LEAST_STRENGTH
     }
 
     /// Height over the noise of one pixel.
@@ -89,28 +92,35 @@ impl Found {
 
 /// Fits every candidate twice: alone, then with its neighbours taken off and the speckle of the photo known.
 pub(super) fn measure(linear: &LinearPhoto, colour: &Colour, noise: Noise, found: &Detection) -> Vec<Spot> {
-    let t0 = std::time::Instant::now();
     let mix = Mix { linear, weights: colour.weights };
     let room = (colour.marks > super::MANY_MARKS && linear.channels() == 3).then_some(Mix { linear, weights: colour.paper_weights });
     let alone = |peak: &Peak| fit_alone(&mix, room.as_ref(), peak, noise);
     let first: Vec<Found> = found.peaks.par_iter().filter_map(alone).filter(Found::is_spot).collect();
-    if std::env::var_os("LAP").is_some() { eprintln!("  first {:.1} of {}", t0.elapsed().as_secs_f64()*1e3, found.peaks.len()); }
     let first = one_per_place(first, linear);
-    let speckle = FIRST_SPECKLE * scatter::excess(&shapes(&first, linear, STRONG..f64::INFINITY), USUAL_SPECKLE / FIRST_SPECKLE);
-    let speckle = speckle.clamp(MIN_SPECKLE, MAX_SPECKLE);
+    let speckle = speckle_of(&first, linear);
     let scene = Scene { linear, colour, all: &first, grid: grid_of(&first, linear), noise, speckle, room };
     let second: Vec<Found> = (0..first.len()).into_par_iter().filter_map(|index| scene.fit(index)).filter(Found::is_spot).collect();
     let second = like_the_beam(one_per_place(second, linear));
     let excess = Excess::of(&second, linear);
-    if std::env::var_os("DBG").is_some() { eprintln!("dark {} unique {} speckle {speckle:.3} excess {excess:?}", colour.marks, first.len()); }
     second.iter().map(|found| spot_of(found, &excess)).collect()
+}
+
+/// Speckle strength at which the shapes of the strong spots scatter as the fits expect.
+fn speckle_of(first: &[Found], linear: &LinearPhoto) -> f64 {
+    let excess = scatter::excess(&shapes(first, linear, STRONG..f64::INFINITY), USUAL_SPECKLE / FIRST_SPECKLE);
+    // Sensor noise has its share in what was expected, so that a deficit is the speckle's more than in proportion.
+    let excess = if excess < 1.0 { excess * excess } else { excess };
+    (FIRST_SPECKLE * excess).clamp(MIN_SPECKLE, MAX_SPECKLE)
 }
 
 /// Shapes of the whole, unclipped spots whose height over the noise of one pixel lies in a range.
 fn shapes(all: &[Found], linear: &LinearPhoto, strength: std::ops::Range<f64>) -> Vec<Shape> {
     let usual = usual_sigma_px(all);
+    let is_open = |found: &Found| found.clipped_px == 0;
+    // Clipped spots tell less of the beam, but where nearly all clip they must do.
+    let takes_clipped = all.iter().filter(|found| is_open(found)).count() < BEAM_SPOTS;
     let is_fit = |found: &&Found| {
-        let is_whole = found.clipped_px == 0 && found.missing_px == 0;
+        let is_whole = found.missing_px == 0 && (takes_clipped || is_open(found));
         is_whole && strength.contains(&found.strength()) && usual.is_none_or(|usual| (0.6..1.7).contains(&(found.sigma_px() / usual)))
     };
     let shape = |found: &Found| {
@@ -212,7 +222,8 @@ impl Scene<'_> {
         let mut weights = [0.0; 3];
         weights[channel] = 1.0;
         let ratio = self.colour.share[channel] / self.colour.share[self.colour.main];
-        let noise = PixelNoise { background: self.colour.pixel_variance[channel].max(1e-12), per_light: self.noise.b, speckle: self.speckle };
+        let noise =
+            PixelNoise { background: self.colour.pixel_variance[channel].max(1e-12), per_light: self.noise.b, speckle: self.speckle };
         let mut seen = self.fit_through(&Mix { linear: self.linear, weights }, index, whole, ratio, noise).filter(Found::is_spot)?;
         if distance_px(&seen, whole) > 2.0 * whole.sigma_px() {
             return None;
@@ -299,7 +310,10 @@ fn spot_of(found: &Found, excess: &Excess) -> Spot {
     let [x_px, y_px] = found.at_px();
     let [xx, xy, yy] = found.fitted.profile.shape();
     let scale = found.fitted.chi2.max(1.0) * excess.at(found.strength());
-    let [cxx, cxy, cyy] = found.fitted.covariance.map(|c| c * scale);
+    let fitted = found.fitted.covariance.map(|c| c * scale);
+    // Wherever the fit would put it, the centre lies inside what is seen: the spot and its clipped core.
+    let core = found.clipped_px as f64 / std::f64::consts::PI;
+    let [cxx, cxy, cyy] = both_known(fitted, [xx + core, xy, yy + core]);
     let floor = U_FLOOR_PX * U_FLOOR_PX;
     let profile = &found.fitted.profile;
     Spot {
@@ -312,5 +326,31 @@ fn spot_of(found: &Found, excess: &Excess) -> Spot {
         clipped_px: found.clipped_px,
         cut_by_frame: found.missing_px > 0,
         profile_chi2: found.fitted.chi2,
+    }
+}
+
+/// Covariance of a place that two independent statements tell: the inverse of the sum of their inverses.
+fn both_known([axx, axy, ayy]: [f64; 3], [bxx, bxy, byy]: [f64; 3]) -> [f64; 3] {
+    // A (A + B)⁻¹ B, which needs no inverse of either.
+    let (xx, xy, yy) = (axx + bxx, axy + bxy, ayy + byy);
+    let determinant = xx * yy - xy * xy;
+    let (ixx, ixy, iyy) = (yy / determinant, -xy / determinant, xx / determinant);
+    let (pxx, pxy) = (axx * ixx + axy * ixy, axx * ixy + axy * iyy);
+    let (pyx, pyy) = (axy * ixx + ayy * ixy, axy * ixy + ayy * iyy);
+    [pxx * bxx + pxy * bxy, pxx * bxy + pxy * byy, pyx * bxy + pyy * byy]
+}
+
+#[cfg(test)]
+mod tests {
+    use super::both_known;
+
+    #[test]
+    fn two_statements_are_joined_by_their_inverses() {
+        // Along the axes: 1 / (1/4 + 1/1) = 0.8 and 1 / (1/9 + 1/1) = 0.9.
+        let [xx, xy, yy] = both_known([4.0, 0.0, 9.0], [1.0, 0.0, 1.0]);
+        assert!((xx - 0.8).abs() < 1e-12 && xy.abs() < 1e-12 && (yy - 0.9).abs() < 1e-12);
+        // Two equal statements halve the covariance, whatever its shape.
+        let [xx, xy, yy] = both_known([2.0, 0.5, 3.0], [2.0, 0.5, 3.0]);
+        assert!((xx - 1.0).abs() < 1e-12 && (xy - 0.25).abs() < 1e-12 && (yy - 1.5).abs() < 1e-12);
     }
 }

@@ -24,7 +24,7 @@ pub struct Spot {
     pub at: PixelPoint,
     /// Covariance of `at`, px²; includes what speckle does to the profile.
     pub covariance: PixelCovariance,
-    /// Second moments of the fitted profile (its shape), px²: sigma_x², sigma_xy, sigma_y².
+    /// Second moments of the fitted profile (its shape), px²: along x, mixed, along y.
     pub shape: PixelCovariance,
     /// Height of the profile above background, linear light of the laser's main channel (may exceed 1 for clipped spots).
     pub peak: f64,
@@ -80,16 +80,15 @@ const MANY_MARKS: usize = 30;
 /// # Errors
 /// [`SpotError::NothingFound`] with the brightest thing seen.
 pub fn find(photo: &Photo, options: &SpotOptions) -> Result<Spots, SpotError> {
-    let t0 = std::time::Instant::now(); let lap = |n: &str| if std::env::var_os("LAP").is_some() { eprintln!("{n} {:.1}", t0.elapsed().as_secs_f64()*1e3) };
-    let linear = photo.linear();lap("linear");
-    let half = linear.half_planes();lap("half");
-    let colour = colour::of_spots(&half);lap("colour");
+    let linear = photo.linear();
+    let half = linear.half_planes();
+    let colour = colour::of_spots(&half);
     // On a printed sheet the marks hide the spots beside them until the room light is taken off.
     let search_weights = if colour.marks > MANY_MARKS { colour.without_room } else { colour.weights };
     let plane = half.mixed(search_weights);
-    let noise = half.mixed(colour.weights).halved().noise(16.0);lap("noise");
-    let found = detect::detect(&plane, noise, options.false_spots);lap("detect");
-    let mut spots = measure::measure(&linear, &colour, noise, &found);lap("measure");
+    let noise = half.mixed(colour.weights).halved().noise(16.0);
+    let found = detect::detect(&plane, noise, options.false_spots);
+    let mut spots = measure::measure(&linear, &colour, noise, &found);
     if spots.is_empty() {
         let best = found.peaks.first().copied().or(found.best_reject);
         return Err(SpotError::NothingFound {

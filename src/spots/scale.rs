@@ -101,7 +101,7 @@ impl Level {
         let mut left = 1;
         while left < self.width - 1 {
             let right = ((left / HALF_TILE + 1) * HALF_TILE).min(self.width - 1);
-            let limit = threshold as f32 * self.tiles.least(left, y);
+            let limit = to_f32(threshold) * self.tiles.least(left, y);
             let row = &self.response[y * self.width + left..y * self.width + right];
             if row.iter().fold(false, |any, height| any | (height.abs() > limit)) {
                 for x in (left..right).filter(|x| row[x - left].abs() > limit) {
@@ -240,7 +240,7 @@ impl Tiles {
             let cells = (top..bottom).flat_map(|y| (left..right).map(move |x| y * width + x));
             let step = ((right - left) * (bottom - top) / TILE_SAMPLES).max(1) | 1;
             let (mut scatter, mut light): (Vec<f32>, Vec<f32>) = cells.step_by(step).map(|at| (response[at].abs(), surround[at])).unzip();
-            (quantile(&mut scatter, QUANTILE) / QUANTILE_SIGMA as f32, quantile(&mut light, 0.5))
+            (quantile(&mut scatter, QUANTILE) / to_f32(QUANTILE_SIGMA), quantile(&mut light, 0.5))
         };
         let (sigma, light) = (0..columns * rows).into_par_iter().map(of_tile).unzip();
         Self { columns, rows, sigma, light }
@@ -274,6 +274,11 @@ impl Tiles {
     }
 }
 
+#[expect(clippy::cast_possible_truncation, reason = "rounding to f32 is meant")]
+fn to_f32(value: f64) -> f32 {
+    value as f32
+}
+
 /// Value below which a share of the list lies (0 for an empty list).
 #[expect(clippy::cast_possible_truncation, clippy::cast_sign_loss, reason = "an index below the length")]
 fn quantile(list: &mut [f32], share: f64) -> f32 {
@@ -289,6 +294,7 @@ mod tests {
     use super::{KERNEL_ENERGY, Level};
     use crate::photo::Plane;
 
+    #[expect(clippy::cast_possible_truncation, reason = "rounding to f32 is meant")]
     fn level(paint: impl Fn(f64, f64) -> f64) -> Level {
         let (width, height) = (64, 48);
         let value = (0..width * height).map(|i| paint((i % width) as f64, (i / width) as f64) as f32).collect();
@@ -297,7 +303,7 @@ mod tests {
 
     #[test]
     fn kernel_energy_is_the_sum_of_squares() {
-        let impulse = level(|x, y| f64::from(u8::from(x == 30.0 && y == 20.0)));
+        let impulse = level(|x, y| if (x - 30.0).hypot(y - 20.0) < 0.5 { 1.0 } else { 0.0 });
         let energy: f64 = impulse.response.iter().map(|&v| f64::from(v).powi(2)).sum();
         assert!((energy - KERNEL_ENERGY).abs() < 1e-4, "{energy}");
     }

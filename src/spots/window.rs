@@ -2,7 +2,6 @@
 
 use crate::photo::LinearPhoto;
 
-
 /// One or several pixels.
 #[derive(Debug, Clone, Copy)]
 pub(super) struct Cell {
@@ -135,7 +134,8 @@ impl Raster {
             rows.flat_map(|row| columns.clone().map(move |column| room.value[row * side + column])).sum::<f64>() / count
         };
         let means: Vec<f64> = (0..side * side).map(mean).collect();
-        let mut sorted: Vec<f64> = means.iter().zip(&self.state).filter(|(_, state)| **state == State::Good).map(|(mean, _)| *mean).collect();
+        let mut sorted: Vec<f64> =
+            means.iter().zip(&self.state).filter(|(_, state)| **state == State::Good).map(|(mean, _)| *mean).collect();
         if sorted.len() < 20 {
             return;
         }
