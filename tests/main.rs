@@ -1,6 +1,8 @@
 //! One test binary; one comment line per file.
 #![allow(clippy::unwrap_used, clippy::print_stdout, reason = "a test says what it measured, and fails where it stands")]
 
+// text and JSON of one fixed measurement, word for word
+mod golden;
 // the house rules that a machine can check: who may use whom, sources that exist
 mod layering;
 // runs a reference library (Python) beside our own code, where one is available
