@@ -307,7 +307,7 @@ mod tests {
     /// Draws a scene and, where `SPOTRULE_PICTURES` names a folder, leaves the picture there to be looked at.
     fn draw(name: &str, photo: &Photo, measurement: &Measurement) -> RgbImage {
         let picture = overlay(photo, measurement, 0);
-        if let Some(folder) = std::env::var_os("SPOTRULE_PICTURES") {
+        if let Some(folder) = std::env::var_os("SPOTRULE_PICTURES").filter(|folder| !folder.is_empty()) {
             std::fs::write(std::path::Path::new(&folder).join(format!("{name}.png")), png(&picture).unwrap()).unwrap();
         }
         picture
