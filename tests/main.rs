@@ -1,12 +1,8 @@
 //! One test binary; one comment line per file.
 #![allow(clippy::unwrap_used, clippy::print_stdout, clippy::cast_possible_truncation, reason = "a test says what it measured, and fails where it stands")]
 
-// the program as a user and a script meet it
-mod cli;
-// what must not matter: turned photos, units of length
-mod invariance;
-// the examples of GUM Supplement 1 by our Monte Carlo
-mod jcgm101;
+// text and JSON of one fixed measurement, word for word
+mod golden;
 // the house rules that a machine can check: who may use whom, sources that exist
 mod layering;
 // runs a reference library (Python) beside our own code, where one is available

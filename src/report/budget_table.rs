@@ -3,7 +3,7 @@
 use super::{
     columns::{Align, columns, paragraph, shortened},
     rounding::{rounded, significant},
-    units,
+    units::{self, Unit},
 };
 use crate::measure::{BudgetLine, SampleResult};
 
@@ -55,7 +55,7 @@ fn row(sample: &SampleResult, line: &BudgetLine, pitches: usize) -> Vec<String> 
     for pitch in 0..pitches {
         let share = line.share.get(pitch).copied().unwrap_or(0.0);
         cells.push(share_text(share));
-        let unit = units::for_pitch(sample.pitch_m[pitch].value);
+        let unit = u_unit(sample, pitch);
         let u_pitch_m = line.u_pitch_m.get(pitch).copied().unwrap_or(0.0);
         cells.push(format!("{}{}", rounded(0.0, u_pitch_m * unit.per_si).u, unit.suffix()));
         if pitch == 0 {
@@ -64,6 +64,16 @@ fn row(sample: &SampleResult, line: &BudgetLine, pitches: usize) -> Vec<String> 
     }
     cells.extend(line.angle_share.map(share_text));
     cells
+}
+
+/// One unit for the whole column, one step below that of the pitch where u is small.
+fn u_unit(sample: &SampleResult, pitch: usize) -> Unit {
+    let largest_m = sample.budget.iter().filter_map(|line| line.u_pitch_m.get(pitch)).copied().fold(0.0, f64::max);
+    match largest_m {
+        u if u < 0.5e-6 => units::NANOMETRE,
+        u if u < 0.5e-3 => units::MICROMETRE,
+        _ => units::MILLIMETRE,
+    }
 }
 
 fn is_small(line: &BudgetLine) -> bool {

@@ -325,7 +325,7 @@ mod tests {
         }
     }
 
-    /// serde_json writes what is not finite as null; a null under any of the format's keys would break a script.
+    /// `serde_json` writes what is not finite as null; a null under any of the format's keys would break a script.
     #[test]
     fn no_null_in_a_sound_measurement() {
         for measurement in [example::plane(), example::line()] {

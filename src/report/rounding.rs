@@ -147,7 +147,7 @@ mod tests {
         assert_eq!(concise(value, u), want_concise, "concise({value}, {u})");
     }
 
-    /// 7.2.6 of JCGM 100:2008 gives 10.05762 Ω with u_c = 27 mΩ as 10.058(27) Ω; 7.2.2 the mass of 100.02147 g with u_c = 0.35 mg.
+    /// 7.2.6 of JCGM 100:2008 gives 10.05762 Ω with a standard uncertainty of 27 mΩ as 10.058(27) Ω; 7.2.2 the mass of 100.02147 g with 0.35 mg.
     #[test]
     fn examples_of_the_gum() {
         check(10.057_62, 0.027, ("10.058", "0.027"), "10.058(27)");
@@ -169,7 +169,7 @@ mod tests {
         check(812.34, 12.4, ("812", "12"), "812(12)");
         check(4567.0, 123.0, ("4570", "120"), "4570(120)");
         check(-0.001, 0.5, ("0.00", "0.50"), "0.00(50)");
-        check(-3.14159, 0.01, ("-3.142", "0.010"), "-3.142(10)");
+        check(-3.24159, 0.01, ("-3.242", "0.010"), "-3.242(10)");
     }
 
     #[test]

@@ -148,10 +148,11 @@ fn rejection_reasons(measurement: &Measurement) -> String {
 
 fn fit_words(fit: &FitSummary) -> String {
     let mut words = format!(
-        "spots lie {} px (rms) from where the model puts them; reduced chi-square {} with {} degrees of freedom",
+        "spots lie {} px (rms) from where the model puts them; reduced chi-square {} with {} degree{} of freedom",
         significant(fit.rms_px, 2),
         significant(fit.chi2_reduced, 3),
         significant(fit.degrees_of_freedom, 4),
+        if (fit.degrees_of_freedom - 1.0).abs() < 1e-9 { "" } else { "s" },
     );
     words += &if fit.birge_factor > 1.0 {
         format!(": more scatter than the spots' own uncertainties, which were therefore raised by {}", significant(fit.birge_factor, 3))

@@ -54,7 +54,7 @@ impl Tone {
             levels.get(place).map_or(0.0, |&level| f64::from(level))
         };
         let (middle, spread, white) = (at(0.5), (at(0.84) - at(0.5)).max(1.0), at(0.9999));
-        Self { black: middle - 1.5 * spread, knee: 6.0 * spread, white: white.max(middle + 1.0) }
+        Self { black: middle - 1.5 * spread, knee: 3.0 * spread, white: white.max(middle + 1.0) }
     }
 
     /// Grey for every level that can be stored.

@@ -190,11 +190,21 @@ impl Scene<'_> {
         }
     }
 
+    /// The arrow with its magnification; nothing where no order has a residual to show.
+    fn residual_meaning(&self) -> Option<Entry> {
+        let times = significant(self.layout.magnification, 3);
+        let cut = if self.orders().any(|order| self.layout.is_cut(order)) { ", overlong ones cut" } else { "" };
+        let text = format!("residual, seen minus predicted, {times} times magnified{cut}");
+        let is_shown = self.orders().any(|order| order.residual_px[0].hypot(order.residual_px[1]) > 0.0);
+        is_shown.then_some(Entry { mark: Some(Mark::Residual), text })
+    }
+
     /// The cross with the number of rejected spots and their commonest reasons.
     fn rejected_meaning(&self) -> Option<Entry> {
         let reasons = reason_counts(self.measurement.rejected.iter().filter(|spot| spot.photo == self.photo_index));
         let count: usize = reasons.iter().map(|(_, count)| count).sum();
-        let mut words: Vec<String> = reasons.iter().take(REASONS_SHOWN).map(|(reason, count)| format!("{count} × {reason}")).collect();
+        let times = |count: usize| if count > 1 { format!("{count} × ") } else { String::new() };
+        let mut words: Vec<String> = reasons.iter().take(REASONS_SHOWN).map(|&(reason, count)| times(count) + reason).collect();
         if reasons.len() > REASONS_SHOWN {
             words.push(format!("{} more reasons", reasons.len() - REASONS_SHOWN));
         }
@@ -243,9 +253,7 @@ impl Scene<'_> {
             let axis = if self.is_line() { "direction of the orders" } else { "axes of the lattice" };
             entries.push(Entry { mark: Some(Mark::Axis), text: axis.to_owned() });
         }
-        let times = significant(self.layout.magnification, 3);
-        let cut = if self.orders().any(|order| self.layout.is_cut(order)) { ", overlong ones cut" } else { "" };
-        entries.push(Entry { mark: Some(Mark::Residual), text: format!("residual, seen minus predicted, {times} times magnified{cut}") });
+        entries.extend(self.residual_meaning());
         entries
     }
 }
@@ -299,7 +307,7 @@ mod tests {
     /// Draws a scene and, where `SPOTRULE_PICTURES` names a folder, leaves the picture there to be looked at.
     fn draw(name: &str, photo: &Photo, measurement: &Measurement) -> RgbImage {
         let picture = overlay(photo, measurement, 0);
-        if let Some(folder) = std::env::var_os("SPOTRULE_PICTURES") {
+        if let Some(folder) = std::env::var_os("SPOTRULE_PICTURES").filter(|folder| !folder.is_empty()) {
             std::fs::write(std::path::Path::new(&folder).join(format!("{name}.png")), png(&picture).unwrap()).unwrap();
         }
         picture
