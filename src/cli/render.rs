@@ -7,25 +7,37 @@ use super::{
 use crate::synth::{DEMO_NAMES, Dots, Scene, SynthError, demo_scene, encode, render_marked, render_pattern, render_target};
 use std::{path::PathBuf, process::ExitCode};
 
-/// Draw the photos of an invented bench, with the truth behind them.
+const AXES: &str = "Axes (SI units, turns in radians, right-handed):
+  bench    z along the zero order towards the screen, y up; x points to the LEFT of a person who looks along the beam
+  turns    a plane is turned about x, then about y
+  sample   incidence_rad turns its normal away from the zero order; the lattice lies in its own x and y
+  print    X right, Y up as its reader sees it; viewer: right and up from the zero order
+  photo    x right, y DOWN, a whole number is the centre of a pixel
+
+Lasers can blind: these photos need none, a bench does. Follow your local laser-safety rules and your laser safety officer; class and
+eyewear per IEC 60825-1.
+
+Examples:
+  spotrule render --demo embossed-film --out my-demo
+  spotrule render my-scene.toml --out my-demo";
+
+/// Draw the photos of an invented bench, with the truth behind them
 ///
 /// Writes pattern.jpg, target.jpg (where the scene has a target photo), bench.toml and truth.json into a folder.
-/// The scene file is TOML in SI units, turns in radians; `sample-images/*/scene.toml` are complete, commented examples,
-/// and the keys are documented at `spotrule::synth::Scene`. Unknown keys are refused.
-///
-/// Example: spotrule render --demo embossed-film --out my-demo
+/// The scene file is TOML; sample-images/*/scene.toml are complete, commented examples. Unknown keys are refused.
 #[derive(Debug, clap::Args)]
-pub(super) struct RenderArgs {
-    /// Scene file (TOML).
+#[command(after_long_help = AXES)]
+pub struct RenderArgs {
+    /// Scene file (TOML)
     #[arg(required_unless_present = "demo", conflicts_with = "demo")]
-    pub(super) scene: Option<PathBuf>,
-    /// A built-in scene instead of a file.
+    pub scene: Option<PathBuf>,
+    /// A built-in scene instead of a file
     #[arg(long, value_name = "NAME", value_parser = clap::builder::PossibleValuesParser::new(DEMO_NAMES))]
-    pub(super) demo: Option<String>,
-    /// Folder to write into; made if it does not exist.
+    pub demo: Option<String>,
+    /// Folder to write into; made if it does not exist
     #[arg(long, value_name = "DIR")]
-    pub(super) out: PathBuf,
-    /// Replace files that exist.
+    pub out: PathBuf,
+    /// Replace files that exist
     #[arg(long)]
     pub(super) force: bool,
 }
