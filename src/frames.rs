@@ -20,6 +20,15 @@ pub struct PixelPoint {
     pub y_px: f64,
 }
 
+/// From where the camera looks at the screen.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+pub enum Side {
+    /// At the lit face.
+    Front,
+    /// Through a translucent screen.
+    Behind,
+}
+
 /// A place in the plane of the screen, in the axes of the printed target as its reader sees them.
 ///
 /// X to the right, Y **up**, in metres, from the origin mark of the print.

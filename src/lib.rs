@@ -4,8 +4,8 @@
 //! that the operator knows are residuals; the posterior covariance is the uncertainty.
 //!
 //! Rooms, in the order in which a photo passes through them:
-//! [`photo`] -> [`spots`] -> [`lattice`] -> [`fit`] -> [`budget`] -> [`measure`] -> [`report`];
-//! [`bench`] carries what the operator knows, [`target`] the printed dots, [`optics`] the physics.
+//! [`mod@photo`] -> [`mod@spots`] -> [`mod@lattice`] -> [`mod@fit`] -> [`mod@budget`] -> [`mod@measure`] -> [`mod@report`];
+//! [`mod@bench`] carries what the operator knows, [`mod@target`] the printed dots, [`mod@optics`] the physics.
 
 pub mod bench;
 pub mod budget;

@@ -19,3 +19,9 @@ mod scenes;
 mod spots_on_known_photos;
 // a planted truth comes back, as often inside its uncertainty as stated
 mod truth;
+// the program as a user and a script meet it
+mod cli;
+// what must not matter: turned photos, units of length
+mod invariance;
+// the examples of GUM Supplement 1 by our Monte Carlo
+mod jcgm101;

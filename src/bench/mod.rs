@@ -18,7 +18,7 @@ mod tree;
 
 use crate::{
     Note,
-    frames::{PixelPoint, TargetPoint},
+    frames::{PixelPoint, Side, TargetPoint},
     quantity::Quantity,
 };
 
@@ -124,15 +124,6 @@ pub struct Screen {
     pub tilt_rad: Option<[Quantity; 2]>,
     /// From where the camera looks.
     pub seen_from: Side,
-}
-
-/// From where the camera looks at the screen.
-#[derive(Debug, Clone, Copy, PartialEq, Eq)]
-pub enum Side {
-    /// At the lit face.
-    Front,
-    /// Through a translucent screen.
-    Behind,
 }
 
 /// How places on the screen are known.

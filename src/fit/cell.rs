@@ -5,7 +5,7 @@ use super::{
     observation::Knowledge,
     parameter::{Layout, Parameter},
 };
-use crate::{bench::Side, lattice, math::rotation::rotation_from_vector};
+use crate::{frames::Side, lattice, math::rotation::rotation_from_vector};
 use nalgebra::{Const, Matrix3, U1};
 use num_dual::{DualNum, DualSVec64};
 

@@ -2,7 +2,7 @@
 
 use super::parameter::{Layout, Parameter};
 use crate::{
-    bench::Side,
+    frames::Side,
     optics::{Attitude, Camera, Distortion, PrintPose, ScreenPose, order_direction, screen_hit},
 };
 use nalgebra::Matrix3;

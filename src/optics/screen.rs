@@ -1,6 +1,6 @@
 //! Where a ray meets the screen, and what a reader of the print calls that place.
 
-use crate::{bench::Side, math::rotation::turned_about_x_then_y};
+use crate::{frames::Side, math::rotation::turned_about_x_then_y};
 use nalgebra::{Matrix3, Vector3};
 use num_dual::DualNum;
 

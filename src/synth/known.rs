@@ -5,7 +5,8 @@ use super::{
     scene::{Dots, FileKind, Lattice, Scene},
 };
 use crate::{
-    bench::{self, Bench, Medium, Mode, Pattern, Side, TargetKind},
+    bench::{self, Bench, Medium, Mode, Pattern, TargetKind},
+    frames::Side,
     quantity::{Quantity, format_concise_digits},
 };
 use rand_distr::{Distribution as _, StandardNormal};

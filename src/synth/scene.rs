@@ -4,7 +4,8 @@
 
 use super::{SynthError, known::Known, opening::Opening};
 use crate::{
-    bench::{Mode, Side},
+    bench::Mode,
+    frames::Side,
     math::rotation::turned_about_x_then_y,
     optics::{Attitude, Camera, Distortion, PrintPose, ScreenPose},
 };

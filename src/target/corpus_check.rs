@@ -203,7 +203,7 @@ fn targets_of_known_truth() {
             reading.dot_radius_pitches,
             reading.mark_radius_pitches
         );
-        // Found with this reader: 0.006 to 0.021 px, pulls 0.94 to 1.09 (see the printed lines).
+        // Found with this reader: 0.006 to 0.020 px, pulls 0.90 to 1.08 (see the printed lines).
         if s.wrong > 0 || s.found * 100 < truth.expected_inside * 95 || s.rms_px > 0.03 || !(0.8..1.25).contains(&s.pull_rms) {
             failures.push(format!("{name}: wrong {}, found {} of {}, pull {}", s.wrong, s.found, truth.expected_inside, s.pull_rms));
         }
