@@ -1,6 +1,6 @@
 //! Centroids on synthetic spots against the Cramér-Rao bound, and on clipped ones.
 
-#![expect(clippy::print_stdout, reason = "a test that reports its figures")]
+#![expect(clippy::unwrap_used, reason = "a test that reports its figures")]
 #![expect(clippy::cast_possible_truncation, reason = "places and codes are clamped to the picture")]
 
 use rand::{Rng, SeedableRng};

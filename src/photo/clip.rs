@@ -38,16 +38,17 @@ fn of_samples<T: Copy + Into<u16> + Ord + Default + Send + Sync>(samples: &[T], 
 }
 
 fn maxima<T: Copy + Ord + Default + Send + Sync>(samples: &[T], channels: usize) -> [T; 3] {
+    // Blocks of 48 samples hold whole pixels of one or three channels, and compare side by side in the processor.
     let of_chunk = |chunk: &[T]| {
+        let (blocks, rest) = chunk.as_chunks::<48>();
+        let mut block_top = [T::default(); 48];
+        for block in blocks {
+            block_top.iter_mut().zip(block).for_each(|(top, &sample)| *top = sample.max(*top));
+        }
         let mut top = [T::default(); 3];
-        if channels == 3 {
-            for pixel in chunk.as_chunks::<3>().0 {
-                for (top, &sample) in top.iter_mut().zip(pixel) {
-                    *top = sample.max(*top);
-                }
-            }
-        } else {
-            top[0] = chunk.iter().copied().fold(T::default(), Ord::max);
+        for (at, &sample) in block_top.iter().chain(rest).enumerate() {
+            let top = &mut top[at % channels.min(3)];
+            *top = sample.max(*top);
         }
         top
     };

@@ -84,9 +84,10 @@ pub fn find(photo: &Photo, options: &SpotOptions) -> Result<Spots, SpotError> {
     let half = linear.half_planes();
     let colour = colour::of_spots(&half);
     // On a printed sheet the marks hide the spots beside them until the room light is taken off.
-    let search_weights = if colour.marks > MANY_MARKS { colour.without_room } else { colour.weights };
-    let plane = half.mixed(search_weights);
-    let noise = half.mixed(colour.weights).halved().noise(16.0);
+    let laser = half.mixed(colour.weights);
+    let noise = laser.halved().noise(16.0);
+    let plane = if colour.marks > MANY_MARKS { half.mixed(colour.without_room) } else { laser };
+    drop(half);
     let found = detect::detect(&plane, noise, options.false_spots);
     let mut spots = measure::measure(&linear, &colour, noise, &found);
     if spots.is_empty() {

@@ -168,29 +168,46 @@ struct State {
     cost_before: f64,
 }
 
+/// Cells that are taken together, so that their sums run side by side in the processor.
+const LANES: usize = 4;
+
 /// One pass over the cells: the normal equations with the weights that this profile deserves.
 ///
 /// - `weights`: those of the profile before; replaced by the new ones
 fn evaluate(window: &Window, profile: &Profile, noise: &PixelNoise, weights: &mut [f64]) -> State {
-    let mut normal = [[0.0; COUNT]; COUNT];
-    let mut gradient = [0.0; COUNT];
+    let mut normal = [[[0.0; LANES]; COUNT]; COUNT];
+    let mut gradient = [[0.0; LANES]; COUNT];
     let (mut cost, mut cost_before) = (0.0, 0.0);
-    for (cell, weight) in window.cells.iter().zip(weights) {
-        let (value, spot, slope) = profile.value_and_gradient(cell);
-        let residual = cell.value - value;
-        cost_before += *weight * residual * residual;
-        *weight = cell_weight(residual, noise.variance(spot, cell, window.pixels_per_cell));
-        cost += *weight * residual * residual;
+    for (cells, weights) in window.cells.chunks(LANES).zip(weights.chunks_mut(LANES)) {
+        // Lanes beyond the last cell stay zero and add nothing.
+        let mut slopes = [[0.0; LANES]; COUNT];
+        let mut residuals = [0.0; LANES];
+        let mut lane_weights = [0.0; LANES];
+        for (lane, (cell, weight)) in cells.iter().zip(weights).enumerate() {
+            let (value, spot, slope) = profile.value_and_gradient(cell);
+            let residual = cell.value - value;
+            cost_before += *weight * residual * residual;
+            *weight = cell_weight(residual, noise.variance(spot, cell, window.pixels_per_cell));
+            cost += *weight * residual * residual;
+            residuals[lane] = residual;
+            lane_weights[lane] = *weight;
+            (0..COUNT).for_each(|i| slopes[i][lane] = slope[i]);
+        }
         for i in 0..COUNT {
-            let weighted = *weight * slope[i];
-            gradient[i] += weighted * residual;
+            let weighted: [f64; LANES] = std::array::from_fn(|lane| lane_weights[lane] * slopes[i][lane]);
+            for lane in 0..LANES {
+                gradient[i][lane] += weighted[lane] * residuals[lane];
+            }
             for j in 0..=i {
-                normal[i][j] += weighted * slope[j];
+                for lane in 0..LANES {
+                    normal[i][j][lane] += weighted[lane] * slopes[j][lane];
+                }
             }
         }
     }
-    let normal = Matrix::from_fn(|i, j| if j <= i { normal[i][j] } else { normal[j][i] });
-    State { normal, gradient: Vector::from(gradient), cost, cost_before }
+    let sum = |lanes: &[f64; LANES]| lanes.iter().sum::<f64>();
+    let normal = Matrix::from_fn(|i, j| if j <= i { sum(&normal[i][j]) } else { sum(&normal[j][i]) });
+    State { normal, gradient: Vector::from_fn(|i, _| sum(&gradient[i])), cost, cost_before }
 }
 
 /// Inverse variance, less for outliers.
