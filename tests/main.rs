@@ -25,3 +25,5 @@ mod cli;
 mod invariance;
 // the examples of GUM Supplement 1 by our Monte Carlo
 mod jcgm101;
+// made spots against the Cramér-Rao bound
+mod spot_accuracy;
