@@ -37,7 +37,7 @@ pub(crate) fn measured(scene: &Scene, photos: &Photos, bench: &Bench) -> Result<
 
 /// True pitches, shortest first, m, and the true lattice angle, 90° or more, rad, by plain enumeration of short lattice vectors.
 pub(crate) fn truth(scene: &Scene) -> (Vec<f64>, Option<f64>) {
-    let (a, Some(b)) = scene.direct_m() else { return (vec![scene.direct_m().0[0].hypot(scene.direct_m().0[1])], None) };
+    let (a, Some(b)) = scene.sample.lattice.direct_m() else { return (vec![scene.sample.lattice.direct_m().0[0].hypot(scene.sample.lattice.direct_m().0[1])], None) };
     let mut vectors: Vec<[f64; 2]> = (-4..=4)
         .flat_map(|m| (-4..=4).map(move |n| (f64::from(m), f64::from(n))))
         .filter(|&(m, n)| (m, n) > (0.0, -9.0) && (m != 0.0 || n > 0.0))

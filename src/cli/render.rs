@@ -27,16 +27,16 @@ Examples:
 /// The scene file is TOML; sample-images/*/scene.toml are complete, commented examples. Unknown keys are refused.
 #[derive(Debug, clap::Args)]
 #[command(after_long_help = AXES)]
-pub struct RenderArgs {
+pub(super) struct RenderArgs {
     /// Scene file (TOML)
     #[arg(required_unless_present = "demo", conflicts_with = "demo")]
-    pub scene: Option<PathBuf>,
+    pub(super) scene: Option<PathBuf>,
     /// A built-in scene instead of a file
     #[arg(long, value_name = "NAME", value_parser = clap::builder::PossibleValuesParser::new(DEMO_NAMES))]
-    pub demo: Option<String>,
+    pub(super) demo: Option<String>,
     /// Folder to write into; made if it does not exist
     #[arg(long, value_name = "DIR")]
-    pub out: PathBuf,
+    pub(super) out: PathBuf,
     /// Replace files that exist
     #[arg(long)]
     pub(super) force: bool,

@@ -112,7 +112,7 @@ pub(super) fn whitened_length(covariance: PixelCovariance, [dx, dy]: [f64; 2]) -
 
 /// Lower Cholesky factor inverted: whitens a pixel residual. `None` when the covariance is not positive definite.
 #[must_use]
-pub fn whitening(covariance: PixelCovariance) -> Option<[f64; 3]> {
+pub(super) fn whitening(covariance: PixelCovariance) -> Option<[f64; 3]> {
     let l00 = covariance.xx.sqrt();
     let l10 = covariance.xy / l00;
     let rest = covariance.yy - l10 * l10;

@@ -55,38 +55,66 @@ pub fn solve(mut joint: Joint, outliers: Outliers) -> Result<Fit, FitError> {
     let mut evaluations = 0;
     if outliers == Outliers::Rejected {
         for _ in 0..2 {
-            solve_once(&mut joint, &mut evaluations)?;
+            calm(&mut joint);
+            solve_once(&mut joint, &rough(), &mut evaluations)?;
             reweigh(&mut joint, |length, scale| (HUBER_AT * scale / length.max(1e-12)).min(1.0));
         }
         for _ in 0..4 {
-            solve_once(&mut joint, &mut evaluations)?;
+            calm(&mut joint);
+            solve_once(&mut joint, &rough(), &mut evaluations)?;
             if !reweigh(&mut joint, |length, scale| if length > REJECT_AT * scale.max(1.0) { 0.0 } else { 1.0 }) {
                 break;
             }
         }
     }
-    let solution = solve_once(&mut joint, &mut evaluations)?;
-    let freedom = freedoms(&joint, &solution);
-    let (spot_freedom, spot_chi2_reduced) = freedom.spots;
-    let (print_freedom, print_chi2_reduced) = freedom.prints;
-    joint.spot_scale *= birge(spot_chi2_reduced, spot_freedom);
-    joint.print_scale *= birge(print_chi2_reduced, print_freedom);
-    let solution = solve_once(&mut joint, &mut evaluations)?;
-    Ok(finished(joint, &solution, [spot_freedom, spot_chi2_reduced, print_freedom, print_chi2_reduced], evaluations))
+    scaled_by_birge(joint, evaluations)
 }
 
-/// Birge's factor: the observations' own scatter, where it is larger than stated. It never shrinks an uncertainty.
-fn birge(chi2_reduced: f64, freedom: f64) -> f64 {
-    if freedom >= 1.0 { chi2_reduced.sqrt().max(1.0) } else { 1.0 }
+/// Plain least squares, repeated until the Birge factors that it finds are those that it was weighed with.
+///
+/// The factors come from above: weighed with too small an uncertainty, noise would bend lens and geometry first and never be given back.
+fn scaled_by_birge(mut joint: Joint, mut evaluations: usize) -> Result<Fit, FitError> {
+    let mut freedom = Freedoms::default();
+    for _ in 0..BIRGE_PASSES {
+        let solution = solve_once(&mut joint, &math::Options { objective_tolerance: 1e-9, ..math::Options::default() }, &mut evaluations)?;
+        freedom = freedoms(&joint, &solution);
+        let next = [freedom.spots.birge(), freedom.prints.birge()];
+        let settled = (next[0] / joint.spot_scale).ln().abs() < BIRGE_SETTLED && (next[1] / joint.print_scale).ln().abs() < BIRGE_SETTLED;
+        [joint.spot_scale, joint.print_scale] = next;
+        if settled {
+            break;
+        }
+    }
+    let solution = solve_once(&mut joint, &math::Options { objective_tolerance: 1e-12, ..math::Options::default() }, &mut evaluations)?;
+    Ok(finished(joint, &solution, &freedom, evaluations))
 }
 
-fn solve_once(joint: &mut Joint, evaluations: &mut usize) -> Result<math::Solution, FitError> {
+const BIRGE_PASSES: usize = 6;
+/// Factors that agree within 1 % are the same.
+const BIRGE_SETTLED: f64 = 0.01;
+
+/// Before a robust pass uncertainties are raised to what the residuals show, so that a bad start or underestimated noise does not bend what
+/// the operator knows.
+fn calm(joint: &mut Joint) {
+    joint.spot_scale = spread(&joint.spot_lengths()).max(1.0);
+    joint.print_scale = spread(&dot_lengths(joint)).max(1.0);
+}
+
+/// Passes whose result is only a start need no digits.
+fn rough() -> math::Options {
+    math::Options { objective_tolerance: 1e-5, step_tolerance: 1e-6, polish_fraction: 0.5, ..math::Options::default() }
+}
+
+fn solve_once(joint: &mut Joint, options: &math::Options, evaluations: &mut usize) -> Result<math::Solution, FitError> {
     let start = DVector::zeros(joint.layout.free().len());
-    let solution =
-        least_squares(joint, start, &math::Options::default()).map_err(|error| FitError::NotConverged { ending: error.to_string() })?;
+    let solution = least_squares(joint, start, options).map_err(|error| FitError::NotConverged { ending: error.to_string() })?;
     *evaluations += solution.evaluations;
     joint.layout.advance(&solution.parameters);
     Ok(solution)
+}
+
+fn dot_lengths(joint: &Joint) -> Vec<Option<f64>> {
+    joint.prints.iter().zip(joint.print_lengths()).filter(|(print, _)| print.is_dot()).map(|(_, length)| length).collect()
 }
 
 /// Gives every spot and dot a weight from the length of its residual; says whether any weight changed.
@@ -103,9 +131,8 @@ fn reweigh(joint: &mut Joint, weight: impl Fn(f64, f64) -> f64) -> bool {
         apply(&mut spot.weight, length, scale);
     }
     // Only the many dots of a printed target can spare one; marks and scale ends are stated by the operator and stay.
+    let scale = spread(&dot_lengths(joint));
     let lengths = joint.print_lengths();
-    let dots: Vec<Option<f64>> = joint.prints.iter().zip(&lengths).filter(|(print, _)| print.is_dot()).map(|(_, length)| *length).collect();
-    let scale = spread(&dots);
     for (print, length) in joint.prints.iter_mut().zip(lengths).filter(|(print, _)| print.is_dot()) {
         apply(&mut print.weight, length, scale);
     }
@@ -119,25 +146,38 @@ fn spread(lengths: &[Option<f64>]) -> f64 {
     sorted.get(sorted.len() / 2).map_or(1.0, |median| (median / MEDIAN_LENGTH).max(1e-3))
 }
 
-struct Freedoms {
-    spots: (f64, f64),
-    prints: (f64, f64),
+/// Degrees of freedom and reduced chi-square of a group of pixels, both with the uncertainties as stated (no Birge factor).
+#[derive(Debug, Clone, Copy, Default)]
+struct Freedom {
+    degrees: f64,
+    chi2_reduced: f64,
 }
 
-/// Degrees of freedom and reduced chi-square of the two pixel groups.
+impl Freedom {
+    /// Birge's factor: the observations' own scatter, where it is larger than stated. It never shrinks an uncertainty.
+    fn birge(&self) -> f64 {
+        if self.degrees >= 1.0 { self.chi2_reduced.sqrt().max(1.0) } else { 1.0 }
+    }
+}
+
+#[derive(Debug, Clone, Copy, Default)]
+struct Freedoms {
+    spots: Freedom,
+    prints: Freedom,
+}
+
 fn freedoms(joint: &Joint, solution: &math::Solution) -> Freedoms {
     let spots = 2 * joint.spots.len();
     let prints = spots + 2 * joint.prints.len();
     let leverage = leverages(&solution.jacobian, &solution.covariance);
-    let group = |range: std::ops::Range<usize>, weights: Vec<f64>| {
-        let count = 2.0 * weights.iter().filter(|&&w| w > 0.5).count() as f64;
-        let freedom = count - range.clone().map(|row| leverage[row]).sum::<f64>();
-        let chi2: f64 = range.map(|row| solution.residuals[row].powi(2)).sum();
-        (freedom, if freedom > 1e-9 { chi2 / freedom } else { 0.0 })
+    let group = |range: std::ops::Range<usize>, used: usize, scale: f64| {
+        let degrees = 2.0 * math::count(used) - range.clone().map(|row| leverage[row]).sum::<f64>();
+        let chi2: f64 = range.map(|row| solution.residuals[row].powi(2)).sum::<f64>() * scale * scale;
+        Freedom { degrees, chi2_reduced: if degrees > 1e-9 { chi2 / degrees } else { 0.0 } }
     };
     Freedoms {
-        spots: group(0..spots, joint.spots.iter().map(|s| s.weight).collect()),
-        prints: group(spots..prints, joint.prints.iter().map(|p| p.weight).collect()),
+        spots: group(0..spots, joint.spots.iter().filter(|spot| spot.weight > 0.5).count(), joint.spot_scale),
+        prints: group(spots..prints, joint.prints.iter().filter(|print| print.weight > 0.5).count(), joint.print_scale),
     }
 }
 
@@ -147,7 +187,7 @@ fn leverages(jacobian: &DMatrix<f64>, covariance: &DMatrix<f64>) -> Vec<f64> {
     (0..jacobian.nrows()).map(|row| spread.row(row).dot(&jacobian.row(row))).collect()
 }
 
-fn finished(joint: Joint, solution: &math::Solution, freedom: [f64; 4], evaluations: usize) -> Fit {
+fn finished(joint: Joint, solution: &math::Solution, freedom: &Freedoms, evaluations: usize) -> Fit {
     let scales: Vec<f64> = joint.layout.free().iter().map(|&place| joint.layout.entries()[place].scale).collect();
     let covariance = DMatrix::from_fn(scales.len(), scales.len(), |i, j| solution.covariance[(i, j)] * scales[i] * scales[j]);
     let mut jacobian = solution.jacobian.clone();
@@ -155,7 +195,8 @@ fn finished(joint: Joint, solution: &math::Solution, freedom: [f64; 4], evaluati
         column /= *scale;
     }
     let spot_rms_px = rms_px(&joint);
-    let [spot_freedom, spot_chi2_reduced, print_freedom, print_chi2_reduced] = freedom;
+    let (Freedom { degrees: spot_freedom, chi2_reduced: spot_chi2_reduced }, Freedom { degrees: print_freedom, chi2_reduced: print_chi2_reduced }) =
+        (freedom.spots, freedom.prints);
     let residuals = solution.residuals.clone();
     Fit {
         joint,

@@ -17,7 +17,7 @@ const UNKNOWN_FOCAL_UR: f64 = 0.4;
 
 /// What EXIF data and picture size tell of the lens.
 #[must_use]
-pub fn lens_knowledge(exif: &Exif, size_px: [f64; 2]) -> LensKnowledge {
+pub(super) fn lens_knowledge(exif: &Exif, size_px: [f64; 2]) -> LensKnowledge {
     let diagonal_px = size_px[0].hypot(size_px[1]);
     match exif.focal_length_35mm_m {
         Some(focal_m) if focal_m > 1e-3 => {
@@ -36,7 +36,7 @@ pub fn lens_knowledge(exif: &Exif, size_px: [f64; 2]) -> LensKnowledge {
 /// `K⁻¹ H ~ [r1 r2 t]`; the two columns are made orthonormal by singular values. Source: `[Zhang2000]` section 3.1.
 /// `None` when the homography is degenerate.
 #[must_use]
-pub fn pose_from_homography(pixel_from_metres: &Matrix3<f64>, lens: &LensKnowledge) -> Option<ViewStart> {
+pub(super) fn pose_from_homography(pixel_from_metres: &Matrix3<f64>, lens: &LensKnowledge) -> Option<ViewStart> {
     let centre = lens.size_px.map(|size| (size - 1.0) / 2.0);
     let inverse = Matrix3::new(
         1.0 / lens.focal_px,
@@ -68,7 +68,7 @@ pub fn pose_from_homography(pixel_from_metres: &Matrix3<f64>, lens: &LensKnowled
 
 /// Pose of a camera that stands square-on at a distance, the print's origin at a pixel.
 #[must_use]
-pub fn square_on_pose(lens: &LensKnowledge, origin_px: [f64; 2], distance_m: f64) -> ViewStart {
+pub(super) fn square_on_pose(lens: &LensKnowledge, origin_px: [f64; 2], distance_m: f64) -> ViewStart {
     let centre = lens.size_px.map(|size| (size - 1.0) / 2.0);
     let place = |axis: usize| (origin_px[axis] - centre[axis]) / lens.focal_px * distance_m;
     ViewStart {
@@ -83,7 +83,7 @@ pub fn square_on_pose(lens: &LensKnowledge, origin_px: [f64; 2], distance_m: f64
 /// Brightness of the print is uniform, so the centroid in the photo weighs each piece of the disc with the area that it fills there, which
 /// goes with 1/depth³. The disc average of a quadratic is exact with four points at radius/√2. Lens distortion is nearly constant over a dot.
 #[must_use]
-pub fn disc_centroid_offset(camera: &Camera<f64>, centre_m: [f64; 2], radius_m: f64) -> Option<[f64; 2]> {
+pub(super) fn disc_centroid_offset(camera: &Camera<f64>, centre_m: [f64; 2], radius_m: f64) -> Option<[f64; 2]> {
     let project = camera.print_projector();
     let (rotation, place) = (camera.rotation(), Vector3::from(camera.place_m));
     let arm = radius_m / std::f64::consts::SQRT_2;

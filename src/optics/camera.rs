@@ -40,20 +40,28 @@ pub struct Camera<D> {
 /// Where the undistorting Newton iteration stops, in units of the focal length (1e-12 is far below any pixel).
 const UNDISTORTED: f64 = 1e-12;
 
+/// Slope of the distorted radius below which a lens model is no lens any more.
+const FOLD: f64 = 0.05;
+
 impl<D: DualNum<f64> + Copy> Camera<D> {
     /// Rotation from print axes to camera axes.
     pub fn rotation(&self) -> Matrix3<D> {
         rotation_from_vector(self.turn_rad) * self.reference.map(D::from)
     }
 
-    /// Pixel of a point given in camera axes, m; `None` behind the camera.
+    /// Pixel of a point given in camera axes, m; `None` behind the camera, and beyond the fold of the distortion polynomial, where it would
+    /// send points of the scene back towards the centre.
     ///
     /// `(x, y) = f · distorted(X/Z, Y/Z) + principal point`. Source: `[Brown1971]`, in the form of `[OpenCV]`.
     pub fn project(&self, point_m: &Vector3<D>) -> Option<[D; 2]> {
         if point_m.z.re() <= 0.0 {
             return None;
         }
-        let [x, y] = self.distorted([point_m.x / point_m.z, point_m.y / point_m.z]);
+        let direction = [point_m.x / point_m.z, point_m.y / point_m.z];
+        if self.radial_slope(direction) <= FOLD {
+            return None;
+        }
+        let [x, y] = self.distorted(direction);
         Some([x * self.focal_px + self.principal_px[0], y * self.focal_px + self.principal_px[1]])
     }
 
@@ -62,6 +70,13 @@ impl<D: DualNum<f64> + Copy> Camera<D> {
         let rotation = self.rotation();
         let place = Vector3::from(self.place_m);
         move |print_m| self.project(&(rotation.column(0) * print_m[0] + rotation.column(1) * print_m[1] + place))
+    }
+
+    /// How fast the distorted radius grows with the true one: d(r (1 + k1 r² + k2 r⁴))/dr.
+    fn radial_slope(&self, [x, y]: [D; 2]) -> f64 {
+        let r2 = x.re() * x.re() + y.re() * y.re();
+        let [k1, k2] = self.distortion.radial;
+        1.0 + r2 * (3.0 * k1.re() + 5.0 * k2.re() * r2)
     }
 
     fn distorted(&self, [x, y]: [D; 2]) -> [D; 2] {
@@ -105,7 +120,7 @@ impl Camera<f64> {
             let [[a, b], [c, d]] = self.distortion_jacobian(point);
             let determinant = a * d - b * c;
             // Past the fold of the distortion polynomial no point of the scene is seen.
-            if determinant <= 0.05 {
+            if determinant <= FOLD {
                 return None;
             }
             point[0] += (d * dx - b * dy) / determinant;
@@ -158,6 +173,15 @@ mod tests {
         let (origin, right, up) = (project([0.0, 0.0]).unwrap(), project([0.01, 0.0]).unwrap(), project([0.0, 0.01]).unwrap());
         assert!(right[0] > origin[0] && up[1] < origin[1]);
         assert!(camera.eye_m().z > 0.0);
+    }
+
+    #[test]
+    fn beyond_the_fold_of_the_distortion_nothing_is_seen() {
+        let camera = camera();
+        // slope 1 - 0.36 r² + 0.25 r⁴ stays positive here; a strong barrel folds at r² = 1 / (3 · 0.9)
+        let folded = Camera { distortion: Distortion { radial: [-0.9, 0.0], ..camera.distortion }, ..camera };
+        assert!(camera.project(&Vector3::new(0.7, 0.0, 1.0)).is_some());
+        assert!(folded.project(&Vector3::new(0.5, 0.0, 1.0)).is_some() && folded.project(&Vector3::new(0.7, 0.0, 1.0)).is_none());
     }
 
     #[test]
