@@ -3,6 +3,7 @@
 use super::rough::Rough;
 use crate::{
     frames::PixelPoint,
+    math::robust::median,
     lattice::{self, Expected, IndexOptions, Indexed, LatticeError, Point, Reason},
     spots::Spot,
 };
@@ -52,25 +53,55 @@ fn brightest(spots: &[Spot]) -> Option<PixelPoint> {
     spots.iter().max_by(|a, b| light_of(a).total_cmp(&light_of(b))).map(|spot| spot.at)
 }
 
+/// How large the pattern's spots are: all orders carry the same footprint of the beam, drawn out by no more than the slant of screen and camera.
+pub(super) struct CommonSize {
+    sigma_px: f64,
+}
+
+/// The size is taken from this many of the brightest spots.
+const BRIGHTEST: usize = 15;
+/// Sizes beyond this factor are hot pixels, grains of speckle, blobs: the slant of the widest orders changes a spot by less.
+const SIZE_FACTOR: f64 = 3.5;
+
+impl CommonSize {
+    pub(super) fn of(spots: &[Spot]) -> Self {
+        let mut bright: Vec<&Spot> = spots.iter().collect();
+        // Clipped spots show mostly halo and come last.
+        bright.sort_by(|a, b| (a.clipped_px > 0).cmp(&(b.clipped_px > 0)).then(light_of(b).total_cmp(&light_of(a))));
+        let sizes: Vec<f64> = bright.iter().take(BRIGHTEST).map(|spot| sigma_px(spot)).collect();
+        Self { sigma_px: median(&sizes).unwrap_or(1.0) }
+    }
+
+    pub(super) fn fits(&self, spot: &Spot) -> bool {
+        spot.clipped_px > 0 || (sigma_px(spot) / self.sigma_px).ln().abs() < SIZE_FACTOR.ln()
+    }
+}
+
+/// Geometric mean of the half-axes of a spot's profile.
+fn sigma_px(spot: &Spot) -> f64 {
+    (spot.shape.xx * spot.shape.yy - spot.shape.xy.powi(2)).max(1e-12).powf(0.25)
+}
+
 /// Light in a spot: peak times area of the profile.
 pub(super) fn light_of(spot: &Spot) -> f64 {
     spot.peak * (spot.shape.xx * spot.shape.yy - spot.shape.xy.powi(2)).max(0.0).sqrt()
 }
 
 fn points(spots: &[Spot], rough: &Rough, on_screen: &dyn Fn(&Spot) -> bool) -> (Vec<Point>, Vec<usize>) {
+    let common = CommonSize::of(spots);
     let point = |(i, spot): (usize, &Spot)| {
         let at = rough.lattice_place(spot.at)?;
         let u = rough.lattice_u(spot.at, spot.covariance)?;
         Some((Point::new(at, u, light_of(spot).max(1e-12)), i))
     };
-    spots.iter().enumerate().filter(|(_, spot)| on_screen(spot)).filter_map(point).unzip()
+    spots.iter().enumerate().filter(|(_, spot)| on_screen(spot) && common.fits(spot)).filter_map(point).unzip()
 }
 
 impl Ordered {
     /// Why a spot carries no order, in words.
     pub(super) fn reason(&self, spot: usize) -> String {
         let Some(point) = self.spot_of_point.iter().position(|&s| s == spot) else {
-            return "not on the known part of the screen".to_owned();
+            return "beyond the marks, or far from the common size of the spots".to_owned();
         };
         let reason = self.indexed.rejected.iter().find(|(rejected, _)| *rejected == point);
         reason.map_or_else(|| "off the model".to_owned(), |(_, reason)| in_words(reason))
