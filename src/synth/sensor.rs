@@ -141,7 +141,7 @@ impl Mosaic<'_> {
             return self.mean(x, y, &[(-1, -1), (1, -1), (-1, 1), (1, 1)]);
         }
         // A green place: red lies beside it in even rows, blue in odd ones.
-        if (y % 2 == 0) == (channel == 0) { self.mean(x, y, &[(-1, 0), (1, 0)]) } else { self.mean(x, y, &[(0, -1), (0, 1)]) }
+        if y.is_multiple_of(2) == (channel == 0) { self.mean(x, y, &[(-1, 0), (1, 0)]) } else { self.mean(x, y, &[(0, -1), (0, 1)]) }
     }
 
     fn mean(&self, x: usize, y: usize, steps: &[(isize, isize)]) -> f32 {

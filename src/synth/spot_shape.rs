@@ -29,7 +29,7 @@ impl<'a> SpotShape<'a> {
     /// Second moments of the drawn spot of an order, px².
     ///
     /// `Σ = J diag(σ_θ², σ_θ², σ_w², σ_w²) Jᵀ + (blur² + 1/12) I`: J takes direction and place of an incoming ray to the pixel,
-    /// σ_θ and σ_w are half the 1/e² half-angle and footprint radius, 1/12 is the pixel's own width.
+    /// `σ_θ` and `σ_w` are half the 1/e² half-angle and footprint radius, 1/12 is the pixel's own width.
     /// `None` when a ray of the bundle does not reach the photo.
     pub(super) fn of_order(&self, wavelength_m: f64, g_per_m: [f64; 2]) -> Option<PixelCovariance> {
         let mut jacobian = Matrix4x2::zeros();
@@ -64,8 +64,7 @@ impl<'a> SpotShape<'a> {
         let zero_order = Vector3::new(0.0, 0.0, self.scene.screen.throw_m);
         let hit = start + direction * ((zero_order - start).dot(&screen_normal) / steepness) - zero_order;
         let on_screen = [self.screen_axes.column(0).dot(&hit), self.screen_axes.column(1).dot(&hit)];
-        let projected = self.camera.print_projector()(self.scene.print_pose().print_from_screen(on_screen));
-        projected
+        self.camera.print_projector()(self.scene.print_pose().print_from_screen(on_screen))
     }
 }
 
