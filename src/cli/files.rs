@@ -47,7 +47,7 @@ pub(super) fn write(path: &Path, bytes: &[u8], existing: Existing) -> Result<(),
     }
     let folder = path.parent().filter(|parent| !parent.as_os_str().is_empty()).map_or_else(|| PathBuf::from("."), Path::to_owned);
     let mut file = tempfile::NamedTempFile::new_in(folder).map_err(unwritable)?;
-    file.write_all(bytes).and_then(|()| file.as_file().sync_all()).map_err(unwritable)?;
+    file.write_all(bytes).and_then(|()| readable_by_others(file.as_file())).and_then(|()| file.as_file().sync_all()).map_err(unwritable)?;
     match existing {
         Existing::Replaced => file.persist(path).map(drop).map_err(|error| unwritable(error.error)),
         Existing::Kept => file.persist_noclobber(path).map(drop).map_err(|error| match error.error.kind() {
@@ -55,6 +55,18 @@ pub(super) fn write(path: &Path, bytes: &[u8], existing: Existing) -> Result<(),
             _ => unwritable(error.error),
         }),
     }
+}
+
+/// A temporary file is the owner's alone; a result is an ordinary file.
+#[cfg(unix)]
+fn readable_by_others(file: &std::fs::File) -> std::io::Result<()> {
+    use std::os::unix::fs::PermissionsExt;
+    file.set_permissions(std::fs::Permissions::from_mode(0o644))
+}
+
+#[cfg(not(unix))]
+fn readable_by_others(_: &std::fs::File) -> std::io::Result<()> {
+    Ok(())
 }
 
 /// Writes to standard output.
