@@ -1,5 +1,10 @@
 //! One test binary; one comment line per file.
-#![allow(clippy::unwrap_used, clippy::print_stdout, clippy::cast_possible_truncation, reason = "a test says what it measured, and fails where it stands")]
+#![allow(
+    clippy::unwrap_used,
+    clippy::print_stdout,
+    clippy::cast_possible_truncation,
+    reason = "a test says what it measured, and fails where it stands"
+)]
 
 // text and JSON of one fixed measurement, word for word
 mod golden;

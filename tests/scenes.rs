@@ -9,7 +9,7 @@ use spotrule::{
 /// A demo scene at a fraction of its size, so that a test takes a moment: the same bench before a coarser camera.
 pub(crate) fn small(name: &str, fraction: f64) -> Scene {
     let mut scene = demo_scene(name).unwrap();
-    let shrunk = |side: usize| (side as f64 * fraction).round() as usize;
+    let shrunk = |side: u32| (f64::from(side) * fraction).round() as u32;
     scene.file.width_px = shrunk(scene.file.width_px);
     scene.file.height_px = shrunk(scene.file.height_px);
     scene.camera.lens.focal_px *= fraction;
@@ -37,7 +37,9 @@ pub(crate) fn measured(scene: &Scene, photos: &Photos, bench: &Bench) -> Result<
 
 /// True pitches, shortest first, m, and the true lattice angle, 90° or more, rad, by plain enumeration of short lattice vectors.
 pub(crate) fn truth(scene: &Scene) -> (Vec<f64>, Option<f64>) {
-    let (a, Some(b)) = scene.sample.lattice.direct_m() else { return (vec![scene.sample.lattice.direct_m().0[0].hypot(scene.sample.lattice.direct_m().0[1])], None) };
+    let (a, Some(b)) = scene.sample.lattice.direct_m() else {
+        return (vec![scene.sample.lattice.direct_m().0[0].hypot(scene.sample.lattice.direct_m().0[1])], None);
+    };
     let mut vectors: Vec<[f64; 2]> = (-4..=4)
         .flat_map(|m| (-4..=4).map(move |n| (f64::from(m), f64::from(n))))
         .filter(|&(m, n)| (m, n) > (0.0, -9.0) && (m != 0.0 || n > 0.0))

@@ -48,7 +48,7 @@ pub enum Failure {
         /// The file that is to blame, if it is one.
         about: Option<String>,
         /// Why.
-        error: Error,
+        error: Box<Error>,
     },
     /// The command line does not make sense.
     #[error("{0}")]

@@ -41,8 +41,10 @@ pub(super) fn run(arguments: &MeasureArguments) -> Result<ExitCode, Failure> {
 fn load(arguments: &MeasureArguments) -> Result<Loaded, Failure> {
     let bench_path = bench_path(arguments)?;
     let text = bench_path.as_deref().map(files::read_text).transpose()?;
-    let named =
-        |error| Failure::Measurement { about: bench_path.as_ref().map(|path| path.display().to_string()), error: Error::Bench(error) };
+    let named = |error| Failure::Measurement {
+        about: bench_path.as_ref().map(|path| path.display().to_string()),
+        error: Box::new(Error::Bench(error)),
+    };
     let (bench, notes) = Bench::with_overrides(text.as_deref(), &overrides(&arguments.bench_flags)).map_err(named)?;
     let folder = bench_path.as_deref().and_then(Path::parent).map(Path::to_owned).unwrap_or_default();
     let patterns = match &arguments.photo {
@@ -109,7 +111,7 @@ fn photo_files(files: &[(String, Vec<u8>)]) -> Vec<PhotoFile<'_>> {
 
 fn deliver(arguments: &MeasureArguments, measurement: &Measurement, loaded: &Loaded) -> Result<(), Failure> {
     if let Some(path) = &arguments.overlay {
-        let unreadable = |error| Failure::Measurement { about: Some(loaded.patterns[0].0.clone()), error: Error::Photo(error) };
+        let unreadable = |error| Failure::Measurement { about: Some(loaded.patterns[0].0.clone()), error: Box::new(Error::Photo(error)) };
         let photo = photo::decode(&loaded.patterns[0].1).map_err(unreadable)?;
         let unwritable = |cause| Failure::Unwritable { path: path.clone(), cause: std::io::Error::other(cause) };
         let picture = report::png(&report::overlay(&photo, measurement, 0)).map_err(unwritable)?;

@@ -17,7 +17,7 @@ pub(super) fn run(arguments: &TargetArguments) -> Result<ExitCode, Failure> {
         PaperFormat::A3 => Paper::A3,
         PaperFormat::Letter => Paper::Letter,
     };
-    let refused = |error| Failure::Measurement { about: None, error: Error::Target(error) };
+    let refused = |error| Failure::Measurement { about: None, error: Box::new(Error::Target(error)) };
     let sheet = Sheet::new(paper, arguments.pitch * 1e-3).map_err(refused)?;
     let ending = arguments.out.extension().map(|ending| ending.to_string_lossy().to_lowercase());
     let bytes = match ending.as_deref() {

@@ -1,6 +1,6 @@
 //! In: indexed spots, target dots, priors. Out: parameters with their full covariance.
 //! Must never know: photos as pixels, files, reports.
-//! Start reading at [`Joint`], then [`solve`].
+//! Start reading at [`Joint`], then [`solve()`].
 
 mod cell;
 mod joint;

@@ -186,8 +186,8 @@ pub fn add_step(layout: &mut Layout, photo: usize, step_m: Quantity) {
 /// Adds the two ends of a known distance, with their places on the screen as start values, m.
 pub fn add_scale_ends(layout: &mut Layout, ends_m: [[f64; 2]; 2]) {
     for (end, place_m) in ends_m.into_iter().enumerate() {
-        for axis in 0..2 {
-            layout.add(entry(Parameter::ScaleEnd { end, axis }, place_m[axis], Prior::Free, Source::Scale, 1e-3));
+        for (axis, place_m) in place_m.into_iter().enumerate() {
+            layout.add(entry(Parameter::ScaleEnd { end, axis }, place_m, Prior::Free, Source::Scale, 1e-3));
         }
     }
 }

@@ -195,8 +195,10 @@ fn finished(joint: Joint, solution: &math::Solution, freedom: &Freedoms, evaluat
         column /= *scale;
     }
     let spot_rms_px = rms_px(&joint);
-    let (Freedom { degrees: spot_freedom, chi2_reduced: spot_chi2_reduced }, Freedom { degrees: print_freedom, chi2_reduced: print_chi2_reduced }) =
-        (freedom.spots, freedom.prints);
+    let (
+        Freedom { degrees: spot_freedom, chi2_reduced: spot_chi2_reduced },
+        Freedom { degrees: print_freedom, chi2_reduced: print_chi2_reduced },
+    ) = (freedom.spots, freedom.prints);
     let residuals = solution.residuals.clone();
     Fit {
         joint,

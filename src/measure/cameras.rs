@@ -104,7 +104,6 @@ fn settle(cameras: &mut Cameras, bench: &Bench, views: &[View]) -> Result<(), Er
     Ok(())
 }
 
-#[expect(clippy::float_cmp, reason = "whole numbers of pitches are exact")]
 fn is_mark(place: [f64; 2]) -> bool {
     [[0.0, 0.0], [2.0, 0.0], [0.0, 1.0]].contains(&place)
 }

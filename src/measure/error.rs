@@ -9,12 +9,12 @@ pub struct Refusal {
     /// Name of the photo that is to blame, if it is one photo.
     pub file: Option<String>,
     /// Why.
-    pub error: Error,
+    pub error: Box<Error>,
 }
 
 impl<E: Into<Error>> From<E> for Refusal {
     fn from(error: E) -> Self {
-        Self { file: None, error: error.into() }
+        Self { file: None, error: Box::new(error.into()) }
     }
 }
 

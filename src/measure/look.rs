@@ -76,7 +76,7 @@ pub(super) fn look(inputs: &Inputs<'_>, bench: &Bench) -> Result<Seen, Refusal> 
 }
 
 fn blaming(file: &PhotoFile<'_>, error: Error) -> Refusal {
-    Refusal { file: Some(file.name.to_owned()), error }
+    Refusal { file: Some(file.name.to_owned()), error: Box::new(error) }
 }
 
 fn look_at_pattern(file: &PhotoFile<'_>, dots_in_pattern: bool) -> Result<SeenPattern, Error> {

@@ -3,8 +3,8 @@
 use super::rough::Rough;
 use crate::{
     frames::PixelPoint,
-    math::robust::median,
     lattice::{self, Expected, IndexOptions, Indexed, LatticeError, Point, Reason},
+    math::robust::median,
     spots::Spot,
 };
 
@@ -29,7 +29,12 @@ pub(super) struct Roughness {
 const ZERO_ORDER_PASSES: usize = 3;
 
 /// Indexes the spots of a photo. The zero order is first taken to be the brightest spot.
-pub(super) fn order_spots(spots: &[Spot], mut rough: Rough, roughness: Roughness, on_screen: &dyn Fn(&Spot) -> bool) -> Result<Ordered, LatticeError> {
+pub(super) fn order_spots(
+    spots: &[Spot],
+    mut rough: Rough,
+    roughness: Roughness,
+    on_screen: &dyn Fn(&Spot) -> bool,
+) -> Result<Ordered, LatticeError> {
     let mut zero = brightest(spots).unwrap_or(PixelPoint { x_px: rough.size_px[0] / 2.0, y_px: rough.size_px[1] / 2.0 });
     let mut last = None;
     for _ in 0..ZERO_ORDER_PASSES {

@@ -20,7 +20,7 @@ impl<D: DualNum<f64> + Copy> ScreenPose<D> {
 
 /// Place (x, y) in the screen's own axes, m from the zero-order spot, where the ray `direction` from the sample meets the screen.
 ///
-/// `H = u (Z0·N)/(u·N)`; x = e_x·(H − Z0), y = e_y·(H − Z0). `None` when the ray runs away from the screen or along it.
+/// `H = u (Z0·N)/(u·N)`; `x = e_x·(H − Z0)`, `y = e_y·(H − Z0)`. `None` when the ray runs away from the screen or along it.
 pub fn screen_hit<D: DualNum<f64> + Copy>(screen: &ScreenPose<D>, direction: &Vector3<D>) -> Option<[D; 2]> {
     // (e_x·u, e_y·u, N·u)
     let u = screen.axes.tr_mul(direction);

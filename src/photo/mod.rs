@@ -1,6 +1,6 @@
 //! In: the bytes of a photo. Out: [`Photo`], upright, with its metadata, and planes of linear light.
 //! Must never know: files, lattices, what the spots mean.
-//! Start reading at [`decode`].
+//! Start reading at [`decode()`].
 
 mod clip;
 mod decode;

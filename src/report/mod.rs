@@ -1,6 +1,6 @@
 //! In: [`Measurement`](crate::measure::Measurement), for the picture also the photo. Out: text for people, JSON for scripts, an overlay PNG.
 //! Must never know: how a number came about. Formats only: units and rounding, no physics.
-//! Start reading at [`text`] and [`json`].
+//! Start reading at [`text()`] and [`json()`].
 
 mod budget_table;
 mod columns;

@@ -1,4 +1,4 @@
-//! In: a [`Photo`](crate::photo::Photo). Out: every spot of laser light in it, each with a centroid and an honest 2×2 covariance.
+//! In: a [`Photo`]. Out: every spot of laser light in it, each with a centroid and an honest 2×2 covariance.
 //! Must never know: lattices, screens, the bench.
 //! Start reading at [`find`].
 
