@@ -27,15 +27,46 @@ pub(super) struct Roughness {
 
 /// The zero order moves the origin of the wide-angle mapping, so indexing is repeated until it stays where it was put.
 const ZERO_ORDER_PASSES: usize = 3;
+/// Zero order and log evidence this sure need no second hypothesis, nats.
+const SURE_ZERO: f64 = 3.0;
+const SURE_EVIDENCE: f64 = 30.0;
 
-/// Indexes the spots of a photo. The zero order is first taken to be the brightest spot.
+/// Indexes the spots of a photo. Which spot the zero order is decides how wide angles are mapped, so it is a hypothesis: the
+/// likely spots are tried in turn, and unless the first leaves no doubt the one with the strongest evidence is kept.
 pub(super) fn order_spots(
     spots: &[Spot],
-    mut rough: Rough,
+    rough: &Rough,
     roughness: Roughness,
     on_screen: &dyn Fn(&Spot) -> bool,
 ) -> Result<Ordered, LatticeError> {
-    let mut zero = brightest(spots).unwrap_or(PixelPoint { x_px: rough.size_px[0] / 2.0, y_px: rough.size_px[1] / 2.0 });
+    let mut best: Option<Ordered> = None;
+    let mut refusal: Option<LatticeError> = None;
+    for zero in likely_zero_orders(spots, rough) {
+        match order_about(spots, rough.clone(), zero, roughness, on_screen) {
+            Ok(ordered) => {
+                let evidence = &ordered.indexed.evidence;
+                let sure = evidence.zero_lead > SURE_ZERO && evidence.log_evidence > SURE_EVIDENCE;
+                if best.as_ref().is_none_or(|b| evidence.log_evidence > b.indexed.evidence.log_evidence) {
+                    best = Some(ordered);
+                }
+                if sure {
+                    break;
+                }
+            }
+            Err(error) => refusal = refusal.or(Some(error)),
+        }
+    }
+    best.ok_or_else(|| refusal.unwrap_or(LatticeError::TooFewSpots { found: 0, needed: 3 }))
+}
+
+/// Indexes the spots with the zero order first taken to be at `zero`.
+fn order_about(
+    spots: &[Spot],
+    mut rough: Rough,
+    mut zero: PixelPoint,
+    roughness: Roughness,
+    on_screen: &dyn Fn(&Spot) -> bool,
+) -> Result<Ordered, LatticeError> {
     let mut last = None;
     for _ in 0..ZERO_ORDER_PASSES {
         if !rough.put_zero_order(zero) {
@@ -54,8 +85,30 @@ pub(super) fn order_spots(
     last.ok_or(LatticeError::TooFewSpots { found: 0, needed: 3 })
 }
 
-fn brightest(spots: &[Spot]) -> Option<PixelPoint> {
-    spots.iter().max_by(|a, b| light_of(a).total_cmp(&light_of(b))).map(|spot| spot.at)
+/// Bright spots tried as the zero order.
+const BRIGHT_HYPOTHESES: usize = 4;
+/// Spots in the middle of the pattern tried as the zero order.
+const CENTRAL_HYPOTHESES: usize = 2;
+
+/// The brightest spots, then those nearest the middle of the pattern: clipping and halo make light a poor witness, symmetry a fair one.
+fn likely_zero_orders(spots: &[Spot], rough: &Rough) -> Vec<PixelPoint> {
+    let mut bright: Vec<&Spot> = spots.iter().collect();
+    bright.sort_by(|a, b| light_of(b).total_cmp(&light_of(a)));
+    let median_of = |f: fn(&Spot) -> f64| median(&spots.iter().map(f).collect::<Vec<f64>>());
+    let frame_middle = PixelPoint { x_px: rough.size_px[0] / 2.0, y_px: rough.size_px[1] / 2.0 };
+    let middle = PixelPoint {
+        x_px: median_of(|spot| spot.at.x_px).unwrap_or(frame_middle.x_px),
+        y_px: median_of(|spot| spot.at.y_px).unwrap_or(frame_middle.y_px),
+    };
+    let mut central = bright.clone();
+    central.sort_by(|a, b| a.at.distance_px(middle).total_cmp(&b.at.distance_px(middle)));
+    let mut places: Vec<PixelPoint> = Vec::new();
+    for spot in bright.iter().take(BRIGHT_HYPOTHESES).chain(central.iter().take(CENTRAL_HYPOTHESES)) {
+        if !places.contains(&spot.at) {
+            places.push(spot.at);
+        }
+    }
+    if places.is_empty() { vec![frame_middle] } else { places }
 }
 
 /// How large the pattern's spots are: all orders carry the same footprint of the beam, drawn out by no more than the slant of screen and camera.

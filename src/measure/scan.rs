@@ -36,7 +36,7 @@ fn order_at(seen: &Seen, bench: &Bench, cameras: &Cameras) -> Result<Vec<Ordered
     let bend = if cameras.screen_known { BEND_WITH_PRINT } else { BEND_WITHOUT_PRINT };
     let order = |(photo, pattern): (usize, &super::look::SeenPattern)| {
         let roughness = Roughness { expected: expected(bench, photo), bend };
-        order_spots(&pattern.spots.spots, rough(cameras, bench, photo, pattern.size_px), roughness, &|spot| on_screen(bench, spot))
+        order_spots(&pattern.spots.spots, &rough(cameras, bench, photo, pattern.size_px), roughness, &|spot| on_screen(bench, spot))
     };
     seen.patterns.par_iter().enumerate().map(order).collect()
 }
