@@ -9,6 +9,7 @@
 
 pub mod bench;
 pub mod budget;
+pub mod calibration;
 pub mod cli;
 pub mod error;
 pub mod fit;

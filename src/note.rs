@@ -106,6 +106,20 @@ pub enum Note {
         /// Distance in stated standard uncertainties.
         pull: f64,
     },
+    // calibration
+    /// The photo has no EXIF data to check against the calibration's.
+    CalibrationUnchecked,
+    /// Photo and calibration do not go together.
+    CalibrationStrained {
+        /// Parameter that is pulled most.
+        what: String,
+        /// How far, in the calibration's standard uncertainties.
+        pull: f64,
+        /// Squared residuals of the calibration.
+        chi2: f64,
+        /// Expected value of `chi2` on a bench that was left alone.
+        redundancy: f64,
+    },
 }
 
 impl Note {
@@ -127,6 +141,8 @@ impl Note {
             Self::Ghosts { .. } => "ghosts",
             Self::ShapeUncertain { .. } => "line-or-plane-uncertain",
             Self::StatementStrained { .. } => "statement-strained",
+            Self::CalibrationUnchecked => "calibration-unchecked",
+            Self::CalibrationStrained { .. } => "calibration-strained",
             Self::StandardAirAssumed => "standard-air-assumed",
             Self::AirNotUsed => "air-not-used",
             Self::WavelengthInOtherMedium { .. } => "wavelength-in-other-medium",
@@ -186,6 +202,14 @@ impl std::fmt::Display for Note {
             Self::StatementStrained { what, stated, found, pull } => write!(
                 f,
                 "{what}: stated {stated}, but the photo wants {found}, {:.1} standard uncertainties away: measure it again, or state it with an honest uncertainty",
+                pull.abs()
+            ),
+            Self::CalibrationUnchecked => f.write_str(
+                "the photo lacks EXIF data that the calibration's photos have, so only its size was checked: make sure that camera, zoom and focus are the same",
+            ),
+            Self::CalibrationStrained { what, pull, chi2, redundancy } => write!(
+                f,
+                "the photo does not go with the calibration (chi-square {chi2:.1} where {redundancy:.1} is expected; {what} is pulled by {:.1} standard uncertainties): something was moved since; calibrate again",
                 pull.abs()
             ),
             Self::StandardAirAssumed => f.write_str(

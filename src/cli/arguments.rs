@@ -19,6 +19,9 @@ pub(super) enum Command {
     /// Measure the pitch from a photo of the pattern
     #[command(after_help = MEASURE_EXAMPLES)]
     Measure(Box<MeasureArguments>),
+    /// Save what a photo of a reference tells of the bench, or calibrate a camera, for later measurements
+    #[command(after_help = CALIBRATE_EXAMPLES, args_conflicts_with_subcommands = true, subcommand_negates_reqs = true)]
+    Calibrate(CalibrateArguments),
     /// Write a commented bench file to fill in (asks when run on a terminal)
     #[command(after_help = "Example:\n  spotrule new bench.toml\n\nThe file explains every key. Leave out what you do not know.")]
     New(NewArguments),
@@ -67,6 +70,76 @@ pub(super) struct MeasureArguments {
     pub(super) quiet: bool,
     #[command(flatten, next_help_heading = "Bench, instead of or over the bench file")]
     pub(super) bench_flags: BenchFlags,
+}
+
+const CALIBRATE_EXAMPLES: &str = "Examples:
+  spotrule calibrate --bench bench.toml --out bench-calibrated.toml
+      with the photo of a reference grating, whose pitch the bench file gives, as [[photo]] in it
+  spotrule measure sample.jpg --bench bench-calibrated.toml
+      the next sample on the same bench, camera untouched: no photo of the target is needed
+  spotrule calibrate camera view1.jpg view2.jpg view3.jpg --target-pitch \"10.00(1) mm\" --out camera.toml
+
+The result is not a calibration certificate of an accredited laboratory.";
+
+#[derive(Debug, Args)]
+pub(super) struct CalibrateArguments {
+    #[command(subcommand)]
+    pub(super) of: Option<CalibrateCommand>,
+    #[command(flatten)]
+    pub(super) bench: Option<CalibrateBenchArguments>,
+}
+
+#[derive(Debug, Args)]
+pub(super) struct CalibrateBenchArguments {
+    /// Photo of the pattern, usually of a reference grating; the bench file can name it instead
+    pub(super) photo: Option<PathBuf>,
+    /// Bench file to calibrate
+    #[arg(long, value_name = "FILE")]
+    pub(super) bench: PathBuf,
+    /// File to write: the bench file with a table [calibration]
+    #[arg(long, value_name = "FILE")]
+    pub(super) out: PathBuf,
+    /// Replace an existing file
+    #[arg(long)]
+    pub(super) force: bool,
+    /// Print nothing but errors
+    #[arg(long)]
+    pub(super) quiet: bool,
+}
+
+#[derive(Debug, Subcommand)]
+pub(super) enum CalibrateCommand {
+    /// Focal length, principal point and distortion from three or more views of the printed dot target
+    #[command(after_help = CALIBRATE_CAMERA_EXAMPLE)]
+    Camera(CalibrateCameraArguments),
+}
+
+const CALIBRATE_CAMERA_EXAMPLE: &str = "Example:
+  spotrule calibrate camera views/*.jpg --target-pitch \"10.00(1) mm\" --out camera.toml
+
+Lay the print on a flat plate. Take 6 to 15 photos with one zoom and focus setting, the dots filling the frame, most of them 20 to 40 degrees
+oblique from different sides. Then write calibration = \"camera.toml\" under [camera] in the bench file.";
+
+#[derive(Debug, Args)]
+pub(super) struct CalibrateCameraArguments {
+    /// Photos of the dot target from different directions
+    #[arg(required = true)]
+    pub(super) photos: Vec<PathBuf>,
+    /// Pitch of the dot target, measured on the print, e.g. "10.00(1) mm"
+    #[arg(long, value_name = "QUANTITY")]
+    pub(super) target_pitch: String,
+    /// File to write, for [camera] calibration in a bench file
+    #[arg(long, value_name = "FILE")]
+    pub(super) out: PathBuf,
+    /// Write the result as JSON; `-` prints JSON alone on standard output
+    #[arg(long, value_name = "FILE|-")]
+    pub(super) json: Option<PathBuf>,
+    /// Replace an existing file
+    #[arg(long)]
+    pub(super) force: bool,
+    /// Print nothing but errors
+    #[arg(long)]
+    pub(super) quiet: bool,
 }
 
 /// Everything that a quick look needs, each written as in the bench file.

@@ -16,12 +16,15 @@ use std::{
     process::ExitCode,
 };
 
+/// Photos under the names that the user gave them.
+pub(super) type Named = Vec<(String, Vec<u8>)>;
+
 /// Files of a measurement, read.
 struct Loaded {
     bench: Bench,
     notes: Vec<Note>,
-    patterns: Vec<(String, Vec<u8>)>,
-    targets: Vec<(String, Vec<u8>)>,
+    patterns: Named,
+    targets: Named,
 }
 
 pub(super) fn run(arguments: &MeasureArguments) -> Result<ExitCode, Failure> {
@@ -47,17 +50,35 @@ fn load(arguments: &MeasureArguments) -> Result<Loaded, Failure> {
     };
     let (bench, notes) = Bench::with_overrides(text.as_deref(), &overrides(&arguments.bench_flags)).map_err(named)?;
     let folder = bench_path.as_deref().and_then(Path::parent).map(Path::to_owned).unwrap_or_default();
-    let patterns = match &arguments.photo {
-        Some(photo) => vec![(photo.display().to_string(), files::read(photo)?)],
-        None => read_all(&folder, bench.photos.iter().map(|photo| photo.file.as_str()))?,
-    };
-    if patterns.is_empty() {
-        return Err(Failure::Usage("no photo: name one on the command line, or as [[photo]] in the bench file".to_owned()));
-    }
+    let bench = with_lens(bench, &folder)?;
+    let patterns = read_patterns(arguments.photo.as_deref(), &bench, &folder)?;
     // A target named by a flag lies where the user stands, one named by the bench file lies beside that file.
     let target_folder = if arguments.bench_flags.target_photo.is_some() { PathBuf::new() } else { folder };
     let targets = read_all(&target_folder, target_names(&bench).into_iter())?;
     Ok(Loaded { bench, notes, patterns, targets })
+}
+
+/// The photos of the pattern: the one of the command line, or all that the bench file names.
+pub(super) fn read_patterns(photo: Option<&Path>, bench: &Bench, folder: &Path) -> Result<Named, Failure> {
+    let patterns = match photo {
+        Some(photo) => vec![(photo.display().to_string(), files::read(photo)?)],
+        None => read_all(folder, bench.photos.iter().map(|photo| photo.file.as_str()))?,
+    };
+    if patterns.is_empty() {
+        return Err(Failure::Usage("no photo: name one on the command line, or as [[photo]] in the bench file".to_owned()));
+    }
+    Ok(patterns)
+}
+
+/// The bench with the calibration of its lens, where it names one and needs it.
+pub(super) fn with_lens(bench: Bench, folder: &Path) -> Result<Bench, Failure> {
+    let Some(name) = bench.camera.calibration.clone().filter(|_| bench.calibration.is_none()) else { return Ok(bench) };
+    let path = folder.join(&name);
+    let text = files::read_text(&path)?;
+    bench.with_lens(&text).map_err(|error| Failure::Measurement {
+        about: Some(path.display().to_string()),
+        error: Box::new(Error::Bench(error)),
+    })
 }
 
 /// The bench file: as named, or `bench.toml` beside the photo when it is there.
@@ -79,7 +100,11 @@ fn bench_path(arguments: &MeasureArguments) -> Result<Option<PathBuf>, Failure> 
 }
 
 /// Names of the target photos, each once: the bench file's, then those of single photos.
-fn target_names(bench: &Bench) -> Vec<&str> {
+pub(super) fn target_names(bench: &Bench) -> Vec<&str> {
+    // A calibration knows the view; the target need not be photographed again.
+    if bench.calibration.is_some() {
+        return Vec::new();
+    }
     let common = match &bench.target {
         Some(Target { kind: TargetKind::Dots { photo, .. }, .. }) => photo.as_deref(),
         _ => None,
@@ -93,7 +118,7 @@ fn target_names(bench: &Bench) -> Vec<&str> {
     names
 }
 
-fn read_all<'a>(folder: &Path, names: impl Iterator<Item = &'a str>) -> Result<Vec<(String, Vec<u8>)>, Failure> {
+pub(super) fn read_all<'a>(folder: &Path, names: impl Iterator<Item = &'a str>) -> Result<Named, Failure> {
     names.map(|name| Ok((name.to_owned(), files::read(&folder.join(name))?))).collect()
 }
 
@@ -105,7 +130,7 @@ fn measured(loaded: &Loaded) -> Result<Measurement, Failure> {
     Ok(measurement)
 }
 
-fn photo_files(files: &[(String, Vec<u8>)]) -> Vec<PhotoFile<'_>> {
+pub(super) fn photo_files(files: &[(String, Vec<u8>)]) -> Vec<PhotoFile<'_>> {
     files.iter().map(|(name, bytes)| PhotoFile { name, bytes }).collect()
 }
 

@@ -3,6 +3,8 @@
 //! Start reading at [`run`].
 
 mod arguments;
+mod calibrate;
+mod calibrate_camera;
 mod completions;
 mod failure;
 mod files;
@@ -27,6 +29,7 @@ pub fn run() -> ExitCode {
     };
     let outcome = match arguments.command {
         Command::Measure(arguments) => measure::run(&arguments),
+        Command::Calibrate(arguments) => calibrate::run(&arguments),
         Command::New(arguments) => new::run(&arguments),
         Command::Target(arguments) => target::run(&arguments),
         Command::Render(arguments) => render::run(&arguments),

@@ -2,6 +2,7 @@
 
 use super::{
     cell::knowledge_residual,
+    correlated::CorrelatedPrior,
     model::{self, Bench, PRINT_LOCALS, Places, Shape},
     observation::{Knowledge, PrintObservation, PrintPlace, SpotObservation, whitened_length, whitening},
     parameter::{Layout, Parameter, Prior},
@@ -24,6 +25,8 @@ pub struct Joint {
     pub prints: Vec<PrintObservation>,
     /// Measured values that follow from the parameters.
     pub knowledge: Vec<Knowledge>,
+    /// What is known of several parameters together: saved posteriors.
+    pub correlated: Vec<CorrelatedPrior>,
     /// Factor on the standard uncertainty of every spot (Birge).
     pub spot_scale: f64,
     /// The same for dots and marks.
@@ -80,6 +83,7 @@ impl Joint {
             Knowledge::Distance { .. } => Source::Scale,
             Knowledge::SquareOn { .. } => Source::SquareOn,
         }));
+        sources.extend(self.correlated.iter().flat_map(|prior| std::iter::repeat_n(prior.source, prior.len())));
         sources.extend(self.prior_rows().map(|(place, _, _)| self.layout.entries()[place].source));
         sources
     }
@@ -156,7 +160,7 @@ impl Joint {
     fn prior_rows(&self) -> impl Iterator<Item = (usize, f64, f64)> + '_ {
         self.layout.entries().iter().enumerate().filter_map(|(place, entry)| match entry.prior {
             Prior::Normal { mean, u } => Some((place, mean, u)),
-            Prior::Free | Prior::Exact => None,
+            Prior::Free | Prior::Correlated { .. } | Prior::Exact => None,
         })
     }
 
@@ -224,6 +228,19 @@ impl Joint {
         Some(())
     }
 
+    fn correlated_rows(&self, values: &[f64], rows: &mut Rows) -> Option<()> {
+        for prior in &self.correlated {
+            let residuals = prior.residuals(&self.layout, values)?;
+            rows.residuals.rows_mut(rows.next, prior.len()).copy_from(&residuals);
+            for (i, parameter) in prior.parameters().iter().enumerate() {
+                let Some((column, scale)) = self.column(self.layout.place(*parameter)) else { continue };
+                rows.jacobian.column_mut(column).rows_mut(rows.next, prior.len()).axpy(scale, &prior.whitening().column(i), 0.0);
+            }
+            rows.next += prior.len();
+        }
+        Some(())
+    }
+
     fn prior_residuals(&self, values: &[f64], rows: &mut Rows) {
         for (place, mean, u) in self.prior_rows() {
             rows.residuals[rows.next] = (values[place] - mean) / u;
@@ -248,11 +265,13 @@ fn place_of<const N: usize>(place: PrintPlace, set: usize, v: &[DualSVec64<N>; N
 impl Problem for Joint {
     fn residuals_and_jacobian(&self, step: &DVector<f64>) -> Option<(DVector<f64>, DMatrix<f64>)> {
         let values = self.layout.values_at(step);
-        let count = 2 * self.spots.len() + 2 * self.prints.len() + self.knowledge.len() + self.prior_rows().count();
+        let correlated: usize = self.correlated.iter().map(CorrelatedPrior::len).sum();
+        let count = 2 * self.spots.len() + 2 * self.prints.len() + self.knowledge.len() + correlated + self.prior_rows().count();
         let mut rows = Rows { residuals: DVector::zeros(count), jacobian: DMatrix::zeros(count, self.layout.free().len()), next: 0 };
         self.spot_rows(&values, &mut rows)?;
         self.print_rows(&values, &mut rows)?;
         self.knowledge_rows(&values, &mut rows)?;
+        self.correlated_rows(&values, &mut rows)?;
         self.prior_residuals(&values, &mut rows);
         let finite = rows.residuals.iter().all(|r| r.is_finite()) && rows.jacobian.iter().all(|j| j.is_finite());
         finite.then_some((rows.residuals, rows.jacobian))

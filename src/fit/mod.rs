@@ -3,6 +3,7 @@
 //! Start reading at [`Joint`], then [`solve()`].
 
 mod cell;
+mod correlated;
 mod joint;
 mod model;
 mod observation;
@@ -12,6 +13,7 @@ mod solve;
 mod source;
 
 pub use cell::{Cell, Derived, cell};
+pub use correlated::{CorrelatedPrior, Marginal};
 pub use joint::Joint;
 pub use model::{PhotoShape, Shape};
 pub use observation::{Knowledge, PrintObservation, PrintPlace, SpotObservation};

@@ -99,6 +99,14 @@ pub enum Prior {
         /// Standard uncertainty.
         u: f64,
     },
+    /// Normal with this mean and standard uncertainty, together with others: its rows are those of a
+    /// [`CorrelatedPrior`](super::CorrelatedPrior).
+    Correlated {
+        /// Mean.
+        mean: f64,
+        /// Standard uncertainty.
+        u: f64,
+    },
     /// Known exactly; not an unknown at all.
     Exact,
 }

@@ -42,6 +42,10 @@ pub enum Source {
     FocalLength,
     /// Principal point and lens distortion of an ordinary camera.
     Lens,
+    /// Saved posterior of the bench.
+    Calibration,
+    /// Saved posterior of the lens alone.
+    CameraCalibration,
     /// Only fixes an overall scale that the pitch does not depend on.
     Gauge,
 }
@@ -66,6 +70,8 @@ impl Source {
             Self::SquareOn => "camera square-on",
             Self::FocalLength => "focal length",
             Self::Lens => "lens",
+            Self::Calibration => "calibration",
+            Self::CameraCalibration => "camera calibration",
             Self::Gauge => "gauge",
         }
     }

@@ -2,6 +2,7 @@
 
 use super::{
     MeasureError,
+    calibrated::{self, Prepared},
     look::Seen,
     view::{disc_centroid_offset, lens_knowledge, pose_from_homography, square_on_pose},
 };
@@ -9,7 +10,7 @@ use crate::{
     Error,
     bench::{Bench, FocalLength, Target, TargetKind},
     fit::{
-        Joint, Layout, Outliers, Parameter, PrintObservation, PrintPlace, Shape,
+        CorrelatedPrior, Joint, Layout, Outliers, Parameter, PrintObservation, PrintPlace, Shape, Source,
         setup::{self, LensKnowledge, ViewStart},
         solve,
     },
@@ -29,6 +30,8 @@ pub(super) struct Cameras {
     pub(super) references: Vec<Matrix3<f64>>,
     pub(super) prints: Vec<PrintObservation>,
     pub(super) view_of_photo: Vec<usize>,
+    /// Saved posteriors of bench or lens.
+    pub(super) correlated: Vec<CorrelatedPrior>,
     /// Whether a print or marks fix the plane of the screen.
     pub(super) screen_known: bool,
 }
@@ -43,7 +46,18 @@ struct View {
 /// Sets up all views.
 pub(super) fn cameras(seen: &Seen, bench: &Bench, targets: &[&str]) -> Result<Cameras, Error> {
     check_sizes(seen)?;
-    let lens = lens(seen, bench);
+    if let Some(calibration) = &bench.calibration {
+        return calibrated::cameras(calibration, seen, bench);
+    }
+    let (mut layout, mut correlated, mut lens) = (Layout::default(), vec![], lens(seen, bench));
+    if let Some(calibration) = &bench.camera.lens {
+        let Prepared { entries, prior } = calibrated::prepared(&calibration.posterior, bench, &calibrated::LENS, Source::CameraCalibration)?;
+        entries.into_iter().for_each(|entry| {
+            layout.add(entry);
+        });
+        correlated.extend(prior);
+        lens = calibrated::lens_of(&layout, calibration.taken_with.size_px);
+    }
     let view_of_photo = views_of_photos(bench, seen.patterns.len(), targets);
     let views = match bench.target.as_ref() {
         Some(Target { kind: TargetKind::Dots { pitch_m, .. }, .. }) => dot_views(seen, *pitch_m, &lens)?,
@@ -53,11 +67,12 @@ pub(super) fn cameras(seen: &Seen, bench: &Bench, targets: &[&str]) -> Result<Ca
     };
     let screen_known = bench.target.is_some();
     let mut cameras = Cameras {
-        layout: Layout::default(),
+        layout,
         lens,
         references: views.iter().map(|view| view.start.reference).collect(),
         prints: views.iter().flat_map(|view| view.prints.iter().copied()).collect(),
         view_of_photo,
+        correlated,
         screen_known,
     };
     setup::add_camera(&mut cameras.layout, &lens, &views.iter().map(|view| view.start).collect::<Vec<_>>());
@@ -85,6 +100,7 @@ fn settle(cameras: &mut Cameras, bench: &Bench, views: &[View]) -> Result<(), Er
             spots: vec![],
             prints: cameras.prints.clone(),
             knowledge: vec![],
+            correlated: cameras.correlated.clone(),
             spot_scale: 1.0,
             print_scale: 1.0,
         };

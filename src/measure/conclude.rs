@@ -2,13 +2,13 @@
 
 use super::{
     Inputs, MeasureError,
+    fitted::Fitted,
     look::Seen,
     measurement::{FitSummary, Measurement, OrderRow, ParameterRow, ParameterUnit, PhotoSummary, RejectedSpot, SampleResult, ZeroOrder},
     orders::Ordered,
     statement::kind_statement,
 };
 use crate::{
-    Note,
     bench::Bench,
     budget::{self, Value},
     fit::{Cell, Derived, Fit, Parameter, Prior, Source, cell},
@@ -16,14 +16,8 @@ use crate::{
 };
 
 /// Gathers the result of a solved problem.
-pub(super) fn conclude(
-    inputs: &Inputs<'_>,
-    bench: &Bench,
-    seen: &Seen,
-    ordered: &[Ordered],
-    fit: &Fit,
-    notes: Vec<Note>,
-) -> Result<Measurement, MeasureError> {
+pub(super) fn conclude(fitted: &Fitted<'_>, bench: &Bench) -> Result<Measurement, MeasureError> {
+    let Fitted { inputs, seen, ordered, fit, notes } = fitted;
     let wanted = wanted_sample(bench, fit);
     let mut samples: Vec<usize> = fit.joint.shape.photos.iter().map(|photo| photo.sample).collect();
     samples.sort_unstable();
@@ -44,7 +38,7 @@ pub(super) fn conclude(
         fit: summary(fit),
         photos: photo_summaries(inputs, seen, fit),
         mode: bench.samples[wanted].mode,
-        notes,
+        notes: notes.clone(),
     })
 }
 
@@ -168,7 +162,7 @@ fn parameter_rows(bench: &Bench, fit: &Fit) -> Vec<ParameterRow> {
         let (name, unit) = described(bench, entry.parameter);
         let u = layout.column(place).map_or(0.0, |column| fit.covariance[(column, column)].max(0.0).sqrt());
         let prior = match entry.prior {
-            Prior::Normal { mean, u } => Some((mean, u)),
+            Prior::Normal { mean, u } | Prior::Correlated { mean, u } => Some((mean, u)),
             Prior::Exact => Some((entry.value, 0.0)),
             Prior::Free => None,
         };

@@ -55,7 +55,9 @@ pub(super) struct Seen {
 
 /// Decodes and reads all photos.
 pub(super) fn look(inputs: &Inputs<'_>, bench: &Bench) -> Result<Seen, Refusal> {
-    let dots_in_pattern = matches!(bench.target.as_ref().map(|target| &target.kind), Some(TargetKind::Dots { photo: None, .. }));
+    // A calibration knows the view already.
+    let dots_in_pattern = bench.calibration.is_none()
+        && matches!(bench.target.as_ref().map(|target| &target.kind), Some(TargetKind::Dots { photo: None, .. }));
     let (patterns, targets) = rayon::join(
         || {
             inputs

@@ -90,7 +90,7 @@ const BRIGHT_HYPOTHESES: usize = 4;
 /// Spots in the middle of the pattern tried as the zero order.
 const CENTRAL_HYPOTHESES: usize = 2;
 
-/// The brightest spots, then those nearest the middle of the pattern: clipping and halo make light a poor witness, symmetry a fair one.
+/// Where a calibration knows the zero order, that place; then the brightest spots, then those nearest the middle of the pattern: clipping and halo make light a poor witness, symmetry a fair one.
 fn likely_zero_orders(spots: &[Spot], rough: &Rough) -> Vec<PixelPoint> {
     let mut bright: Vec<&Spot> = spots.iter().collect();
     bright.sort_by(|a, b| light_of(b).total_cmp(&light_of(a)));
@@ -102,7 +102,7 @@ fn likely_zero_orders(spots: &[Spot], rough: &Rough) -> Vec<PixelPoint> {
     };
     let mut central = bright.clone();
     central.sort_by(|a, b| a.at.distance_px(middle).total_cmp(&b.at.distance_px(middle)));
-    let mut places: Vec<PixelPoint> = Vec::new();
+    let mut places: Vec<PixelPoint> = rough.zero_order.iter().map(|&[x_px, y_px]| PixelPoint { x_px, y_px }).collect();
     for spot in bright.iter().take(BRIGHT_HYPOTHESES).chain(central.iter().take(CENTRAL_HYPOTHESES)) {
         if !places.contains(&spot.at) {
             places.push(spot.at);

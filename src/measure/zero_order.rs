@@ -50,7 +50,9 @@ pub(super) fn best_zero_order(
 /// Chi-square of what is known of throw, tilt, incidence and the print's turn.
 fn strain(fit: &Fit) -> f64 {
     let rows = fit.joint.row_sources();
-    let geometry = |source: &Source| matches!(source, Source::Throw | Source::ScreenTilt | Source::Incidence { .. } | Source::TargetTurn);
+    let geometry = |source: &Source| {
+        matches!(source, Source::Throw | Source::ScreenTilt | Source::Incidence { .. } | Source::TargetTurn | Source::Calibration)
+    };
     rows.iter().zip(fit.residuals.iter()).filter(|(source, _)| geometry(source)).map(|(_, residual)| residual * residual).sum()
 }
 

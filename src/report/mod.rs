@@ -3,6 +3,7 @@
 //! Start reading at [`text()`] and [`json()`].
 
 mod budget_table;
+mod calibration_text;
 mod columns;
 #[cfg(test)]
 mod example;
@@ -14,6 +15,7 @@ mod text;
 mod units;
 mod words;
 
+pub use calibration_text::calibration_text;
 pub use json::{Program, json, refused_json};
 pub use overlay::{overlay, png};
 pub use rounding::{Rounded, concise, percent, rounded, significant};
