@@ -230,11 +230,11 @@ impl Joint {
 
     fn correlated_rows(&self, values: &[f64], rows: &mut Rows) -> Option<()> {
         for prior in &self.correlated {
-            let residuals = prior.residuals(&self.layout, values)?;
+            let (residuals, slopes) = prior.rows(&self.layout, values)?;
             rows.residuals.rows_mut(rows.next, prior.len()).copy_from(&residuals);
             for (i, parameter) in prior.parameters().iter().enumerate() {
                 let Some((column, scale)) = self.column(self.layout.place(*parameter)) else { continue };
-                rows.jacobian.column_mut(column).rows_mut(rows.next, prior.len()).axpy(scale, &prior.whitening().column(i), 0.0);
+                rows.jacobian.column_mut(column).rows_mut(rows.next, prior.len()).axpy(scale, &slopes.column(i), 0.0);
             }
             rows.next += prior.len();
         }

@@ -15,7 +15,7 @@ mod source;
 pub use cell::{Cell, Derived, cell};
 pub use correlated::{CorrelatedPrior, Marginal};
 pub use joint::Joint;
-pub use model::{PhotoShape, Shape};
+pub use model::{PhotoShape, Shape, camera_at};
 pub use observation::{Knowledge, PrintObservation, PrintPlace, SpotObservation};
 pub use parameter::{Entry, Layout, Parameter, Prior};
 pub use solve::{Fit, Outliers, solve};

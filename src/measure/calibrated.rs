@@ -1,6 +1,7 @@
 //! A saved posterior in the place of what was stated: the parameters that it holds enter the problem as one joint prior.
 
 use super::{
+    MeasureError,
     cameras::Cameras,
     conclude::described,
     look::{Inputs, Seen},
@@ -10,7 +11,9 @@ use crate::{
     Error, Note,
     bench::Bench,
     calibration::{Calibration, CalibrationError, Posterior, Shows, UncertainValue, sha256},
-    fit::{CorrelatedPrior, Entry, Layout, Marginal, Parameter, Prior, Source, setup::LensKnowledge},
+    fit::{CorrelatedPrior, Entry, Layout, Marginal, Parameter, Prior, Source, camera_at, setup::LensKnowledge},
+    frames::PixelPoint,
+    optics::Camera,
     photo::Exif,
 };
 use nalgebra::Matrix3;
@@ -116,15 +119,26 @@ pub(super) fn cameras(calibration: &Calibration, seen: &Seen, bench: &Bench) -> 
         layout.add(entry);
     });
     let lens = lens_of(&layout, calibration.taken_with.size_px);
+    let reference = Matrix3::from_fn(|row, column| rows[row][column]);
+    let camera = camera_at(&layout, 0, reference);
+    let prior = prior.map(|prior| prior.along_view(reference, points_over(&camera, lens.size_px)).ok_or(MeasureError::NoPose)).transpose()?;
     Ok(Cameras {
         layout,
         lens,
-        references: vec![Matrix3::from_fn(|row, column| rows[row][column])],
+        references: vec![reference],
         prints: vec![],
         view_of_photo: vec![0; seen.patterns.len()],
         correlated: prior.into_iter().collect(),
         screen_known: true,
     })
+}
+
+/// Points of the print that the camera sees on a regular net over the picture.
+fn points_over(camera: &Camera<f64>, size_px: [f64; 2]) -> Vec<[f64; 2]> {
+    const NET: [f64; 5] = [0.0, 0.25, 0.5, 0.75, 1.0];
+    let pixel = |x: f64, y: f64| PixelPoint { x_px: x * (size_px[0] - 1.0), y_px: y * (size_px[1] - 1.0) };
+    let places = NET.into_iter().flat_map(|y| NET.map(|x| pixel(x, y)));
+    places.filter_map(|at| camera.print_point(at)).map(|point| [point.x_m, point.y_m]).collect()
 }
 
 /// The lens of a layout that knows it, as a start value for poses.
