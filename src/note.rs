@@ -120,6 +120,11 @@ pub enum Note {
         /// Expected value of `chi2` on a bench that was left alone.
         redundancy: f64,
     },
+    /// All spots lie beside their places by the same amount.
+    CalibrationShifted {
+        /// Mean offset of the spots, px.
+        shift_px: [f64; 2],
+    },
 }
 
 impl Note {
@@ -143,6 +148,7 @@ impl Note {
             Self::StatementStrained { .. } => "statement-strained",
             Self::CalibrationUnchecked => "calibration-unchecked",
             Self::CalibrationStrained { .. } => "calibration-strained",
+            Self::CalibrationShifted { .. } => "calibration-shifted",
             Self::StandardAirAssumed => "standard-air-assumed",
             Self::AirNotUsed => "air-not-used",
             Self::WavelengthInOtherMedium { .. } => "wavelength-in-other-medium",
@@ -211,6 +217,10 @@ impl std::fmt::Display for Note {
                 f,
                 "the photo does not go with the calibration (chi-square {chi2:.1} where {redundancy:.1} is expected; {what} is pulled by {:.1} standard uncertainties): something was moved since; calibrate again",
                 pull.abs()
+            ),
+            Self::CalibrationShifted { shift_px: [x, y] } => write!(
+                f,
+                "all spots lie beside the places that the calibration gives them, by ({x:.2}, {y:.2}) px on average: camera, screen or laser was moved since; calibrate again"
             ),
             Self::StandardAirAssumed => f.write_str(
                 "wavelength stated in vacuum, air not fully stated: 20(3) degC, 1013(30) hPa, 50(20) % humidity assumed for what is missing; state [air], above all the pressure at more than 300 m above the sea",

@@ -118,7 +118,7 @@ fn a_new_bench_file_reads_as_it_is() {
 #[test]
 fn every_command_explains_itself_with_an_example() {
     let folder = tempfile::tempdir().unwrap();
-    for command in ["measure", "new", "target", "render", "completions", "manual"] {
+    for command in ["measure", "calibrate", "new", "target", "render", "completions", "manual"] {
         let done = spotrule(folder.path(), &[command, "--help"]);
         assert_eq!(done.status.code(), Some(0));
         assert!(text(&done.stdout).contains("Example"), "{command}");

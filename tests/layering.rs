@@ -16,7 +16,8 @@ const MAY_USE: &[(&str, &[&str])] = &[
     ("photo", &["math"]),
     ("spots", &["photo", "math"]),
     ("target", &["lattice", "optics", "spots"]),
-    ("bench", &["quantity"]),
+    ("calibration", &["quantity"]),
+    ("bench", &["quantity", "calibration"]),
     ("fit", &["math", "lattice", "optics", "spots", "target", "bench"]),
     ("budget", &["fit"]),
     ("measure", &["budget"]),
@@ -52,7 +53,7 @@ const OUTER_WORLD: &[&str] = &[
 ];
 
 /// Rooms that may serialise, through structs of their own: bench files, results, scenes and their truth.
-const MAY_SERIALISE: &[&str] = &["bench", "report", "synth", "cli"];
+const MAY_SERIALISE: &[&str] = &["bench", "calibration", "report", "synth", "cli"];
 
 fn root(path: &str) -> PathBuf {
     Path::new(env!("CARGO_MANIFEST_DIR")).join(path)

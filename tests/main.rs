@@ -24,6 +24,8 @@ mod scenes;
 mod spots_on_known_photos;
 // a planted truth comes back, as often inside its uncertainty as stated
 mod truth;
+// a bench or a camera calibrated, saved, read back and used
+mod calibration;
 // the program as a user and a script meet it
 mod cli;
 // what must not matter: turned photos, units of length

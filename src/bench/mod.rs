@@ -29,6 +29,7 @@ pub use error::{BenchError, Place};
 pub use laser_lines::{LaserLine, laser_lines};
 pub use overrides::Overrides;
 pub use sheet::SheetFormat;
+pub use target::target_pitch;
 pub use template::{template, template_with};
 
 /// Everything the operator knows. `None` means: not known at all.

@@ -106,6 +106,50 @@ pub enum CalibrationError {
     /// A bench that is calibrated already.
     #[error("this bench file holds a [calibration] already; calibrate from the bench file that it was made from, or take [calibration] out")]
     Already,
+    /// Too few views of the target.
+    #[error("{found} views of the dot target; a camera needs at least {needed}, better 6 to 15, most of them 20 to 40 degrees oblique from different sides")]
+    TooFewViews {
+        /// Photos given.
+        found: usize,
+        /// Photos needed.
+        needed: usize,
+    },
+    /// All views look from the same direction.
+    #[error(
+        "all views look at the print from nearly the same direction (at most {:.1} degrees apart, {:.0} are needed): they cannot tell focal length from distance; photograph it 20 to 40 degrees oblique from different sides",
+        spread_rad.to_degrees(), needed_rad.to_degrees()
+    )]
+    ViewsParallel {
+        /// Largest angle between two directions.
+        spread_rad: f64,
+        /// Least angle.
+        needed_rad: f64,
+    },
+    /// One photo given twice.
+    #[error("the photo is given twice ({first} is the same file); the same evidence must not count twice")]
+    ViewTwice {
+        /// Name of the first.
+        first: String,
+    },
+    /// A view from another camera setting than the first.
+    #[error("the photo was taken with another camera setting than {first}: {why}")]
+    ViewsDiffer {
+        /// Name of the first photo.
+        first: String,
+        /// Why.
+        why: Box<CalibrationError>,
+    },
+    /// The views leave the lens open.
+    #[error(
+        "the views fix the focal length only to {:.1} % (at most {:.0} % is of use); photograph the print larger in the frame and more obliquely from different sides",
+        relative_u * 100.0, most * 100.0
+    )]
+    LensOpen {
+        /// u(f) / f.
+        relative_u: f64,
+        /// What is accepted.
+        most: f64,
+    },
     /// The covariance of the fit cannot be saved.
     #[error("photos and bench file leave some combination of throw, screen and camera entirely open, so there is nothing to save; photograph the dot target, or state the throw")]
     Open,
@@ -122,7 +166,8 @@ impl CalibrationError {
             Self::SectionChanged { .. } => "calibration-section-changed",
             Self::SamePhoto => "calibration-same-photo",
             Self::CameraMoved { .. } | Self::SeveralViews { .. } => "calibration-camera-moved",
-            Self::Open => "calibration-open",
+            Self::Open | Self::LensOpen { .. } => "calibration-open",
+            Self::TooFewViews { .. } | Self::ViewsParallel { .. } => "calibration-views",
             _ => "calibration",
         }
     }
@@ -130,6 +175,6 @@ impl CalibrationError {
     /// Whether the input could not be used at all, as opposed to photos that honestly fix nothing.
     #[must_use]
     pub fn is_unusable_input(&self) -> bool {
-        !matches!(self, Self::Open)
+        !matches!(self, Self::Open | Self::LensOpen { .. } | Self::TooFewViews { .. } | Self::ViewsParallel { .. })
     }
 }

@@ -80,8 +80,8 @@ fn checked(form: Form) -> Result<Calibration, CalibrationError> {
         taken_with: TakenWith {
             size_px: form.size_px.map(|side| usize::try_from(side).unwrap_or(usize::MAX)),
             camera: form.camera,
-            focal_length_m: form.focal_length_mm.map(|mm| mm * 1e-3),
-            focal_length_35mm_m: form.focal_length_35mm_mm.map(|mm| mm * 1e-3),
+            focal_length_m: form.focal_length_mm.map(|mm| mm / 1e3),
+            focal_length_35mm_m: form.focal_length_35mm_mm.map(|mm| mm / 1e3),
         },
         camera_reference: form.camera_reference,
         posterior: posterior(&form.parameters, &form.correlation)?,

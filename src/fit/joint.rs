@@ -121,10 +121,16 @@ impl Joint {
     /// The same as [`Self::spot_lengths`] for dots, marks and scale ends.
     #[must_use]
     pub fn print_lengths(&self) -> Vec<Option<f64>> {
+        self.prints.iter().zip(self.print_offsets_px()).map(|(print, offset)| whitened_length(print.covariance, offset?)).collect()
+    }
+
+    /// Seen minus predicted, px, of dots, marks and scale ends.
+    #[must_use]
+    pub fn print_offsets_px(&self) -> Vec<Option<[f64; 2]>> {
         let values = self.values();
         let pitch_m = self.layout.value(Parameter::TargetPitch).unwrap_or(1.0);
         let cameras: Vec<Camera<f64>> = (0..self.shape.references.len()).map(|view| self.camera(&values, view)).collect();
-        let length = |print: &PrintObservation| {
+        let offset = |print: &PrintObservation| {
             let place = match print.place {
                 PrintPlace::Pitches([i, j]) => [i * pitch_m, j * pitch_m],
                 PrintPlace::Metres(metres) => metres,
@@ -133,9 +139,9 @@ impl Joint {
                 }
             };
             let [x, y] = cameras[print.view].print_projector()(place)?;
-            whitened_length(print.covariance, [print.at.x_px - x, print.at.y_px - y])
+            Some([print.at.x_px - x, print.at.y_px - y])
         };
-        self.prints.iter().map(length).collect()
+        self.prints.iter().map(offset).collect()
     }
 
     /// Current values of all entries.

@@ -74,6 +74,25 @@ fn by_eye(parameter: Parameter, u: f64, source: Source) -> Entry {
 
 /// Adds the camera: intrinsics shared by all views, and the pose of each view.
 pub fn add_camera(layout: &mut Layout, lens: &LensKnowledge, views: &[ViewStart]) {
+    add_ordinary_lens(layout, lens);
+    add_views(layout, views);
+}
+
+/// Adds a lens of which nothing is known beforehand, with start values for focal length and principal point, px.
+pub fn add_unknown_lens(layout: &mut Layout, focal_px: f64, principal_px: [f64; 2]) {
+    let mut free = |parameter, value, scale| layout.add(entry(parameter, value, Prior::Free, Source::Lens, scale));
+    free(Parameter::LogFocalLength, focal_px.ln(), 0.01);
+    for (axis, place_px) in principal_px.into_iter().enumerate() {
+        free(Parameter::PrincipalPoint { axis }, place_px, 1.0);
+    }
+    for term in 0..2 {
+        free(Parameter::RadialDistortion { term }, 0.0, 0.01);
+        free(Parameter::TangentialDistortion { term }, 0.0, 0.001);
+    }
+}
+
+/// An ordinary lens, as far as EXIF data or the operator know it.
+fn add_ordinary_lens(layout: &mut Layout, lens: &LensKnowledge) {
     let [width, height] = lens.size_px;
     let u_principal = PRINCIPAL_POINT_U_WIDTHS * width.max(height);
     let normal = |mean, u| Prior::Normal { mean, u };
@@ -89,6 +108,10 @@ pub fn add_camera(layout: &mut Layout, lens: &LensKnowledge, views: &[ViewStart]
     for term in 0..2 {
         layout.add(entry(Parameter::TangentialDistortion { term }, 0.0, normal(0.0, TANGENTIAL_U), Source::Lens, 0.001));
     }
+}
+
+/// Adds the pose of each view.
+pub fn add_views(layout: &mut Layout, views: &[ViewStart]) {
     for (view, start) in views.iter().enumerate() {
         for axis in 0..3 {
             let prior = if axis == 2 && start.roll == Roll::Defined { Prior::Exact } else { Prior::Free };

@@ -41,12 +41,18 @@ pub(super) fn bench_calibration(fitted: &Fitted<'_>, bench: &Bench) -> Result<Ca
         },
         taken_with: taken_with(size_px, exif),
         camera_reference: Some(std::array::from_fn(|row| std::array::from_fn(|column| reference[(row, column)]))),
-        posterior: posterior(fit, bench, &bench_parameters(bench.lasers.len()))?,
+        posterior: posterior(fit, &bench_parameters(bench.lasers.len()), |parameter| saved_as(bench, parameter))?,
     })
 }
 
 /// Mean and covariance of those of the parameters that the problem has; all others are integrated out.
-pub(super) fn posterior(fit: &Fit, bench: &Bench, parameters: &[Parameter]) -> Result<Posterior, CalibrationError> {
+///
+/// - `saved_as`: name and unit of a parameter in the file
+pub(super) fn posterior(
+    fit: &Fit,
+    parameters: &[Parameter],
+    saved_as: impl Fn(Parameter) -> (String, &'static str),
+) -> Result<Posterior, CalibrationError> {
     let layout = &fit.joint.layout;
     let (mut values, mut columns) = (Vec::new(), Vec::new());
     for &parameter in parameters {
@@ -57,7 +63,7 @@ pub(super) fn posterior(fit: &Fit, bench: &Bench, parameters: &[Parameter]) -> R
             fit.covariance[(column, column)].max(0.0).sqrt()
         });
         let (value, u) = if parameter == Parameter::LogFocalLength { (fitted.exp(), fitted.exp() * u) } else { (fitted, u) };
-        let (name, unit) = saved_as(bench, parameter);
+        let (name, unit) = saved_as(parameter);
         values.push(UncertainValue { name, unit: unit.to_owned(), value, u });
     }
     let covariance = DMatrix::from_fn(columns.len(), columns.len(), |i, j| fit.covariance[(columns[i], columns[j])]);

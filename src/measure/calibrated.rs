@@ -48,7 +48,11 @@ pub(super) fn bench_parameters(lasers: usize) -> Vec<Parameter> {
 
 /// Name of a parameter in a calibration, and the unit in which it is written there.
 pub(super) fn saved_as(bench: &Bench, parameter: Parameter) -> (String, &'static str) {
-    let (name, unit) = described(bench, parameter);
+    in_file(described(bench, parameter))
+}
+
+/// Name and unit of a parameter as they stand in a calibration.
+pub(super) fn in_file((name, unit): (String, ParameterUnit)) -> (String, &'static str) {
     let unit = match unit {
         ParameterUnit::Length => "mm",
         ParameterUnit::Wavelength => "nm",
@@ -187,7 +191,7 @@ fn own_evidence(calibration: &Calibration, inputs: &Inputs<'_>, bench: &Bench) -
 }
 
 /// Size, camera and zoom.
-fn belongs(calibration: &Calibration, size_px: [usize; 2], exif: &Exif) -> Result<Option<Note>, CalibrationError> {
+pub(super) fn belongs(calibration: &Calibration, size_px: [usize; 2], exif: &Exif) -> Result<Option<Note>, CalibrationError> {
     let taken = &calibration.taken_with;
     if taken.size_px != size_px {
         return Err(CalibrationError::OtherSize { photo: size_px, calibrated: taken.size_px });

@@ -10,13 +10,14 @@ use crate::{
     Error,
     bench::{Bench, FocalLength, Target, TargetKind},
     fit::{
-        CorrelatedPrior, Joint, Layout, Outliers, Parameter, PrintObservation, PrintPlace, Shape, Source,
+        CorrelatedPrior, Fit, FitError, Joint, Layout, Outliers, Parameter, PrintObservation, PrintPlace, Shape, Source,
         setup::{self, LensKnowledge, ViewStart},
         solve,
     },
     frames::{PixelCovariance, PixelPoint},
     photo::Exif,
     quantity::Quantity,
+    optics::Camera,
     target::{self, Reading},
 };
 use nalgebra::{Matrix3, Vector3};
@@ -82,42 +83,71 @@ pub(super) fn cameras(seen: &Seen, bench: &Bench, targets: &[&str]) -> Result<Ca
     Ok(cameras)
 }
 
-/// Solves the views from their prints alone; twice where dots have to be corrected for perspective.
+/// Solves the views from their prints alone.
 fn settle(cameras: &mut Cameras, bench: &Bench, views: &[View]) -> Result<(), Error> {
     let outliers = if views.iter().all(|view| view.reading.is_some()) { Outliers::Rejected } else { Outliers::Kept };
-    let mut pitch_m = None;
+    let mut discs = None;
     if let Some(Target { kind: TargetKind::Dots { pitch_m: pitch, .. }, .. }) = &bench.target {
-        pitch_m = Some(pitch.value);
+        let readings = views.iter().filter_map(|view| view.reading.as_ref()).collect();
+        discs = Some(Discs { pitch_m: pitch.value, readings });
         // Alone, a print cannot tell its own pitch from the distance of the camera.
         setup::add_target_pitch(&mut cameras.layout, Quantity { u: 0.0, ..*pitch });
     }
-    let uncorrected = cameras.prints.clone();
-    for pass in 0..2 {
-        let shape = Shape { photos: vec![], references: cameras.references.clone(), seen_from: bench.screen.seen_from };
-        let joint = Joint {
-            layout: cameras.layout.clone(),
-            shape,
-            spots: vec![],
-            prints: cameras.prints.clone(),
-            knowledge: vec![],
-            correlated: cameras.correlated.clone(),
-            spot_scale: 1.0,
-            print_scale: 1.0,
-        };
-        let fit = solve(joint, outliers)?;
-        cameras.layout = fit.joint.layout.clone();
-        cameras.prints = fit.joint.prints.clone();
-        let (Some(pitch_m), 0) = (pitch_m, pass) else { break };
-        for (print, seen) in cameras.prints.iter_mut().zip(&uncorrected) {
-            let camera = fit.joint.camera(&fit.joint.values(), print.view);
-            let (PrintPlace::Pitches(place), Some(reading)) = (print.place, &views[print.view].reading) else { continue };
-            let radius = if is_mark(place) { reading.mark_radius_pitches } else { reading.dot_radius_pitches };
-            if let Some([dx, dy]) = disc_centroid_offset(&camera, place.map(|p| p * pitch_m), radius * pitch_m) {
-                print.at = PixelPoint { x_px: seen.at.x_px - dx, y_px: seen.at.y_px - dy };
-            }
+    let joint = Joint {
+        layout: cameras.layout.clone(),
+        shape: Shape { photos: vec![], references: cameras.references.clone(), seen_from: bench.screen.seen_from },
+        spots: vec![],
+        prints: cameras.prints.clone(),
+        knowledge: vec![],
+        correlated: cameras.correlated.clone(),
+        spot_scale: 1.0,
+        print_scale: 1.0,
+    };
+    let fit = settled(joint, discs.as_ref(), outliers)?;
+    (cameras.layout, cameras.prints) = (fit.joint.layout, fit.joint.prints);
+    Ok(())
+}
+
+/// The discs of a printed target: one reading per view.
+pub(super) struct Discs<'a> {
+    pub(super) pitch_m: f64,
+    pub(super) readings: Vec<&'a Reading>,
+}
+
+/// Solves views from their prints; twice where dots have to be corrected for perspective, because the correction asks for a camera.
+pub(super) fn settled(joint: Joint, discs: Option<&Discs<'_>>, outliers: Outliers) -> Result<Fit, FitError> {
+    let seen: Vec<PixelPoint> = joint.prints.iter().map(|print| print.at).collect();
+    let fit = solve(joint, outliers)?;
+    let Some(Discs { pitch_m, readings }) = discs else { return Ok(fit) };
+    let values = fit.joint.values();
+    let cameras: Vec<Camera<f64>> = (0..readings.len()).map(|view| fit.joint.camera(&values, view)).collect();
+    let mut joint = fit.joint;
+    for (print, seen) in joint.prints.iter_mut().zip(&seen) {
+        let (PrintPlace::Pitches(place), Some(reading)) = (print.place, readings.get(print.view)) else { continue };
+        let radius = if is_mark(place) { reading.mark_radius_pitches } else { reading.dot_radius_pitches };
+        if let Some([dx, dy]) = disc_centroid_offset(&cameras[print.view], place.map(|p| p * pitch_m), radius * pitch_m) {
+            print.at = PixelPoint { x_px: seen.x_px - dx, y_px: seen.y_px - dy };
         }
     }
-    Ok(())
+    joint.print_scale = 1.0;
+    solve(joint, outliers)
+}
+
+/// What a reading says of the print in a view.
+pub(super) fn print_observations(view: usize, reading: &Reading) -> impl Iterator<Item = PrintObservation> + '_ {
+    reading.dots.iter().map(move |dot| PrintObservation {
+        view,
+        at: dot.at,
+        covariance: dot.covariance,
+        place: PrintPlace::Pitches([f64::from(dot.index.0), f64::from(dot.index.1)]),
+        weight: 1.0,
+    })
+}
+
+/// Homography from metres on the print to pixels, as the reading found it.
+pub(super) fn pixel_from_metres(reading: &Reading, pitch_m: f64) -> Matrix3<f64> {
+    let h = reading.pixel_from_pitches;
+    Matrix3::from_fn(|row, column| h[row][column]) * Matrix3::from_diagonal(&Vector3::new(1.0 / pitch_m, 1.0 / pitch_m, 1.0))
 }
 
 fn is_mark(place: [f64; 2]) -> bool {
@@ -163,18 +193,8 @@ fn dot_views(seen: &Seen, pitch_m: Quantity, lens: &LensKnowledge) -> Result<Vec
     let readings: Vec<&Reading> =
         if seen.targets.is_empty() { in_pattern.collect() } else { seen.targets.iter().map(|t| &t.reading).collect() };
     let view = |(number, reading): (usize, &&Reading)| {
-        let h = reading.pixel_from_pitches;
-        let pixel_from_pitches = Matrix3::from_fn(|row, column| h[row][column]);
-        let pixel_from_metres = pixel_from_pitches * Matrix3::from_diagonal(&Vector3::new(1.0 / pitch_m.value, 1.0 / pitch_m.value, 1.0));
-        let start = pose_from_homography(&pixel_from_metres, lens).ok_or(MeasureError::NoPose)?;
-        let print = |dot: &target::Dot| PrintObservation {
-            view: number,
-            at: dot.at,
-            covariance: dot.covariance,
-            place: PrintPlace::Pitches([f64::from(dot.index.0), f64::from(dot.index.1)]),
-            weight: 1.0,
-        };
-        Ok(View { start, prints: reading.dots.iter().map(print).collect(), reading: Some((*reading).clone()) })
+        let start = pose_from_homography(&pixel_from_metres(reading, pitch_m.value), lens).ok_or(MeasureError::NoPose)?;
+        Ok(View { start, prints: print_observations(number, reading).collect(), reading: Some((*reading).clone()) })
     };
     readings.iter().enumerate().map(view).collect()
 }

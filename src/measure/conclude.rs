@@ -197,12 +197,23 @@ pub(super) fn described(bench: &Bench, parameter: Parameter) -> (String, Paramet
         Parameter::ZeroOrderOnPrint { axis } => (format!("zero order on target {}", ["X", "Y"][axis.min(1)]), ParameterUnit::Length),
         Parameter::PrintTurn => ("target turn".to_owned(), ParameterUnit::Angle),
         Parameter::TargetPitch => ("target pitch".to_owned(), ParameterUnit::Length),
-        Parameter::LogFocalLength => ("focal length".to_owned(), ParameterUnit::Pixel),
-        Parameter::PrincipalPoint { axis } => (format!("principal point {}", axis_name(axis)), ParameterUnit::Pixel),
-        Parameter::RadialDistortion { term } => (format!("distortion k{}", term + 1), ParameterUnit::Number),
-        Parameter::TangentialDistortion { term } => (format!("distortion p{}", term + 1), ParameterUnit::Number),
+        Parameter::LogFocalLength
+        | Parameter::PrincipalPoint { .. }
+        | Parameter::RadialDistortion { .. }
+        | Parameter::TangentialDistortion { .. } => described_lens(parameter),
         Parameter::CameraTurn { view, axis } => (format!("camera turn {} (view {})", axis_name(axis), view + 1), ParameterUnit::Angle),
         Parameter::CameraPlace { view, axis } => (format!("camera place {} (view {})", axis_name(axis), view + 1), ParameterUnit::Length),
         Parameter::ScaleEnd { end, axis } => (format!("scale end {} {}", end + 1, ["X", "Y"][axis.min(1)]), ParameterUnit::Length),
+    }
+}
+
+/// Name and unit of a parameter of the lens; nothing else has a name here.
+pub(super) fn described_lens(parameter: Parameter) -> (String, ParameterUnit) {
+    match parameter {
+        Parameter::LogFocalLength => ("focal length".to_owned(), ParameterUnit::Pixel),
+        Parameter::PrincipalPoint { axis } => (format!("principal point {}", ["x", "y"][axis.min(1)]), ParameterUnit::Pixel),
+        Parameter::RadialDistortion { term } => (format!("distortion k{}", term + 1), ParameterUnit::Number),
+        Parameter::TangentialDistortion { term } => (format!("distortion p{}", term + 1), ParameterUnit::Number),
+        _ => (String::new(), ParameterUnit::Number),
     }
 }

@@ -39,5 +39,6 @@ pub(super) fn fitted<'a>(inputs: &'a Inputs<'a>, bench: &Bench) -> Result<Fitted
     notes.extend(statement::numbering_notes(&ordered));
     notes.extend(strain::strained_statements(bench, &fit));
     notes.extend(strain::strained_calibration(bench, &fit));
+    notes.extend(strain::shifted_pattern(&fit));
     Ok(Fitted { inputs, seen, ordered, fit, notes })
 }

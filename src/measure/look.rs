@@ -97,7 +97,7 @@ fn without_laser(photo: &Photo, spots: &Spots) -> photo::Light {
     photo.light(weights.map(|weight| weight / sum))
 }
 
-fn look_at_target(file: &PhotoFile<'_>) -> Result<SeenTarget, Error> {
+pub(super) fn look_at_target(file: &PhotoFile<'_>) -> Result<SeenTarget, Error> {
     let photo = photo::decode(file.bytes)?;
     let reading = target::read(&photo.grey(), &target::ReadOptions::default())?;
     Ok(SeenTarget { size_px: [photo.width, photo.height], exif: photo.exif, reading })

@@ -11,6 +11,7 @@ mod cameras;
 mod conclude;
 mod error;
 mod fitted;
+mod lens;
 mod look;
 mod measurement;
 mod orders;
@@ -21,12 +22,14 @@ mod strain;
 mod strays;
 mod view;
 mod zero_order;
+mod zhang;
 
 pub use crate::{
     budget::{BudgetLine, Value},
     lattice::LatticeKind,
 };
 pub use error::{MeasureError, Refusal};
+pub use lens::{CameraCalibration, PointPair, ViewSummary, calibrate_camera, lens_from_points};
 pub use look::{Inputs, PhotoFile};
 pub use measurement::{
     FitSummary, KindStatement, Measurement, OrderRow, ParameterRow, ParameterUnit, PhotoSummary, RejectedSpot, SampleResult, ZeroOrder,

@@ -53,6 +53,29 @@ pub(super) fn strained_calibration(bench: &Bench, fit: &Fit) -> Option<Note> {
     Some(Note::CalibrationStrained { what: described(bench, entry.parameter).0, pull, chi2, redundancy })
 }
 
+/// Spots that all lie to one side of their predictions by more than this many standard uncertainties of their mean were shifted.
+const SHIFTED: f64 = 4.0;
+
+/// A note when all spots are shifted alike: the fit may rather take its spots for poor than give up a calibration, and what moved shows as
+/// a common offset. On a bench that was left alone the mean offset is nought within `1/√Σw`, the Birge factor included.
+pub(super) fn shifted_pattern(fit: &Fit) -> Option<Note> {
+    if !fit.joint.correlated.iter().any(|prior| prior.source == Source::Calibration) {
+        return None;
+    }
+    let birge = fit.joint.spot_scale.powi(2);
+    let (mut weights, mut sums) = ([0.0; 2], [0.0; 2]);
+    for (spot, offset) in fit.joint.spots.iter().zip(fit.joint.spot_residuals_px()).filter(|(spot, _)| spot.weight > 0.5) {
+        let variances = [spot.covariance.xx * birge, spot.covariance.yy * birge];
+        for axis in 0..2 {
+            weights[axis] += variances[axis].recip();
+            sums[axis] += offset?[axis] / variances[axis];
+        }
+    }
+    let lengths = [0, 1].map(|axis| sums[axis] / weights[axis].sqrt());
+    let shift_px = [0, 1].map(|axis| sums[axis] / weights[axis]);
+    (lengths[0].hypot(lengths[1]) > SHIFTED).then_some(Note::CalibrationShifted { shift_px })
+}
+
 fn in_unit(unit: ParameterUnit, value: f64, u: f64) -> String {
     match unit {
         ParameterUnit::Length | ParameterUnit::Wavelength => format_length(value, u),

@@ -261,7 +261,7 @@ fn warning_json(note: &Note) -> Remark<'static> {
 }
 
 /// These structs hold only text, integers and finite numbers under text keys: writing them cannot fail.
-fn pretty(result: &impl Serialize) -> String {
+pub(super) fn pretty(result: &impl Serialize) -> String {
     let mut text = serde_json::to_string_pretty(result).unwrap_or_default();
     text.push('\n');
     text

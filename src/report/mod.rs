@@ -4,6 +4,8 @@
 
 mod budget_table;
 mod calibration_text;
+mod camera_json;
+mod camera_text;
 mod columns;
 #[cfg(test)]
 mod example;
@@ -16,6 +18,8 @@ mod units;
 mod words;
 
 pub use calibration_text::calibration_text;
+pub use camera_json::camera_json;
+pub use camera_text::camera_text;
 pub use json::{Program, json, refused_json};
 pub use overlay::{overlay, png};
 pub use rounding::{Rounded, concise, percent, rounded, significant};
