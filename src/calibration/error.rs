@@ -63,7 +63,9 @@ pub enum CalibrationError {
         calibrated: [usize; 2],
     },
     /// A photo of another camera or zoom.
-    #[error("the photo's EXIF data say {what} {photo}, the calibration was made with {calibrated}: it holds for one camera setting only; calibrate again")]
+    #[error(
+        "the photo's EXIF data say {what} {photo}, the calibration was made with {calibrated}: it holds for one camera setting only; calibrate again"
+    )]
     OtherCamera {
         /// "focal length" or "camera".
         what: &'static str,
@@ -98,16 +100,22 @@ pub enum CalibrationError {
         name: String,
     },
     /// The photos were taken from several places.
-    #[error("the photos show {views} camera positions, but a calibration keeps one: calibrate from photos of one position, with one target photo")]
+    #[error(
+        "the photos show {views} camera positions, but a calibration keeps one: calibrate from photos of one position, with one target photo"
+    )]
     SeveralViews {
         /// Number of positions.
         views: usize,
     },
     /// A bench that is calibrated already.
-    #[error("this bench file holds a [calibration] already; calibrate from the bench file that it was made from, or take [calibration] out")]
+    #[error(
+        "this bench file holds a [calibration] already; calibrate from the bench file that it was made from, or take [calibration] out"
+    )]
     Already,
     /// Too few views of the target.
-    #[error("{found} views of the dot target; a camera needs at least {needed}, better 6 to 15, most of them 20 to 40 degrees oblique from different sides")]
+    #[error(
+        "{found} views of the dot target; a camera needs at least {needed}, better 6 to 15, most of them 20 to 40 degrees oblique from different sides"
+    )]
     TooFewViews {
         /// Photos given.
         found: usize,
@@ -137,7 +145,7 @@ pub enum CalibrationError {
         /// Name of the first photo.
         first: String,
         /// Why.
-        why: Box<CalibrationError>,
+        why: Box<Self>,
     },
     /// The views leave the lens open.
     #[error(
@@ -151,7 +159,9 @@ pub enum CalibrationError {
         most: f64,
     },
     /// The covariance of the fit cannot be saved.
-    #[error("photos and bench file leave some combination of throw, screen and camera entirely open, so there is nothing to save; photograph the dot target, or state the throw")]
+    #[error(
+        "photos and bench file leave some combination of throw, screen and camera entirely open, so there is nothing to save; photograph the dot target, or state the throw"
+    )]
     Open,
 }
 

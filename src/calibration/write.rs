@@ -38,11 +38,7 @@ fn form(calibration: &Calibration) -> Form {
             .iter()
             .map(|known| CertificateForm { of: known.of.clone(), pitch: known.pitch.clone() })
             .collect(),
-        sections: made_from
-            .sections
-            .iter()
-            .map(|(name, sha256)| SectionForm { name: name.clone(), sha256: sha256.clone() })
-            .collect(),
+        sections: made_from.sections.iter().map(|(name, sha256)| SectionForm { name: name.clone(), sha256: sha256.clone() }).collect(),
         size_px: taken_with.size_px.map(|side| u32::try_from(side).unwrap_or(u32::MAX)),
         camera: taken_with.camera.clone(),
         focal_length_mm: taken_with.focal_length_m.map(|m| m * 1e3),

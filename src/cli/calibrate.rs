@@ -60,7 +60,8 @@ fn calibrated(bench_text: &str, calibration: &Calibration) -> String {
     format!("{bench_text}{gap}{REMARKS}{}", calibration::text(calibration))
 }
 
-const REMARKS: &str = "# Written by spotrule calibrate: what the photos below told of this bench, as mean, standard uncertainty u and correlation.
+const REMARKS: &str =
+    "# Written by spotrule calibrate: what the photos below told of this bench, as mean, standard uncertainty u and correlation.
 # It takes the place of [laser], [air], [screen], [target] and [camera] above, which must stay as they are. [sample] and [[photo]] are free:
 #     spotrule measure sample.jpg --bench THIS-FILE
 # It holds as long as laser, screen and camera (place, zoom, focus) are not touched. Do not edit it: a checksum guards it.

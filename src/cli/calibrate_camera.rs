@@ -14,7 +14,8 @@ use crate::{
 };
 use std::process::ExitCode;
 
-const REMARKS: &str = "# Written by spotrule calibrate camera: focal length, principal point and distortion of one camera at one zoom and focus setting.
+const REMARKS: &str =
+    "# Written by spotrule calibrate camera: focal length, principal point and distortion of one camera at one zoom and focus setting.
 # In a bench file: [camera] calibration = \"THIS-FILE\"
 # Do not edit it: a checksum guards it. This is not a calibration certificate of an accredited laboratory.
 ";
@@ -32,11 +33,8 @@ fn camera(arguments: &CalibrateCameraArguments) -> Result<ExitCode, Failure> {
     let existing = existing(&arguments.out, arguments.force)?;
     let pitch_m = bench::target_pitch("--target-pitch", &arguments.target_pitch)
         .map_err(|error| Failure::Measurement { about: None, error: Box::new(error.into()) })?;
-    let photos = arguments
-        .photos
-        .iter()
-        .map(|path| Ok((path.display().to_string(), files::read(path)?)))
-        .collect::<Result<Vec<_>, Failure>>()?;
+    let photos =
+        arguments.photos.iter().map(|path| Ok((path.display().to_string(), files::read(path)?))).collect::<Result<Vec<_>, Failure>>()?;
     let mut found = calibrate_camera(&photo_files(&photos), pitch_m)
         .map_err(|failed| Failure::Measurement { about: failed.file, error: failed.error })?;
     stamp(&mut found.calibration);

@@ -111,8 +111,7 @@ impl CorrelatedPrior {
     #[must_use]
     pub fn along_view(mut self, reference: Matrix3<f64>, points_m: Vec<[f64; 2]>) -> Option<Self> {
         let (pixels, slopes) = self.seen(reference, &points_m, &self.mean)?;
-        let camera: Vec<usize> =
-            (0..self.len()).filter(|&i| model::camera_parameters(0).contains(&self.parameters[i])).collect();
+        let camera: Vec<usize> = (0..self.len()).filter(|&i| model::camera_parameters(0).contains(&self.parameters[i])).collect();
         let whole = self.whitening.solve_lower_triangular(&DMatrix::identity(self.len(), self.len()))?;
         let own = whole.select_rows(&camera);
         // In units of u, so that the covariance of the camera is factored without loss of digits.

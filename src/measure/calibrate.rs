@@ -82,12 +82,7 @@ pub(super) fn made_photos<'a>(files: &'a [PhotoFile<'a>], shows: Shows) -> impl 
 }
 
 pub(super) fn taken_with(size_px: [usize; 2], exif: &Exif) -> TakenWith {
-    TakenWith {
-        size_px,
-        camera: exif.camera.clone(),
-        focal_length_m: exif.focal_length_m,
-        focal_length_35mm_m: exif.focal_length_35mm_m,
-    }
+    TakenWith { size_px, camera: exif.camera.clone(), focal_length_m: exif.focal_length_m, focal_length_35mm_m: exif.focal_length_35mm_m }
 }
 
 /// The lengths that everything else rests on.

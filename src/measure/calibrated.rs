@@ -125,7 +125,8 @@ pub(super) fn cameras(calibration: &Calibration, seen: &Seen, bench: &Bench) -> 
     let lens = lens_of(&layout, calibration.taken_with.size_px);
     let reference = Matrix3::from_fn(|row, column| rows[row][column]);
     let camera = camera_at(&layout, 0, reference);
-    let prior = prior.map(|prior| prior.along_view(reference, points_over(&camera, lens.size_px)).ok_or(MeasureError::NoPose)).transpose()?;
+    let prior =
+        prior.map(|prior| prior.along_view(reference, points_over(&camera, lens.size_px)).ok_or(MeasureError::NoPose)).transpose()?;
     Ok(Cameras {
         layout,
         lens,
@@ -164,8 +165,7 @@ pub(super) fn check(inputs: &Inputs<'_>, seen: &Seen, bench: &Bench) -> Result<V
         let patterns = inputs.patterns.iter().zip(seen.patterns.iter().map(|p| (p.size_px, &p.exif)));
         let targets = inputs.targets.iter().zip(seen.targets.iter().map(|t| (t.size_px, &t.exif)));
         for (file, (size_px, exif)) in patterns.chain(targets) {
-            let blaming =
-                |error: CalibrationError| super::Refusal { file: Some(file.name.to_owned()), error: Box::new(error.into()) };
+            let blaming = |error: CalibrationError| super::Refusal { file: Some(file.name.to_owned()), error: Box::new(error.into()) };
             notes.extend(belongs(calibration, size_px, exif).map_err(blaming)?);
         }
     }

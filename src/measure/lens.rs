@@ -144,10 +144,7 @@ pub fn lens_from_points(views: &[Vec<PointPair>], size_px: [usize; 2], u_px: f64
             place: PrintPlace::Metres(pair.plane_m),
             weight: 1.0,
         };
-        Ok(Plane {
-            homography: Matrix3::from_fn(|row, column| homography[row][column]),
-            prints: pairs.iter().map(print).collect(),
-        })
+        Ok(Plane { homography: Matrix3::from_fn(|row, column| homography[row][column]), prints: pairs.iter().map(print).collect() })
     };
     let planes = views.iter().enumerate().map(plane).collect::<Result<Vec<_>, MeasureError>>()?;
     Ok(lens_posterior(&solved(&planes, size_px, None, Outliers::Kept)?)?)
