@@ -2,8 +2,8 @@
 
 use super::rough::Rough;
 use crate::{
-    frames::PixelPoint,
-    lattice::{self, Expected, IndexOptions, Indexed, LatticeError, Point, Reason},
+    frames::{PixelCovariance, PixelPoint},
+    lattice::{self, Expected, IndexOptions, Indexed, LatticeError, Point, Reason, ZeroHint},
     math::robust::median,
     spots::Spot,
 };
@@ -25,64 +25,83 @@ pub(super) struct Roughness {
     pub(super) bend: f64,
 }
 
-/// The zero order moves the origin of the wide-angle mapping, so indexing is repeated until it stays where it was put.
-const ZERO_ORDER_PASSES: usize = 3;
-/// Zero order and log evidence this sure need no second hypothesis, nats.
+/// A zero order that leads by this much in a lattice of this much evidence needs no rival hypothesis, nats.
 const SURE_ZERO: f64 = 3.0;
 const SURE_EVIDENCE: f64 = 30.0;
+/// Most that brightness and symmetry may say for or against a zero order beside the regularity of the places, nats.
+const ZERO_SAY: f64 = 8.0;
+/// How near, in px, a zero order lies to the place where it was supposed.
+const SAME_PLACE_PX: f64 = 3.0;
+/// Hypotheses tried at most; those that indexing itself proposes included.
+const MOST_HYPOTHESES: usize = 9;
 
-/// Indexes the spots of a photo. Which spot the zero order is decides how wide angles are mapped, so it is a hypothesis: the
-/// likely spots are tried in turn, and unless the first leaves no doubt the one with the strongest evidence is kept.
+/// Indexes the spots of a photo. Which spot the zero order is decides how wide angles are mapped, so it is a hypothesis: likely
+/// spots are tried in turn, with what indexing proposes from them, and unless one leaves no doubt the one is kept about which
+/// the orders are most regular and the pattern most symmetric.
 pub(super) fn order_spots(
     spots: &[Spot],
     rough: &Rough,
     roughness: Roughness,
     on_screen: &dyn Fn(&Spot) -> bool,
 ) -> Result<Ordered, LatticeError> {
-    let mut best: Option<Ordered> = None;
+    let mut hypotheses = likely_zero_orders(spots, rough);
+    let mut best: Option<(f64, Ordered)> = None;
     let mut refusal: Option<LatticeError> = None;
-    for zero in likely_zero_orders(spots, rough) {
-        match order_about(spots, rough.clone(), zero, roughness, on_screen) {
+    let mut next = 0;
+    while let Some(&zero) = hypotheses.get(next) {
+        next += 1;
+        let free = order_about(spots, rough, zero, Zero::Open, roughness, on_screen);
+        let proposed = free.as_ref().ok().and_then(|free| Some((free.rough.pixel(free.indexed.zero)?, free.indexed.evidence)));
+        let agrees = proposed.is_some_and(|(place, _)| place.distance_px(zero) < SAME_PLACE_PX);
+        if agrees && proposed.is_some_and(|(_, e)| e.zero_lead > SURE_ZERO && e.log_evidence > SURE_EVIDENCE) {
+            return free;
+        }
+        if let Some((place, _)) = proposed.filter(|_| hypotheses.len() < MOST_HYPOTHESES) {
+            if hypotheses.iter().all(|known| known.distance_px(place) >= SAME_PLACE_PX) {
+                hypotheses.insert(next, place);
+            }
+        }
+        match if agrees { free } else { order_about(spots, rough, zero, Zero::Here, roughness, on_screen) } {
             Ok(ordered) => {
-                let evidence = &ordered.indexed.evidence;
-                let sure = evidence.zero_lead > SURE_ZERO && evidence.log_evidence > SURE_EVIDENCE;
-                if best.as_ref().is_none_or(|b| evidence.log_evidence > b.indexed.evidence.log_evidence) {
-                    best = Some(ordered);
-                }
-                if sure {
-                    break;
+                let evidence = ordered.indexed.evidence;
+                let total = evidence.log_evidence + evidence.zero_score.clamp(-ZERO_SAY, ZERO_SAY);
+                if best.as_ref().is_none_or(|(lead, _)| total > *lead) {
+                    best = Some((total, ordered));
                 }
             }
             Err(error) => refusal = refusal.or(Some(error)),
         }
     }
-    best.ok_or_else(|| refusal.unwrap_or(LatticeError::TooFewSpots { found: 0, needed: 3 }))
+    let none = || refusal.unwrap_or(LatticeError::TooFewSpots { found: 0, needed: 3 });
+    best.map(|(_, ordered)| ordered).ok_or_else(none)
 }
 
-/// Indexes the spots with the zero order first taken to be at `zero`.
+/// Whether the zero order is where the mapping has its origin, or wherever indexing puts it.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+enum Zero {
+    Here,
+    Open,
+}
+
+/// Indexes the spots by the mapping that has its origin at `place`.
 fn order_about(
     spots: &[Spot],
-    mut rough: Rough,
-    mut zero: PixelPoint,
+    rough: &Rough,
+    place: PixelPoint,
+    zero: Zero,
     roughness: Roughness,
     on_screen: &dyn Fn(&Spot) -> bool,
 ) -> Result<Ordered, LatticeError> {
-    let mut last = None;
-    for _ in 0..ZERO_ORDER_PASSES {
-        if !rough.put_zero_order(zero) {
-            break;
-        }
-        let (points, spot_of_point) = points(spots, &rough, on_screen);
-        let options = IndexOptions { expected: roughness.expected, bend: roughness.bend, ..IndexOptions::default() };
-        let indexed = lattice::index(&points, &options, &|place| rough.in_frame(place))?;
-        let found = rough.pixel(indexed.zero);
-        last = Some(Ordered { indexed, spot_of_point, rough: rough.clone() });
-        match found {
-            Some(found) if found.distance_px(zero) > 2.0 => zero = found,
-            _ => break,
-        }
+    let mut rough = rough.clone();
+    if !rough.put_zero_order(place) {
+        return Err(LatticeError::TooFewSpots { found: 0, needed: 3 });
     }
-    last.ok_or(LatticeError::TooFewSpots { found: 0, needed: 3 })
+    let (points, spot_of_point) = points(spots, &rough, on_screen);
+    let here = rough.lattice_u(place, PixelCovariance::isotropic(SAME_PLACE_PX)).map(|u| ZeroHint { at: [0.0; 2], u });
+    let zero_hint = here.filter(|_| zero == Zero::Here);
+    let options = IndexOptions { expected: roughness.expected, bend: roughness.bend, zero_hint, ..IndexOptions::default() };
+    let indexed = lattice::index(&points, &options, &|place| rough.in_frame(place))?;
+    Ok(Ordered { indexed, spot_of_point, rough })
 }
 
 /// Bright spots tried as the zero order.
