@@ -7,6 +7,7 @@ use crate::{
     math::robust::median,
     spots::Spot,
 };
+use std::collections::BTreeMap;
 
 /// Spots of one photo with their orders; everything refers to the photo's list of spots.
 #[derive(Debug, Clone)]
@@ -14,6 +15,8 @@ pub(super) struct Ordered {
     pub(super) indexed: Indexed,
     /// Which spot each point given to `lattice` was.
     pub(super) spot_of_point: Vec<usize>,
+    /// Spots not given to `lattice`, and why.
+    left_out: BTreeMap<usize, &'static str>,
     /// The rough geometry with the zero order in its place.
     pub(super) rough: Rough,
 }
@@ -96,12 +99,13 @@ fn order_about(
     if !rough.put_zero_order(place) {
         return Err(LatticeError::TooFewSpots { found: 0, needed: 3 });
     }
-    let (points, spot_of_point) = points(spots, &rough, on_screen);
+    let left_out = left_out(spots, on_screen);
+    let (points, spot_of_point) = points(spots, &rough, &left_out);
     let here = rough.lattice_u(place, PixelCovariance::isotropic(SAME_PLACE_PX)).map(|u| ZeroHint { at: [0.0; 2], u });
     let zero_hint = here.filter(|_| zero == Zero::Here);
     let options = IndexOptions { expected: roughness.expected, bend: roughness.bend, zero_hint, ..IndexOptions::default() };
     let indexed = lattice::index(&points, &options, &|place| rough.in_frame(place))?;
-    Ok(Ordered { indexed, spot_of_point, rough })
+    Ok(Ordered { indexed, spot_of_point, left_out, rough })
 }
 
 /// Bright spots tried as the zero order.
@@ -164,24 +168,35 @@ pub(super) fn light_of(spot: &Spot) -> f64 {
     spot.peak * (spot.shape.xx * spot.shape.yy - spot.shape.xy.powi(2)).max(0.0).sqrt()
 }
 
-fn points(spots: &[Spot], rough: &Rough, on_screen: &dyn Fn(&Spot) -> bool) -> (Vec<Point>, Vec<usize>) {
+/// Spots that cannot be orders, whatever the lattice.
+fn left_out(spots: &[Spot], on_screen: &dyn Fn(&Spot) -> bool) -> BTreeMap<usize, &'static str> {
     let common = CommonSize::of(spots);
+    let reason = |spot: &Spot| match () {
+        () if !on_screen(spot) => Some("beyond the marks"),
+        () if !common.fits(spot) => Some("far from the common size of the spots"),
+        () => None,
+    };
+    spots.iter().enumerate().filter_map(|(number, spot)| reason(spot).map(|reason| (number, reason))).collect()
+}
+
+fn points(spots: &[Spot], rough: &Rough, left_out: &BTreeMap<usize, &'static str>) -> (Vec<Point>, Vec<usize>) {
     let point = |(i, spot): (usize, &Spot)| {
         let at = rough.lattice_place(spot.at)?;
         let u = rough.lattice_u(spot.at, spot.covariance)?;
         Some((Point::new(at, u, light_of(spot).max(1e-12)), i))
     };
-    spots.iter().enumerate().filter(|(_, spot)| on_screen(spot) && common.fits(spot)).filter_map(point).unzip()
+    spots.iter().enumerate().filter(|(number, _)| !left_out.contains_key(number)).filter_map(point).unzip()
 }
 
 impl Ordered {
-    /// Why a spot carries no order, in words.
-    pub(super) fn reason(&self, spot: usize) -> String {
-        let Some(point) = self.spot_of_point.iter().position(|&s| s == spot) else {
-            return "beyond the marks, or far from the common size of the spots".to_owned();
-        };
-        let reason = self.indexed.rejected.iter().find(|(rejected, _)| *rejected == point);
-        reason.map_or_else(|| "off the model".to_owned(), |(_, reason)| in_words(reason))
+    /// Why a spot carries no order, in words, and how far off it is.
+    pub(super) fn reason(&self, spot: usize) -> (&'static str, String) {
+        if let Some(reason) = self.left_out.get(&spot) {
+            return (reason, String::new());
+        }
+        let point = self.spot_of_point.iter().position(|&s| s == spot);
+        let reason = self.indexed.rejected.iter().find(|(rejected, _)| Some(*rejected) == point);
+        reason.map_or_else(|| ("off the model", String::new()), |(_, reason)| in_words(reason))
     }
 
     /// Pairs of spot number and order.
@@ -191,15 +206,15 @@ impl Ordered {
 }
 
 /// A reason for the overlay and the order table.
-fn in_words(reason: &Reason) -> String {
+fn in_words(reason: &Reason) -> (&'static str, String) {
     match reason {
-        Reason::NotANumber => "no usable place".to_owned(),
-        Reason::OffLattice { offset } => format!("between orders ({:+.2}, {:+.2})", offset[0], offset[1]),
-        Reason::OffLine { distance } => format!("off the row by {distance:.2} orders"),
-        Reason::Duplicate { .. } => "a better spot holds this order".to_owned(),
-        Reason::Ghost { copies, .. } => format!("ghost, one of {copies} with the same offset"),
-        Reason::SecondLattice => "on a second lattice".to_owned(),
-        Reason::OutOfReach => "too far out to number".to_owned(),
-        _ => "off the lattice".to_owned(),
+        Reason::NotANumber => ("no usable place", String::new()),
+        Reason::OffLattice { offset } => ("between orders", format!("off by ({:+.2}, {:+.2}) orders", offset[0], offset[1])),
+        Reason::OffLine { distance } => ("off the row", format!("by {distance:.2} orders")),
+        Reason::Duplicate { .. } => ("a better spot holds this order", String::new()),
+        Reason::Ghost { copies, .. } => ("ghost", format!("one of {copies} with the same offset")),
+        Reason::SecondLattice => ("on a second lattice", String::new()),
+        Reason::OutOfReach => ("too far out to number", String::new()),
+        _ => ("off the lattice", String::new()),
     }
 }
