@@ -2,8 +2,8 @@
 //! exit code they deserve.
 
 use crate::{
-    bench::BenchError, calibration::CalibrationError, fit::FitError, lattice::LatticeError, measure::MeasureError, photo::PhotoError, quantity::QuantityError,
-    spots::SpotError, target::TargetError,
+    bench::BenchError, calibration::CalibrationError, fit::FitError, lattice::LatticeError, measure::MeasureError, photo::PhotoError,
+    quantity::QuantityError, spots::SpotError, target::TargetError,
 };
 
 /// Everything that can stop a measurement. The message names the value seen and what to do.

@@ -96,7 +96,7 @@ pub(super) struct CalibrateBenchArguments {
     /// Bench file to calibrate
     #[arg(long, value_name = "FILE")]
     pub(super) bench: PathBuf,
-    /// File to write: the bench file with a table [calibration]
+    /// File to write: the bench file with its calibration at the end
     #[arg(long, value_name = "FILE")]
     pub(super) out: PathBuf,
     /// Replace an existing file
@@ -128,7 +128,7 @@ pub(super) struct CalibrateCameraArguments {
     /// Pitch of the dot target, measured on the print, e.g. "10.00(1) mm"
     #[arg(long, value_name = "QUANTITY")]
     pub(super) target_pitch: String,
-    /// File to write, for [camera] calibration in a bench file
+    /// File to write, for the key calibration of a bench file's camera section
     #[arg(long, value_name = "FILE")]
     pub(super) out: PathBuf,
     /// Write the result as JSON; `-` prints JSON alone on standard output
@@ -228,7 +228,7 @@ pub(super) struct TargetArguments {
     #[arg(long, value_enum, default_value = "a4")]
     pub(super) paper: PaperFormat,
     /// Distance of neighbouring dots, mm
-    #[arg(long, value_name = "MM", default_value_t = 10.0)]
+    #[arg(long, value_name = "MM", default_value_t = 10.0, allow_negative_numbers = true)]
     pub(super) pitch: f64,
     /// File to write; .svg or .pdf
     #[arg(long, value_name = "FILE")]

@@ -75,10 +75,9 @@ pub(super) fn with_lens(bench: Bench, folder: &Path) -> Result<Bench, Failure> {
     let Some(name) = bench.camera.calibration.clone().filter(|_| bench.calibration.is_none()) else { return Ok(bench) };
     let path = folder.join(&name);
     let text = files::read_text(&path)?;
-    bench.with_lens(&text).map_err(|error| Failure::Measurement {
-        about: Some(path.display().to_string()),
-        error: Box::new(Error::Bench(error)),
-    })
+    bench
+        .with_lens(&text)
+        .map_err(|error| Failure::Measurement { about: Some(path.display().to_string()), error: Box::new(Error::Bench(error)) })
 }
 
 /// The bench file: as named, or `bench.toml` beside the photo when it is there.

@@ -10,14 +10,13 @@ use crate::{
     Error,
     bench::{Bench, FocalLength, Target, TargetKind},
     fit::{
-        CorrelatedPrior, Fit, FitError, Joint, Layout, Outliers, Parameter, PrintObservation, PrintPlace, Shape, Source,
+        CorrelatedPrior, FitError, Joint, Layout, Outliers, Parameter, PrintObservation, PrintPlace, Shape, Source, approach,
         setup::{self, LensKnowledge, ViewStart},
-        solve,
     },
     frames::{PixelCovariance, PixelPoint},
+    optics::Camera,
     photo::Exif,
     quantity::Quantity,
-    optics::Camera,
     target::{self, Reading},
 };
 use nalgebra::{Matrix3, Vector3};
@@ -52,7 +51,8 @@ pub(super) fn cameras(seen: &Seen, bench: &Bench, targets: &[&str]) -> Result<Ca
     }
     let (mut layout, mut correlated, mut lens) = (Layout::default(), vec![], lens(seen, bench));
     if let Some(calibration) = &bench.camera.lens {
-        let Prepared { entries, prior } = calibrated::prepared(&calibration.posterior, bench, &calibrated::LENS, Source::CameraCalibration)?;
+        let Prepared { entries, prior } =
+            calibrated::prepared(&calibration.posterior, bench, &calibrated::LENS, Source::CameraCalibration)?;
         entries.into_iter().for_each(|entry| {
             layout.add(entry);
         });
@@ -103,8 +103,8 @@ fn settle(cameras: &mut Cameras, bench: &Bench, views: &[View]) -> Result<(), Er
         spot_scale: 1.0,
         print_scale: 1.0,
     };
-    let fit = settled(joint, discs.as_ref(), outliers)?;
-    (cameras.layout, cameras.prints) = (fit.joint.layout, fit.joint.prints);
+    let joint = approached(joint, discs.as_ref(), outliers)?;
+    (cameras.layout, cameras.prints) = (joint.layout, joint.prints);
     Ok(())
 }
 
@@ -114,14 +114,14 @@ pub(super) struct Discs<'a> {
     pub(super) readings: Vec<&'a Reading>,
 }
 
-/// Solves views from their prints; twice where dots have to be corrected for perspective, because the correction asks for a camera.
-pub(super) fn settled(joint: Joint, discs: Option<&Discs<'_>>, outliers: Outliers) -> Result<Fit, FitError> {
+/// Moves views near the solution from their prints; twice where dots have to be corrected for perspective, because the correction asks for
+/// a camera.
+pub(super) fn approached(joint: Joint, discs: Option<&Discs<'_>>, outliers: Outliers) -> Result<Joint, FitError> {
     let seen: Vec<PixelPoint> = joint.prints.iter().map(|print| print.at).collect();
-    let fit = solve(joint, outliers)?;
-    let Some(Discs { pitch_m, readings }) = discs else { return Ok(fit) };
-    let values = fit.joint.values();
-    let cameras: Vec<Camera<f64>> = (0..readings.len()).map(|view| fit.joint.camera(&values, view)).collect();
-    let mut joint = fit.joint;
+    let mut joint = approach(joint, outliers)?;
+    let Some(Discs { pitch_m, readings }) = discs else { return Ok(joint) };
+    let values = joint.values();
+    let cameras: Vec<Camera<f64>> = (0..readings.len()).map(|view| joint.camera(&values, view)).collect();
     for (print, seen) in joint.prints.iter_mut().zip(&seen) {
         let (PrintPlace::Pitches(place), Some(reading)) = (print.place, readings.get(print.view)) else { continue };
         let radius = if is_mark(place) { reading.mark_radius_pitches } else { reading.dot_radius_pitches };
@@ -130,7 +130,7 @@ pub(super) fn settled(joint: Joint, discs: Option<&Discs<'_>>, outliers: Outlier
         }
     }
     joint.print_scale = 1.0;
-    solve(joint, outliers)
+    approach(joint, outliers)
 }
 
 /// What a reading says of the print in a view.

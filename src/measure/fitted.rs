@@ -36,6 +36,7 @@ pub(super) fn fitted<'a>(inputs: &'a Inputs<'a>, bench: &Bench) -> Result<Fitted
     let fit = solve(joint, Outliers::Rejected)?;
     let (ordered, fit) = zero_order::best_zero_order(&seen, bench, &cameras, ordered, &wavelengths_m, fit)?;
     let fit = strays::taken_in(&seen, bench, fit)?;
+    statement::regular_enough(&fit)?;
     notes.extend(statement::numbering_notes(&ordered));
     notes.extend(strain::strained_statements(bench, &fit));
     notes.extend(strain::strained_calibration(bench, &fit));

@@ -4,7 +4,7 @@ use super::{
     MeasureError, PhotoFile, Refusal,
     calibrate::{made_photos, posterior, taken_with},
     calibrated::{LENS, belongs, in_file},
-    cameras::{Discs, pixel_from_metres, print_observations, settled},
+    cameras::{Discs, approached, pixel_from_metres, print_observations},
     conclude::described_lens,
     look::{SeenTarget, look_at_target},
     view::pose_from_homography,
@@ -16,6 +16,7 @@ use crate::{
     fit::{
         Fit, Joint, Layout, Outliers, PrintObservation, PrintPlace, Shape,
         setup::{self, LensKnowledge, ViewStart},
+        solve,
     },
     frames::{PixelCovariance, PixelPoint, Side},
     quantity::{Quantity, format_length},
@@ -196,7 +197,8 @@ fn solved(planes: &[Plane], size_px: [usize; 2], discs: Option<&Discs<'_>>, outl
         spot_scale: 1.0,
         print_scale: 1.0,
     };
-    let fit = settled(joint, discs, outliers)?;
+    let joint = Joint { print_scale: 1.0, ..approached(joint, discs, outliers)? };
+    let fit = solve(joint, if outliers == Outliers::Kept { Outliers::Kept } else { Outliers::Rechecked })?;
     let values = fit.joint.values();
     let normal = |view| fit.joint.camera(&values, view).rotation().column(2).into_owned();
     let spread_rad = widest_angle((0..planes.len()).map(normal));
@@ -224,7 +226,7 @@ fn lens_posterior(fit: &Fit) -> Result<Posterior, CalibrationError> {
 
 /// View and distance from the model, px, of every dot that took part.
 fn distances_px(fit: &Fit) -> Vec<(usize, f64)> {
-    let used = fit.joint.prints.iter().zip(fit.joint.print_offsets_px()).filter(|(print, _)| print.weight > 0.5);
+    let used = fit.joint.prints.iter().zip(fit.joint.print_residuals_px()).filter(|(print, _)| print.weight > 0.5);
     used.filter_map(|(print, offset)| offset.map(|[x, y]| (print.view, x.hypot(y)))).collect()
 }
 
