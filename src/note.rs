@@ -95,6 +95,15 @@ pub enum Note {
         belongs_to: crate::bench::Medium,
     },
     // fit
+    /// The linear propagation of uncertainty is not good enough here.
+    NotLinear {
+        /// Which value.
+        what: String,
+        /// Interval of the linear result, with unit.
+        linear: String,
+        /// Interval by Monte Carlo, with unit.
+        trials: String,
+    },
     /// The photo and a statement of the bench file do not go together.
     StatementStrained {
         /// What was stated.
@@ -127,6 +136,7 @@ impl Note {
             Self::Ghosts { .. } => "ghosts",
             Self::ShapeUncertain { .. } => "line-or-plane-uncertain",
             Self::StatementStrained { .. } => "statement-strained",
+            Self::NotLinear { .. } => "not-linear",
             Self::StandardAirAssumed => "standard-air-assumed",
             Self::AirNotUsed => "air-not-used",
             Self::WavelengthInOtherMedium { .. } => "wavelength-in-other-medium",
@@ -187,6 +197,10 @@ impl std::fmt::Display for Note {
                 f,
                 "{what}: stated {stated}, but the photo wants {found}, {:.1} standard uncertainties away: measure it again, or state it with an honest uncertainty",
                 pull.abs()
+            ),
+            Self::NotLinear { what, linear, trials } => write!(
+                f,
+                "{what}: the interval {linear} takes the model for straight; with every input redrawn it is {trials}: quote the latter"
             ),
             Self::StandardAirAssumed => f.write_str(
                 "wavelength stated in vacuum, air not fully stated: 20(3) degC, 1013(30) hPa, 50(20) % humidity assumed for what is missing; state [air], above all the pressure at more than 300 m above the sea",

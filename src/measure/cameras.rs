@@ -9,8 +9,7 @@ use crate::{
     Error,
     bench::{Bench, FocalLength, Target, TargetKind},
     fit::{
-        Joint, Layout, Outliers, Parameter, PrintObservation, PrintPlace, Shape,
-        approach,
+        Joint, Layout, Outliers, Parameter, PrintObservation, PrintPlace, Shape, approach,
         setup::{self, LensKnowledge, ViewStart},
     },
     frames::{PixelCovariance, PixelPoint},

@@ -10,12 +10,14 @@ mod conclude;
 mod error;
 mod look;
 mod measurement;
+mod openness;
 mod orders;
 mod rough;
 mod scan;
 mod statement;
 mod strain;
 mod strays;
+mod trials;
 mod view;
 mod zero_order;
 
@@ -28,6 +30,7 @@ pub use look::{Inputs, PhotoFile};
 pub use measurement::{
     FitSummary, KindStatement, Measurement, OrderRow, ParameterRow, ParameterUnit, PhotoSummary, RejectedSpot, SampleResult, ZeroOrder,
 };
+pub use trials::{TrialOptions, Trials};
 
 use crate::{
     bench::Bench,
@@ -45,6 +48,14 @@ const GAUGE_THROW_M: f64 = 0.5;
 /// # Errors
 /// Whatever makes an honest result impossible; the message says what to do.
 pub fn measure(inputs: &Inputs<'_>, bench: &Bench) -> Result<Measurement, Refusal> {
+    measure_with(inputs, bench, None)
+}
+
+/// [`measure`], and the whole inference by Monte Carlo where `trials` asks for it.
+///
+/// # Errors
+/// As [`measure`].
+pub fn measure_with(inputs: &Inputs<'_>, bench: &Bench, trials: Option<&TrialOptions<'_>>) -> Result<Measurement, Refusal> {
     let seen = look::look(inputs, bench)?;
     let targets: Vec<&str> = inputs.targets.iter().map(|file| file.name).collect();
     let wavelengths_m = assemble::wavelengths_in_air(bench)?;
@@ -59,5 +70,9 @@ pub fn measure(inputs: &Inputs<'_>, bench: &Bench) -> Result<Measurement, Refusa
     statement::regular_enough(&fit)?;
     notes.extend(statement::numbering_notes(&ordered));
     notes.extend(strain::strained_statements(bench, &fit));
-    conclude::conclude(inputs, bench, &seen, &ordered, &fit, notes).map_err(Refusal::from)
+    let mut measurement = conclude::conclude(inputs, bench, &seen, &ordered, &fit, notes)?;
+    if let Some(options) = trials {
+        trials::add_trials(&mut measurement, bench, &fit, options)?;
+    }
+    Ok(measurement)
 }
