@@ -95,6 +95,15 @@ pub enum Note {
         belongs_to: crate::bench::Medium,
     },
     // fit
+    /// The linear propagation of uncertainty is not good enough here.
+    NotLinear {
+        /// Which value.
+        what: String,
+        /// Interval of the linear result, with unit.
+        linear: String,
+        /// Interval by Monte Carlo, with unit.
+        trials: String,
+    },
     /// The photo and a statement of the bench file do not go together.
     StatementStrained {
         /// What was stated.
@@ -149,6 +158,7 @@ impl Note {
             Self::CalibrationUnchecked => "calibration-unchecked",
             Self::CalibrationStrained { .. } => "calibration-strained",
             Self::CalibrationShifted { .. } => "calibration-shifted",
+            Self::NotLinear { .. } => "not-linear",
             Self::StandardAirAssumed => "standard-air-assumed",
             Self::AirNotUsed => "air-not-used",
             Self::WavelengthInOtherMedium { .. } => "wavelength-in-other-medium",
@@ -221,6 +231,10 @@ impl std::fmt::Display for Note {
             Self::CalibrationShifted { shift_px: [x, y] } => write!(
                 f,
                 "all spots lie beside the places that the calibration gives them, by ({x:.2}, {y:.2}) px on average: camera, screen or laser was moved since; calibrate again"
+            ),
+            Self::NotLinear { what, linear, trials } => write!(
+                f,
+                "{what}: the interval {linear} takes the model for straight; with every input redrawn it is {trials}: quote the latter"
             ),
             Self::StandardAirAssumed => f.write_str(
                 "wavelength stated in vacuum, air not fully stated: 20(3) degC, 1013(30) hPa, 50(20) % humidity assumed for what is missing; state [air], above all the pressure at more than 300 m above the sea",

@@ -107,6 +107,7 @@ fn plane() -> Measurement {
             axes_px: vec![at(2210.01, 1500.15), at(2009.1, 1299.03)],
         }],
         mode: Mode::Reflection,
+        trials: None,
         notes: vec![Note::ToneCurveAssumed],
     }
 }
@@ -132,6 +133,7 @@ fn line() -> Measurement {
         rejected: vec![],
         fit: FitSummary { chi2_reduced: 0.81, degrees_of_freedom: 4.0, rms_px: 0.05, birge_factor: 1.0, spots_used: 2, dots_used: 0 },
         mode: Mode::Transmission,
+        trials: None,
         notes: vec![],
         ..plane()
     }

@@ -45,6 +45,8 @@ const MEASURE_EXAMPLES: &str = "Examples:
   spotrule measure pattern.jpg
       with bench.toml beside the photo
   spotrule measure pattern.jpg --bench lab.toml --overlay seen.png --json result.json
+  spotrule measure pattern.jpg --trials 10000
+      with the uncertainty checked by Monte Carlo (JCGM 101)
   spotrule measure pattern.jpg --wavelength \"650(5) nm\" --throw \"1.200(2) m\" --target-photo target.jpg --target-pitch \"10.00(1) mm\"
 
 Quantities carry a unit and say how sure they are: 812.0(8) mm means a standard uncertainty of 0.8 mm;
@@ -65,6 +67,12 @@ pub(super) struct MeasureArguments {
     /// Write the photo with every spot and its order marked
     #[arg(long, value_name = "FILE.png")]
     pub(super) overlay: Option<PathBuf>,
+    /// Check the uncertainty by Monte Carlo: every input redrawn and the fit repeated, at most this often
+    #[arg(long, value_name = "N", value_parser = clap::value_parser!(u32).range(1000..=10_000_000))]
+    pub(super) trials: Option<u32>,
+    /// Seed of the Monte Carlo
+    #[arg(long, value_name = "N", default_value_t = 1, requires = "trials")]
+    pub(super) seed: u64,
     /// Print nothing but errors
     #[arg(long)]
     pub(super) quiet: bool,

@@ -4,11 +4,12 @@ use super::{
     Failure,
     arguments::{BenchFlags, MeasureArguments},
     files::{self, Existing},
+    progress,
 };
 use crate::{
     Error, Note,
     bench::{Bench, Overrides, Target, TargetKind},
-    measure::{Inputs, Measurement, PhotoFile, measure},
+    measure::{Inputs, Measurement, PhotoFile, TrialOptions, measure_with},
     photo, report,
 };
 use std::{
@@ -28,7 +29,7 @@ struct Loaded {
 }
 
 pub(super) fn run(arguments: &MeasureArguments) -> Result<ExitCode, Failure> {
-    let outcome = load(arguments).and_then(|loaded| Ok((measured(&loaded)?, loaded)));
+    let outcome = load(arguments).and_then(|loaded| Ok((measured(arguments, &loaded)?, loaded)));
     match outcome {
         Ok((measurement, loaded)) => {
             deliver(arguments, &measurement, &loaded)?;
@@ -121,10 +122,15 @@ pub(super) fn read_all<'a>(folder: &Path, names: impl Iterator<Item = &'a str>) 
     names.map(|name| Ok((name.to_owned(), files::read(&folder.join(name))?))).collect()
 }
 
-fn measured(loaded: &Loaded) -> Result<Measurement, Failure> {
+fn measured(arguments: &MeasureArguments, loaded: &Loaded) -> Result<Measurement, Failure> {
     let inputs = Inputs { patterns: photo_files(&loaded.patterns), targets: photo_files(&loaded.targets) };
-    let mut measurement =
-        measure(&inputs, &loaded.bench).map_err(|failed| Failure::Measurement { about: failed.file, error: failed.error })?;
+    let most = arguments.trials.map(|most| most as usize);
+    let bar = progress::bar(most.unwrap_or(0), arguments.quiet);
+    let progress = |made: usize| bar.set_position(made as u64);
+    let trials = most.map(|most| TrialOptions { most, seed: arguments.seed, progress: &progress });
+    let outcome = measure_with(&inputs, &loaded.bench, trials.as_ref());
+    bar.finish_and_clear();
+    let mut measurement = outcome.map_err(|failed| Failure::Measurement { about: failed.file, error: failed.error })?;
     measurement.notes.splice(0..0, loaded.notes.iter().cloned());
     Ok(measurement)
 }

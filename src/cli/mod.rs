@@ -10,6 +10,7 @@ mod failure;
 mod files;
 mod measure;
 mod new;
+mod progress;
 mod render;
 mod target;
 

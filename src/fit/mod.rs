@@ -11,6 +11,7 @@ mod parameter;
 pub mod setup;
 mod solve;
 mod source;
+mod trials;
 
 pub use cell::{Cell, Derived, cell};
 pub use correlated::{CorrelatedPrior, Marginal};
@@ -20,6 +21,7 @@ pub use observation::{Knowledge, PrintObservation, PrintPlace, SpotObservation};
 pub use parameter::{Entry, Layout, Parameter, Prior};
 pub use solve::{Fit, Outliers, approach, solve};
 pub use source::Source;
+pub use trials::trials;
 
 /// Why the joint fit gives no pitch.
 #[derive(Debug, thiserror::Error)]

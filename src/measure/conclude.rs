@@ -5,6 +5,7 @@ use super::{
     fitted::Fitted,
     look::Seen,
     measurement::{FitSummary, Measurement, OrderRow, ParameterRow, ParameterUnit, PhotoSummary, RejectedSpot, SampleResult, ZeroOrder},
+    openness,
     orders::Ordered,
     statement::kind_statement,
 };
@@ -38,6 +39,7 @@ pub(super) fn conclude(fitted: &Fitted<'_>, bench: &Bench) -> Result<Measurement
         fit: summary(fit),
         photos: photo_summaries(inputs, seen, fit),
         mode: bench.samples[wanted].mode,
+        trials: None,
         notes: notes.clone(),
     })
 }
@@ -59,8 +61,10 @@ fn sample_result(bench: &Bench, fit: &Fit, sample: usize) -> Result<SampleResult
     let found: Cell = cell(&fit.joint.layout, &fit.joint.shape, &values, sample).ok_or(MeasureError::FlatLattice)?;
     let value = |derived: &Derived| budget::value(fit, derived);
     let pitch_m: Vec<Value> = found.pitch_m.iter().map(value).collect();
-    if let Some(open) = pitch_m.iter().find(|pitch| !(pitch.u.is_finite() && pitch.u > 0.0 && pitch.u < 0.5 * pitch.value)) {
-        return Err(MeasureError::PitchNotFixed { pitch_m: open.value, u_m: open.u });
+    let is_open = |(_, pitch): &(&Derived, &Value)| !(pitch.u.is_finite() && pitch.u > 0.0 && pitch.u < 0.5 * pitch.value);
+    if let Some((derived, open)) = found.pitch_m.iter().zip(&pitch_m).find(is_open) {
+        let advice = openness::in_words(bench, fit, derived);
+        return Err(MeasureError::PitchNotFixed { pitch_m: open.value, u_m: open.u, advice });
     }
     Ok(SampleResult {
         name: bench.samples[sample].name.clone(),

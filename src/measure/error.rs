@@ -62,7 +62,7 @@ pub enum MeasureError {
     },
     /// Nothing in photo and bench file fixes the pitch.
     #[error(
-        "photo and bench file do not fix the pitch (best {:.4} um, standard uncertainty {:.4} um): give the throw and a target or scale, or photograph wider orders",
+        "photo and bench file do not fix the pitch (best {:.4} um, standard uncertainty {:.4} um): {advice}",
         pitch_m * 1e6, u_m * 1e6
     )]
     PitchNotFixed {
@@ -70,6 +70,8 @@ pub enum MeasureError {
         pitch_m: f64,
         /// Standard uncertainty, m.
         u_m: f64,
+        /// What it is tied to, and what to measure.
+        advice: String,
     },
     /// The stated wavelength is not the colour of the spots.
     #[error(
@@ -85,6 +87,14 @@ pub enum MeasureError {
         seen: &'static str,
         /// Shares of red, green, blue.
         shares: [f64; 3],
+    },
+    /// Hardly any trial of the Monte Carlo gave a lattice.
+    #[error(
+        "the Monte Carlo of {most} trials gave no distribution: the fit fails on most redrawn inputs; state throw, tilt and target more closely"
+    )]
+    TrialsFailed {
+        /// Trials asked for.
+        most: usize,
     },
     /// The air stated in the bench file is outside the formula.
     #[error("the index of air is not defined for {temperature_celsius:.1} degC, {:.0} hPa, {:.0} % humidity; check [air]", pressure_pa / 100.0, humidity * 100.0)]
@@ -111,6 +121,7 @@ impl MeasureError {
             Self::Irregular { .. } => "irregular",
             Self::PitchNotFixed { .. } => "pitch-not-fixed",
             Self::ColourMismatch { .. } => "colour-mismatch",
+            Self::TrialsFailed { .. } => "trials-failed",
             Self::AirOutOfRange { .. } => "air-out-of-range",
         }
     }

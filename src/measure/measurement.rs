@@ -1,5 +1,6 @@
 //! The result as plain data: what the reports format and the record keeps. SI units throughout.
 
+use super::trials::Trials;
 use crate::{
     Note,
     bench::Mode,
@@ -30,6 +31,8 @@ pub struct Measurement {
     pub photos: Vec<PhotoSummary>,
     /// Transmission or reflection.
     pub mode: Mode,
+    /// The same by Monte Carlo, where it was asked for.
+    pub trials: Option<Trials>,
     /// What a reader of the result must know.
     pub notes: Vec<Note>,
 }

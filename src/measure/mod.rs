@@ -14,12 +14,14 @@ mod fitted;
 mod lens;
 mod look;
 mod measurement;
+mod openness;
 mod orders;
 mod rough;
 mod scan;
 mod statement;
 mod strain;
 mod strays;
+mod trials;
 mod view;
 mod zero_order;
 mod zhang;
@@ -34,6 +36,7 @@ pub use look::{Inputs, PhotoFile};
 pub use measurement::{
     FitSummary, KindStatement, Measurement, OrderRow, ParameterRow, ParameterUnit, PhotoSummary, RejectedSpot, SampleResult, ZeroOrder,
 };
+pub use trials::{TrialOptions, Trials};
 
 use crate::{bench::Bench, calibration::Calibration};
 
@@ -48,7 +51,20 @@ const GAUGE_THROW_M: f64 = 0.5;
 /// # Errors
 /// Whatever makes an honest result impossible; the message says what to do.
 pub fn measure(inputs: &Inputs<'_>, bench: &Bench) -> Result<Measurement, Refusal> {
-    conclude::conclude(&fitted::fitted(inputs, bench)?, bench).map_err(Refusal::from)
+    measure_with(inputs, bench, None)
+}
+
+/// [`measure`], and the whole inference by Monte Carlo where `trials` asks for it.
+///
+/// # Errors
+/// As [`measure`].
+pub fn measure_with(inputs: &Inputs<'_>, bench: &Bench, trials: Option<&TrialOptions<'_>>) -> Result<Measurement, Refusal> {
+    let fitted = fitted::fitted(inputs, bench)?;
+    let mut measurement = conclude::conclude(&fitted, bench)?;
+    if let Some(options) = trials {
+        trials::add_trials(&mut measurement, bench, &fitted.fit, options)?;
+    }
+    Ok(measurement)
 }
 
 /// Measures what can be measured, and keeps the posterior of everything that stays when the sample is exchanged.

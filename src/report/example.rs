@@ -31,6 +31,7 @@ pub(super) fn plane() -> Measurement {
         fit: FitSummary { chi2_reduced: 1.32, degrees_of_freedom: 31.0, rms_px: 0.071, birge_factor: 1.149, spots_used: 17, dots_used: 96 },
         photos: vec![photo()],
         mode: Mode::Transmission,
+        trials: None,
         notes: vec![Note::ToneCurveAssumed],
     }
 }
@@ -46,6 +47,7 @@ pub(super) fn line() -> Measurement {
         fit: FitSummary { chi2_reduced: 0.9, degrees_of_freedom: 8.0, rms_px: 0.05, birge_factor: 1.0, spots_used: 7, dots_used: 0 },
         notes: vec![],
         mode: Mode::Reflection,
+        trials: None,
         ..plane()
     }
 }

@@ -6,6 +6,7 @@ use serde::Serialize;
 
 use super::{
     sample_json::{SampleJson, measured, number, sample_json},
+    trials::{TrialsJson, trials_json},
     units,
     words::{NO_CERTIFICATE, mode_name},
 };
@@ -56,6 +57,7 @@ pub fn json(measurement: &Measurement, program: &Program) -> String {
         rejected: measurement.rejected.iter().filter_map(rejected_json).collect(),
         parameters: measurement.parameters.iter().filter_map(parameter_json).collect(),
         fit: fit_json(&measurement.fit),
+        monte_carlo: trials_json(measurement),
         photos: measurement.photos.iter().map(photo_json).collect(),
         warnings: measurement.notes.iter().map(warning_json).collect(),
         remark: NO_CERTIFICATE,
@@ -86,6 +88,8 @@ struct Measured<'a> {
     rejected: Vec<RejectedJson<'a>>,
     parameters: Vec<ParameterJson<'a>>,
     fit: FitJson,
+    #[serde(skip_serializing_if = "Option::is_none")]
+    monte_carlo: Option<TrialsJson>,
     photos: Vec<PhotoJson<'a>>,
     warnings: Vec<Remark<'static>>,
     remark: &'static str,

@@ -14,6 +14,7 @@ mod overlay;
 mod rounding;
 mod sample_json;
 mod text;
+mod trials;
 mod units;
 mod words;
 

@@ -4,6 +4,7 @@ use super::{
     budget_table::budget_table,
     columns::{Align, WIDTH, columns, paragraph, shortened},
     rounding::{concise, percent, rounded, significant},
+    trials::trials_text,
     units::{self, Unit},
     words::{NO_CERTIFICATE, kind_name, mode_name, numbered, pattern_name, reason_counts},
 };
@@ -24,6 +25,7 @@ pub fn text(measurement: &Measurement) -> String {
         lattice_kind(&measurement.sample),
         evidence(measurement),
         budget(&measurement.sample),
+        trials_text(measurement),
         moved_parameters(&measurement.parameters),
         other_samples(&measurement.other_samples),
         notes(measurement),
