@@ -11,6 +11,7 @@ use super::{
 use crate::{frames::PixelCovariance, math::Problem, optics::Camera};
 use nalgebra::{DMatrix, DVector};
 use num_dual::DualSVec64;
+use rayon::prelude::*;
 
 /// One weighted least-squares problem over the unknowns of a [`Layout`].
 #[derive(Debug, Clone)]
@@ -32,6 +33,9 @@ pub struct Joint {
     /// The same for dots and marks.
     pub print_scale: f64,
 }
+
+/// Observations that one task predicts; fewer are not worth the handing over.
+const TASK: usize = 32;
 
 /// Rows as they are filled.
 struct Rows {
@@ -183,14 +187,17 @@ impl Joint {
             let places = model::spot_places(&self.layout, &self.shape, photo);
             let bench = Bench::new(&model::seeded(&self.layout, values, &places), &self.shape, photo);
             let project = bench.camera.print_projector();
-            for (i, spot) in self.spots.iter().enumerate().filter(|(_, spot)| spot.photo == photo) {
+            let of_photo: Vec<(usize, &SpotObservation)> = self.spots.iter().enumerate().filter(|(_, spot)| spot.photo == photo).collect();
+            let predicted = of_photo.par_iter().with_min_len(TASK).map(|(_, spot)| bench.pixel(&project, spot.order));
+            let predicted: Vec<_> = predicted.collect();
+            for ((i, spot), predicted) in of_photo.into_iter().zip(predicted) {
                 rows.next = 2 * i;
                 let seen = Seen {
                     at: [spot.at.x_px, spot.at.y_px],
                     white: whitening(spot.covariance)?,
                     factor: spot.weight.sqrt() / self.spot_scale,
                 };
-                rows.whitened_pixel(self, &places, seen, bench.pixel(&project, spot.order)?);
+                rows.whitened_pixel(self, &places, seen, predicted?);
             }
         }
         rows.next = 2 * self.spots.len();
@@ -214,15 +221,18 @@ impl Joint {
             let v = model::seeded(&self.layout, values, &places);
             let camera = model::camera(&v[3..], self.shape.references[view]);
             let project = camera.print_projector();
-            for (i, print) in self.prints.iter().enumerate().filter(|(_, print)| print.view == view) {
-                let Some(place) = place_of::<PRINT_LOCALS>(print.place, set, &v) else { continue };
+            let in_view = self.prints.iter().enumerate().filter(|(_, print)| print.view == view);
+            let of_set: Vec<_> =
+                in_view.filter_map(|(i, print)| place_of::<PRINT_LOCALS>(print.place, set, &v).map(|place| (i, print, place))).collect();
+            let predicted: Vec<_> = of_set.par_iter().with_min_len(TASK).map(|(_, _, place)| project(*place)).collect();
+            for ((i, print, _), predicted) in of_set.into_iter().zip(predicted) {
                 rows.next = first + 2 * i;
                 let seen = Seen {
                     at: [print.at.x_px, print.at.y_px],
                     white: whitening(print.covariance)?,
                     factor: print.weight.sqrt() / self.print_scale,
                 };
-                rows.whitened_pixel(self, &places, seen, project(place)?);
+                rows.whitened_pixel(self, &places, seen, predicted?);
             }
         }
         Some(())
