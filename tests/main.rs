@@ -24,6 +24,10 @@ mod scenes;
 mod spots_on_known_photos;
 // a planted truth comes back, as often inside its uncertainty as stated
 mod truth;
+// the log under killed writers, full disks and closed folders
+mod log;
+// the published schemas against the types and against what is written
+mod schema;
 // the program as a user and a script meet it
 mod cli;
 // what must not matter: turned photos, units of length

@@ -6,8 +6,11 @@ mod arguments;
 mod completions;
 mod failure;
 mod files;
+mod log;
 mod measure;
 mod new;
+mod provenance;
+mod record;
 mod render;
 mod target;
 
@@ -29,6 +32,7 @@ pub fn run() -> ExitCode {
         Command::Measure(arguments) => measure::run(&arguments),
         Command::New(arguments) => new::run(&arguments),
         Command::Target(arguments) => target::run(&arguments),
+        Command::Log(arguments) => log::run(&arguments),
         Command::Render(arguments) => render::run(&arguments),
         Command::Completions(arguments) => completions::shell(&arguments),
         Command::Manual(arguments) => completions::manual(&arguments),

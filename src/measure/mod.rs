@@ -26,7 +26,7 @@ pub use crate::{
 pub use error::{MeasureError, Refusal};
 pub use look::{Inputs, PhotoFile};
 pub use measurement::{
-    FitSummary, KindStatement, Measurement, OrderRow, ParameterRow, ParameterUnit, PhotoSummary, RejectedSpot, SampleResult, ZeroOrder,
+    FitSummary, KindStatement, Measurement, OrderRow, ParameterRow, ParameterUnit, PhotoSummary, ReciprocalView, RejectedSpot, SampleResult, ZeroOrder,
 };
 
 use crate::{
