@@ -21,10 +21,12 @@ pub(super) fn evidence(measurement: &Measurement, overlay: Option<Picture<'_>>) 
             @if let Some(picture) = overlay { (overlay_figure(measurement, picture)) }
         }
         section {
-            h2 { "The pattern in reciprocal space, and what is left over" }
-            div class="pair" {
-                (figure(chart::reciprocal(measurement)))
-                (figure(chart::residuals(measurement)))
+            div class="keep" {
+                h2 { "The pattern in reciprocal space, and what is left over" }
+                div class="pair" {
+                    (figure(chart::reciprocal(measurement)))
+                    (figure(chart::residuals(measurement)))
+                }
             }
             div class="plain" {
                 p {
@@ -45,7 +47,7 @@ fn spots(measurement: &Measurement) -> Markup {
         p {
             (used) " of " (measurement.orders.len()) " spots with an order were used"
             @if clipped > 0 { ", " (clipped) " of them clipped (brighter than the camera could record)" }
-            "; " (measurement.rejected.len()) " spots were rejected. "
+            "; " (counted(measurement.rejected.len(), "rejected spot")) ". "
             @if measurement.zero_order.seen { "The zero order was seen. " } @else { "The zero order was not seen; its place comes from the fit. " }
             @if fit.dots_used > 0 { (fit.dots_used) " dots or marks of the target were used. " }
             "The spots used lie " (significant(fit.rms_px, 2)) " px (root mean square) from where the model puts them; reduced chi-square "
@@ -62,12 +64,17 @@ fn spots(measurement: &Measurement) -> Markup {
     }
 }
 
+/// "1 spot", "2 spots".
+fn counted(count: usize, thing: &str) -> String {
+    format!("{count} {thing}{}", if count == 1 { "" } else { "s" })
+}
+
 fn overlay_figure(measurement: &Measurement, picture: Picture<'_>) -> Markup {
     let file = measurement.photos.first().map_or("the photo", |photo| photo.file.as_str());
     let words = format!(
-        "The photo {file}, dimmed, with {} spots marked by their order and {} rejected spots; its legend stands below the picture.",
-        measurement.orders.iter().filter(|order| order.photo == 0).count(),
-        measurement.rejected.iter().filter(|spot| spot.photo == 0).count()
+        "The photo {file}, dimmed, with {} marked by their order and {}; its legend stands below the picture.",
+        counted(measurement.orders.iter().filter(|order| order.photo == 0).count(), "spot"),
+        counted(measurement.rejected.iter().filter(|spot| spot.photo == 0).count(), "rejected spot")
     );
     html! {
         figure role="img" aria-label=(words) {

@@ -78,7 +78,7 @@ pub(super) fn repeat(context: &Context) -> Markup {
             section {
                 h2 { "To repeat the measurement" }
                 p {
-                    "The same program with the same files and flags gives the same figures: no step draws random numbers. Whether a file is the same, its SHA-256 tells ("
+                    "The same program with the same files and flags gives the same figures. Whether a file is the same, its SHA-256 tells ("
                     code { "sha256sum FILE" } ")."
                 }
                 div class="wide" {

@@ -61,16 +61,16 @@ fn verdict_box(verdict: &Verdict) -> Markup {
             p { b { (sign) " " (word) } }
             p { "Limits: " (verdict.limits) }
             div class="wide" {
-                table {
+                table class="stack" {
                     thead { tr { th { "" } th { "allowed" } th { "measured" } th { "probability that it conforms" } th { "verdict" } } }
                     tbody {
                         @for judgement in &verdict.judgements {
                             tr {
                                 th { (judgement.characteristic.name(pitches(verdict))) }
-                                td { (allowed(judgement.tolerance, unit_of(judgement))) }
-                                td { (measured(judgement)) }
-                                td { (probability(judgement.conformance_probability)) }
-                                td { (judgement.outcome.name()) }
+                                td data-label="allowed" { (allowed(judgement.tolerance, unit_of(judgement))) }
+                                td data-label="measured" { (measured(judgement)) }
+                                td data-label="conforms with a probability of" { (probability(judgement.conformance_probability)) }
+                                td data-label="verdict" { (judgement.outcome.name()) }
                             }
                         }
                     }
@@ -91,7 +91,7 @@ fn table(measurement: &Measurement) -> Markup {
     html! {
         h2 { "Result" }
         div class="wide" {
-            table {
+            table class="stack" {
                 thead {
                     tr { th { "quantity" } th class="n" { "value" } th class="n" { "U (about 95 %)" } th class="n" { "k" } th class="n" { "u" } th class="n" { "u relative" } }
                 }
@@ -110,7 +110,7 @@ fn table(measurement: &Measurement) -> Markup {
             }
         }
         p class="small" { (orientation_words(measurement)) }
-        @if let Some(kind) = &sample.kind { p class="small" { "Lattice: " (kind_name(kind.kind)) ". " (kind.sentence) } }
+        @if let Some(kind) = &sample.kind { @if !kind.sentence.is_empty() { p class="small" { "Lattice: " (kind.sentence) } } }
         div class="plain" {
             p {
                 "In plain words: "
@@ -132,12 +132,12 @@ fn row(name: &str, si: Value, unit: Unit, is_relative: bool) -> Markup {
     html! {
         tr {
             th { (name) }
-            td class="n" { (shown.value) (unit.suffix()) }
+            td class="n" data-label="value" { (shown.value) (unit.suffix()) }
             @if value.u > 0.0 {
-                td class="n" { (shown.u) (unit.suffix()) }
-                td class="n" { (format!("{:.2}", value.coverage_factor)) }
-                td class="n" { (rounded(value.value, value.u).u) (unit.suffix()) }
-                td class="n" { @if is_relative { (percent(value.u / value.value)) } }
+                td class="n" data-label="U" { (shown.u) (unit.suffix()) }
+                td class="n" data-label="k" { (format!("{:.2}", value.coverage_factor)) }
+                td class="n" data-label="u" { (rounded(value.value, value.u).u) (unit.suffix()) }
+                td class="n" data-label="u relative" { @if is_relative { (percent(value.u / value.value)) } }
             } @else {
                 td class="n" { "exact" } td {} td {} td {}
             }

@@ -15,7 +15,7 @@ pub(super) fn budget(sample: &SampleResult) -> Markup {
                 h2 { "Uncertainty budget" }
                 (figure(chart::shares(sample)))
                 div class="wide" {
-                    table {
+                    table class="stack" {
                         thead {
                             tr {
                                 th { "source" }
@@ -50,10 +50,10 @@ fn budget_row(sample: &SampleResult, line: &BudgetLine, pitches: usize) -> Marku
         tr {
             th { (line.source) }
             @for pitch in 0..pitches {
-                td class="n" { (chart::percent(line.share.get(pitch).copied().unwrap_or(0.0))) }
-                td class="n" { (rounded(0.0, line.u_pitch_m.get(pitch).copied().unwrap_or(0.0) * unit.per_si).u) (unit.suffix()) }
+                td class="n" data-label={ "share" (number(pitch, pitches)) } { (chart::percent(line.share.get(pitch).copied().unwrap_or(0.0))) }
+                td class="n" data-label={ "u" (number(pitch, pitches)) " alone" } { (rounded(0.0, line.u_pitch_m.get(pitch).copied().unwrap_or(0.0) * unit.per_si).u) (unit.suffix()) }
             }
-            @if sample.lattice_angle_rad.is_some() { td class="n" { (chart::percent(line.angle_share.unwrap_or(0.0))) } }
+            @if sample.lattice_angle_rad.is_some() { td class="n" data-label="share, angle" { (chart::percent(line.angle_share.unwrap_or(0.0))) } }
         }
     }
 }
@@ -64,7 +64,7 @@ pub(super) fn parameters(measurement: &Measurement) -> Markup {
             section {
                 h2 { "What was known before, and what is known now" }
                 div class="wide" {
-                    table {
+                    table class="stack" {
                         thead { tr { th { "parameter" } th class="n" { "before" } th class="n" { "after" } th class="n" { "u after / before" } th class="n" { "moved by" } } }
                         tbody { @for parameter in &measurement.parameters { (parameter_row(parameter)) } }
                     }
@@ -89,10 +89,10 @@ fn parameter_row(parameter: &ParameterRow) -> Markup {
     html! {
         tr {
             th { (parameter.name) }
-            td class="n" { @match prior { Some((value, u)) => (shown(value, u)), None => "not known" } }
-            td class="n" { (shown(parameter.value, parameter.u)) }
-            td class="n" { @if let Some((_, u)) = compared { (significant(parameter.u / u, 2)) } }
-            td class="n" { @if let Some((value, u)) = compared { (significant((parameter.value - value) / u, 2)) " u" } }
+            td class="n" data-label="before" { @match prior { Some((value, u)) => (shown(value, u)), None => "not known" } }
+            td class="n" data-label="after" { (shown(parameter.value, parameter.u)) }
+            td class="n" data-label="u after / before" { @if let Some((_, u)) = compared { (significant(parameter.u / u, 2)) } }
+            td class="n" data-label="moved by" { @if let Some((value, u)) = compared { (format!("{:.2} u", (parameter.value - value) / u + 0.0)) } }
         }
     }
 }

@@ -110,8 +110,16 @@ fn draw_orders(chart: &mut Chart2d<'_, '_>, view: &ReciprocalView, orders: &[&Or
         let Some(tip) = place(view, i32::from(vector == 0), i32::from(vector == 1)) else { continue };
         let (x, y) = (tip[0], tip[1]);
         chart.draw_series([PathElement::new(vec![(0.0, 0.0), (x, y)], INK.stroke_width(2))])?;
-        let style = ("sans-serif", LETTERS).into_font().color(&SOFT).pos(Pos::new(HPos::Left, VPos::Bottom));
-        chart.draw_series([EmptyElement::at((x, y)) + Text::new(name, (6, -6), style)])?;
+        // Beyond the tip, on the side that it points to.
+        let pos = match (x < 0.0, y < 0.0) {
+            (true, true) => Pos::new(HPos::Right, VPos::Top),
+            (true, false) => Pos::new(HPos::Right, VPos::Bottom),
+            (false, true) => Pos::new(HPos::Left, VPos::Top),
+            (false, false) => Pos::new(HPos::Left, VPos::Bottom),
+        };
+        let away = [if x < 0.0 { -6 } else { 6 }, if y < 0.0 { 6 } else { -6 }];
+        let style = ("sans-serif", LETTERS).into_font().color(&SOFT).pos(pos);
+        chart.draw_series([EmptyElement::at((x, y)) + Text::new(name, (away[0], away[1]), style)])?;
     }
     Ok(())
 }
