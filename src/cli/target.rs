@@ -5,10 +5,7 @@ use super::{
     arguments::{PaperFormat, TargetArguments},
     files::{self, Existing},
 };
-use crate::{
-    Error,
-    target::{Paper, Sheet, pdf, svg},
-};
+use crate::target::{Paper, Sheet, pdf, svg};
 use std::process::ExitCode;
 
 pub(super) fn run(arguments: &TargetArguments) -> Result<ExitCode, Failure> {
@@ -17,8 +14,7 @@ pub(super) fn run(arguments: &TargetArguments) -> Result<ExitCode, Failure> {
         PaperFormat::A3 => Paper::A3,
         PaperFormat::Letter => Paper::Letter,
     };
-    let refused = |error| Failure::Measurement { about: None, error: Box::new(Error::Target(error)) };
-    let sheet = Sheet::new(paper, arguments.pitch * 1e-3).map_err(refused)?;
+    let sheet = Sheet::new(paper, arguments.pitch * 1e-3).map_err(|error| Failure::Usage(error.to_string()))?;
     let ending = arguments.out.extension().map(|ending| ending.to_string_lossy().to_lowercase());
     let bytes = match ending.as_deref() {
         Some("svg") => svg(&sheet).into_bytes(),

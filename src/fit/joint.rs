@@ -7,7 +7,7 @@ use super::{
     parameter::{Layout, Parameter, Prior},
     source::Source,
 };
-use crate::{math::Problem, optics::Camera};
+use crate::{frames::PixelCovariance, math::Problem, optics::Camera};
 use nalgebra::{DMatrix, DVector};
 use num_dual::DualSVec64;
 
@@ -102,12 +102,15 @@ impl Joint {
     /// Seen minus predicted, px, of every spot.
     #[must_use]
     pub fn spot_residuals_px(&self) -> Vec<Option<[f64; 2]>> {
-        let values = self.values();
+        self.spot_residuals_at(&self.values())
+    }
+
+    fn spot_residuals_at(&self, values: &[f64]) -> Vec<Option<[f64; 2]>> {
         let mut residuals = vec![None; self.spots.len()];
         for photo in 0..self.shape.photos.len() {
             let of_photo: Vec<usize> = (0..self.spots.len()).filter(|&i| self.spots[i].photo == photo).collect();
             let orders: Vec<(i32, i32)> = of_photo.iter().map(|&i| self.spots[i].order).collect();
-            for (&i, predicted) in of_photo.iter().zip(self.predict(&values, photo, &orders)) {
+            for (&i, predicted) in of_photo.iter().zip(self.predict(values, photo, &orders)) {
                 residuals[i] = predicted.map(|[x, y]| [self.spots[i].at.x_px - x, self.spots[i].at.y_px - y]);
             }
         }
@@ -117,21 +120,27 @@ impl Joint {
     /// The same as [`Self::spot_lengths`] for dots, marks and scale ends.
     #[must_use]
     pub fn print_lengths(&self) -> Vec<Option<f64>> {
-        let values = self.values();
-        let pitch_m = self.layout.value(Parameter::TargetPitch).unwrap_or(1.0);
-        let cameras: Vec<Camera<f64>> = (0..self.shape.references.len()).map(|view| self.camera(&values, view)).collect();
-        let length = |print: &PrintObservation| {
+        let residuals = self.print_residuals_at(&self.values());
+        self.prints.iter().zip(residuals).map(|(print, residual)| whitened_length(print.covariance, residual?)).collect()
+    }
+
+    /// Seen minus predicted, px, of every dot, mark and scale end.
+    fn print_residuals_at(&self, values: &[f64]) -> Vec<Option<[f64; 2]>> {
+        let value = |parameter| self.layout.place(parameter).map(|place| values[place]);
+        let pitch_m = value(Parameter::TargetPitch).unwrap_or(1.0);
+        let end_m = |end, axis| value(Parameter::ScaleEnd { end, axis });
+        let cameras: Vec<Camera<f64>> = (0..self.shape.references.len()).map(|view| self.camera(values, view)).collect();
+        let project: Vec<_> = cameras.iter().map(Camera::print_projector).collect();
+        let residual = |print: &PrintObservation| {
             let place = match print.place {
                 PrintPlace::Pitches([i, j]) => [i * pitch_m, j * pitch_m],
                 PrintPlace::Metres(metres) => metres,
-                PrintPlace::ScaleEnd(end) => {
-                    [self.layout.value(Parameter::ScaleEnd { end, axis: 0 })?, self.layout.value(Parameter::ScaleEnd { end, axis: 1 })?]
-                }
+                PrintPlace::ScaleEnd(end) => [end_m(end, 0)?, end_m(end, 1)?],
             };
-            let [x, y] = cameras[print.view].print_projector()(place)?;
-            whitened_length(print.covariance, [print.at.x_px - x, print.at.y_px - y])
+            let [x, y] = project[print.view](place)?;
+            Some([print.at.x_px - x, print.at.y_px - y])
         };
-        self.prints.iter().map(length).collect()
+        self.prints.iter().map(residual).collect()
     }
 
     /// Current values of all entries.
@@ -235,6 +244,12 @@ impl Joint {
     }
 }
 
+/// A difference in px as two whitened residuals.
+fn whitened(covariance: PixelCovariance, factor: f64, difference: [f64; 2]) -> Option<[f64; 2]> {
+    let white = whitening(covariance)?;
+    Some([factor * white[0] * difference[0], factor * (white[1] * difference[0] + white[2] * difference[1])])
+}
+
 /// The place on the print as dual numbers, if the observation belongs to this set of parameters.
 fn place_of<const N: usize>(place: PrintPlace, set: usize, v: &[DualSVec64<N>; N]) -> Option<[DualSVec64<N>; 2]> {
     match (place, set) {
@@ -246,6 +261,23 @@ fn place_of<const N: usize>(place: PrintPlace, set: usize, v: &[DualSVec64<N>; N
 }
 
 impl Problem for Joint {
+    /// Without derivatives: a trial step costs a tenth of [`Self::residuals_and_jacobian`].
+    fn residuals(&self, step: &DVector<f64>) -> Option<DVector<f64>> {
+        let values = self.layout.values_at(step);
+        let mut rows = Vec::new();
+        for (spot, residual) in self.spots.iter().zip(self.spot_residuals_at(&values)) {
+            rows.extend(whitened(spot.covariance, spot.weight.sqrt() / self.spot_scale, residual?)?);
+        }
+        for (print, residual) in self.prints.iter().zip(self.print_residuals_at(&values)) {
+            rows.extend(whitened(print.covariance, print.weight.sqrt() / self.print_scale, residual?)?);
+        }
+        for known in &self.knowledge {
+            rows.push(knowledge_residual(&self.layout, &self.shape, &values, known)?.0);
+        }
+        rows.extend(self.prior_rows().map(|(place, mean, u)| (values[place] - mean) / u));
+        rows.iter().all(|r| r.is_finite()).then(|| DVector::from_vec(rows))
+    }
+
     fn residuals_and_jacobian(&self, step: &DVector<f64>) -> Option<(DVector<f64>, DMatrix<f64>)> {
         let values = self.layout.values_at(step);
         let count = 2 * self.spots.len() + 2 * self.prints.len() + self.knowledge.len() + self.prior_rows().count();

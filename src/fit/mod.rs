@@ -16,7 +16,7 @@ pub use joint::Joint;
 pub use model::{PhotoShape, Shape};
 pub use observation::{Knowledge, PrintObservation, PrintPlace, SpotObservation};
 pub use parameter::{Entry, Layout, Parameter, Prior};
-pub use solve::{Fit, Outliers, solve};
+pub use solve::{Fit, Outliers, approach, solve};
 pub use source::Source;
 
 /// Why the joint fit gives no pitch.

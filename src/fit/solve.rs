@@ -43,6 +43,8 @@ pub struct Fit {
 pub enum Outliers {
     /// Robust passes, then rejection.
     Rejected,
+    /// Rejection alone, from a start that is nearly the solution.
+    Rechecked,
     /// All observations are taken as they are.
     Kept,
 }
@@ -52,22 +54,42 @@ pub enum Outliers {
 /// # Errors
 /// [`FitError`] when the solver does not converge or too few observations are left.
 pub fn solve(mut joint: Joint, outliers: Outliers) -> Result<Fit, FitError> {
+    let evaluations = sort_out(&mut joint, outliers)?;
+    scaled_by_birge(joint, evaluations)
+}
+
+/// Moves the layout near the solution and settles what belongs to the model, without the digits and the uncertainty of [`solve`].
+///
+/// # Errors
+/// As [`solve`].
+pub fn approach(mut joint: Joint, outliers: Outliers) -> Result<Joint, FitError> {
+    let mut evaluations = sort_out(&mut joint, outliers)?;
+    if outliers == Outliers::Kept {
+        solve_once(&mut joint, &rough(), &mut evaluations)?;
+    }
+    Ok(joint)
+}
+
+/// Robust passes, then rejection; gives the evaluations used.
+fn sort_out(joint: &mut Joint, outliers: Outliers) -> Result<usize, FitError> {
     let mut evaluations = 0;
     if outliers == Outliers::Rejected {
         for _ in 0..2 {
-            calm(&mut joint);
-            solve_once(&mut joint, &rough(), &mut evaluations)?;
-            reweigh(&mut joint, |length, scale| (HUBER_AT * scale / length.max(1e-12)).min(1.0));
+            calm(joint);
+            solve_once(joint, &rough(), &mut evaluations)?;
+            reweigh(joint, |length, scale| (HUBER_AT * scale / length.max(1e-12)).min(1.0));
         }
+    }
+    if outliers != Outliers::Kept {
         for _ in 0..4 {
-            calm(&mut joint);
-            solve_once(&mut joint, &rough(), &mut evaluations)?;
-            if !reweigh(&mut joint, |length, scale| if length > REJECT_AT * scale.max(1.0) { 0.0 } else { 1.0 }) {
+            calm(joint);
+            solve_once(joint, &rough(), &mut evaluations)?;
+            if !reweigh(joint, |length, scale| if length > REJECT_AT * scale.max(1.0) { 0.0 } else { 1.0 }) {
                 break;
             }
         }
     }
-    scaled_by_birge(joint, evaluations)
+    Ok(evaluations)
 }
 
 /// Plain least squares, repeated until the Birge factors that it finds are those that it was weighed with.
@@ -76,16 +98,19 @@ pub fn solve(mut joint: Joint, outliers: Outliers) -> Result<Fit, FitError> {
 fn scaled_by_birge(mut joint: Joint, mut evaluations: usize) -> Result<Fit, FitError> {
     let mut freedom = Freedoms::default();
     for _ in 0..BIRGE_PASSES {
-        let solution = solve_once(&mut joint, &math::Options { objective_tolerance: 1e-9, ..math::Options::default() }, &mut evaluations)?;
+        let solution = solve_once(&mut joint, &fine(), &mut evaluations)?;
         freedom = freedoms(&joint, &solution);
         let next = [freedom.spots.birge(), freedom.prints.birge()];
+        if next == [joint.spot_scale, joint.print_scale] {
+            return Ok(finished(joint, &solution, &freedom, evaluations));
+        }
         let settled = (next[0] / joint.spot_scale).ln().abs() < BIRGE_SETTLED && (next[1] / joint.print_scale).ln().abs() < BIRGE_SETTLED;
         [joint.spot_scale, joint.print_scale] = next;
         if settled {
             break;
         }
     }
-    let solution = solve_once(&mut joint, &math::Options { objective_tolerance: 1e-12, ..math::Options::default() }, &mut evaluations)?;
+    let solution = solve_once(&mut joint, &fine(), &mut evaluations)?;
     Ok(finished(joint, &solution, &freedom, evaluations))
 }
 
@@ -103,6 +128,11 @@ fn calm(joint: &mut Joint) {
 /// Passes whose result is only a start need no digits.
 fn rough() -> math::Options {
     math::Options { objective_tolerance: 1e-5, step_tolerance: 1e-6, polish_fraction: 0.5, ..math::Options::default() }
+}
+
+/// The solver's last steps are full Gauss-Newton steps, which bring the digits that the trust region leaves: to a millionth of the noise.
+fn fine() -> math::Options {
+    math::Options { objective_tolerance: 1e-9, polish_fraction: 1e-6, ..math::Options::default() }
 }
 
 fn solve_once(joint: &mut Joint, options: &math::Options, evaluations: &mut usize) -> Result<math::Solution, FitError> {

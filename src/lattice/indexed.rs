@@ -70,7 +70,7 @@ pub enum Reason {
 }
 
 /// What speaks for the lattice chosen.
-#[derive(Debug, Clone, PartialEq)]
+#[derive(Debug, Clone, Copy, PartialEq)]
 pub struct Evidence {
     /// Points that carry an order.
     pub explained: usize,
@@ -84,6 +84,8 @@ pub struct Evidence {
     pub log_evidence: f64,
     /// Robust rms distance of points from their nodes over |g| of the shortest vector.
     pub rms_orders: f64,
+    /// What brightness, symmetry and the hint say for the chosen zero order, nats. Not part of `log_evidence`.
+    pub zero_score: f64,
     /// Lead of the chosen zero order over the next best node, nats.
     pub zero_lead: f64,
     /// The best lattice that is another one.
@@ -91,7 +93,7 @@ pub struct Evidence {
 }
 
 /// The lattice that came second.
-#[derive(Debug, Clone, PartialEq)]
+#[derive(Debug, Clone, Copy, PartialEq)]
 pub struct RunnerUp {
     /// Line or plane.
     pub shape: Shape,

@@ -151,6 +151,7 @@ fn evidence(scene: &Scene<'_>, settled: &Candidate, runner_up: Option<RunnerUp>)
         fill: super::evidence::real(explained) / super::evidence::real(nodes.max(1)),
         log_evidence,
         rms_orders,
+        zero_score: settled.zero.score,
         zero_lead: settled.zero.lead,
         runner_up,
     }

@@ -10,8 +10,8 @@ use crate::{
     bench::{Bench, FocalLength, Target, TargetKind},
     fit::{
         Joint, Layout, Outliers, Parameter, PrintObservation, PrintPlace, Shape,
+        approach,
         setup::{self, LensKnowledge, ViewStart},
-        solve,
     },
     frames::{PixelCovariance, PixelPoint},
     photo::Exif,
@@ -88,12 +88,12 @@ fn settle(cameras: &mut Cameras, bench: &Bench, views: &[View]) -> Result<(), Er
             spot_scale: 1.0,
             print_scale: 1.0,
         };
-        let fit = solve(joint, outliers)?;
-        cameras.layout = fit.joint.layout.clone();
-        cameras.prints = fit.joint.prints.clone();
+        let joint = approach(joint, outliers)?;
+        cameras.layout = joint.layout.clone();
+        cameras.prints = joint.prints.clone();
         let (Some(pitch_m), 0) = (pitch_m, pass) else { break };
         for (print, seen) in cameras.prints.iter_mut().zip(&uncorrected) {
-            let camera = fit.joint.camera(&fit.joint.values(), print.view);
+            let camera = joint.camera(&joint.values(), print.view);
             let (PrintPlace::Pitches(place), Some(reading)) = (print.place, &views[print.view].reading) else { continue };
             let radius = if is_mark(place) { reading.mark_radius_pitches } else { reading.dot_radius_pitches };
             if let Some([dx, dy]) = disc_centroid_offset(&camera, place.map(|p| p * pitch_m), radius * pitch_m) {

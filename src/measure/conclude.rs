@@ -11,7 +11,7 @@ use crate::{
     Note,
     bench::Bench,
     budget::{self, Value},
-    fit::{Cell, Derived, Fit, Parameter, Prior, Source, cell},
+    fit::{Cell, Derived, Fit, Parameter, PrintPlace, Prior, Source, cell},
     frames::{PixelCovariance, PixelPoint},
     optics::{Attitude, zero_order_in_sample_plane},
 };
@@ -114,7 +114,8 @@ fn rejected_spots(seen: &Seen, ordered: &[Ordered], fit: &Fit) -> Vec<RejectedSp
     for (photo, pattern) in seen.patterns.iter().enumerate() {
         for (number, spot) in pattern.spots.spots.iter().enumerate() {
             if !fit.joint.spots.iter().any(|used| used.photo == photo && used.spot == number) {
-                rejected.push(RejectedSpot { photo, at: spot.at, reason: ordered[photo].reason(number) });
+                let (reason, detail) = ordered[photo].reason(number);
+                rejected.push(RejectedSpot { photo, at: spot.at, reason: reason.to_owned(), detail });
             }
         }
     }
@@ -153,7 +154,7 @@ fn summary(fit: &Fit) -> FitSummary {
         rms_px: fit.spot_rms_px,
         birge_factor: fit.joint.spot_scale,
         spots_used: fit.joint.spots.iter().filter(|spot| spot.weight > 0.5).count(),
-        dots_used: fit.joint.prints.iter().filter(|print| print.weight > 0.5).count(),
+        dots_used: fit.joint.prints.iter().filter(|print| print.weight > 0.5 && !matches!(print.place, PrintPlace::ScaleEnd(_))).count(),
     }
 }
 

@@ -49,6 +49,17 @@ pub enum MeasureError {
     /// The lattice found has no area.
     #[error("the fit collapsed to a lattice without area; restrict [sample] pattern to \"line\" or check the spots in the overlay")]
     FlatLattice,
+    /// The spots do not lie on the lattice that was found.
+    #[error(
+        "the spots lie {rms_px:.1} px (rms) off the best lattice, whose orders are {spacing_px:.1} px apart: this is no single lattice seen on a flat screen; \
+         check the overlay for parts that do not belong together, and that the camera's lean is stated"
+    )]
+    Irregular {
+        /// Root mean square distance of the used spots from the model, px.
+        rms_px: f64,
+        /// Distance of neighbouring orders in the middle of the pattern, px.
+        spacing_px: f64,
+    },
     /// Nothing in photo and bench file fixes the pitch.
     #[error(
         "photo and bench file do not fix the pitch (best {:.4} um, standard uncertainty {:.4} um): give the throw and a target or scale, or photograph wider orders",
@@ -97,6 +108,7 @@ impl MeasureError {
             Self::TargetKindNotRead => "target-kind",
             Self::NoPose => "no-camera-pose",
             Self::FlatLattice => "flat-lattice",
+            Self::Irregular { .. } => "irregular",
             Self::PitchNotFixed { .. } => "pitch-not-fixed",
             Self::ColourMismatch { .. } => "colour-mismatch",
             Self::AirOutOfRange { .. } => "air-out-of-range",

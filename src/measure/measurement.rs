@@ -121,6 +121,8 @@ pub struct RejectedSpot {
     pub at: PixelPoint,
     /// Why it has no order.
     pub reason: String,
+    /// How far off, where that can be said; empty otherwise.
+    pub detail: String,
 }
 
 /// An unknown before and after the fit.

@@ -56,6 +56,7 @@ pub fn measure(inputs: &Inputs<'_>, bench: &Bench) -> Result<Measurement, Refusa
     let fit = solve(joint, Outliers::Rejected)?;
     let (ordered, fit) = zero_order::best_zero_order(&seen, bench, &cameras, ordered, &wavelengths_m, fit)?;
     let fit = strays::taken_in(&seen, bench, fit)?;
+    statement::regular_enough(&fit)?;
     notes.extend(statement::numbering_notes(&ordered));
     notes.extend(strain::strained_statements(bench, &fit));
     conclude::conclude(inputs, bench, &seen, &ordered, &fit, notes).map_err(Refusal::from)

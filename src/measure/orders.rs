@@ -2,11 +2,12 @@
 
 use super::rough::Rough;
 use crate::{
-    frames::PixelPoint,
-    lattice::{self, Expected, IndexOptions, Indexed, LatticeError, Point, Reason},
+    frames::{PixelCovariance, PixelPoint},
+    lattice::{self, Expected, IndexOptions, Indexed, LatticeError, Point, Reason, ZeroHint},
     math::robust::median,
     spots::Spot,
 };
+use std::collections::BTreeMap;
 
 /// Spots of one photo with their orders; everything refers to the photo's list of spots.
 #[derive(Debug, Clone)]
@@ -14,6 +15,8 @@ pub(super) struct Ordered {
     pub(super) indexed: Indexed,
     /// Which spot each point given to `lattice` was.
     pub(super) spot_of_point: Vec<usize>,
+    /// Spots not given to `lattice`, and why.
+    left_out: BTreeMap<usize, &'static str>,
     /// The rough geometry with the zero order in its place.
     pub(super) rough: Rough,
 }
@@ -25,64 +28,84 @@ pub(super) struct Roughness {
     pub(super) bend: f64,
 }
 
-/// The zero order moves the origin of the wide-angle mapping, so indexing is repeated until it stays where it was put.
-const ZERO_ORDER_PASSES: usize = 3;
-/// Zero order and log evidence this sure need no second hypothesis, nats.
+/// A zero order that leads by this much in a lattice of this much evidence needs no rival hypothesis, nats.
 const SURE_ZERO: f64 = 3.0;
 const SURE_EVIDENCE: f64 = 30.0;
+/// Most that brightness and symmetry may say for or against a zero order beside the regularity of the places, nats.
+const ZERO_SAY: f64 = 8.0;
+/// How near, in px, a zero order lies to the place where it was supposed.
+const SAME_PLACE_PX: f64 = 3.0;
+/// Hypotheses tried at most; those that indexing itself proposes included.
+const MOST_HYPOTHESES: usize = 9;
 
-/// Indexes the spots of a photo. Which spot the zero order is decides how wide angles are mapped, so it is a hypothesis: the
-/// likely spots are tried in turn, and unless the first leaves no doubt the one with the strongest evidence is kept.
+/// Indexes the spots of a photo. Which spot the zero order is decides how wide angles are mapped, so it is a hypothesis: likely
+/// spots are tried in turn, with what indexing proposes from them, and unless one leaves no doubt the one is kept about which
+/// the orders are most regular and the pattern most symmetric.
 pub(super) fn order_spots(
     spots: &[Spot],
     rough: &Rough,
     roughness: Roughness,
     on_screen: &dyn Fn(&Spot) -> bool,
 ) -> Result<Ordered, LatticeError> {
-    let mut best: Option<Ordered> = None;
+    let mut hypotheses = likely_zero_orders(spots, rough);
+    let mut best: Option<(f64, Ordered)> = None;
     let mut refusal: Option<LatticeError> = None;
-    for zero in likely_zero_orders(spots, rough) {
-        match order_about(spots, rough.clone(), zero, roughness, on_screen) {
+    let mut next = 0;
+    while let Some(&zero) = hypotheses.get(next) {
+        next += 1;
+        let free = order_about(spots, rough, zero, Zero::Open, roughness, on_screen);
+        let proposed = free.as_ref().ok().and_then(|free| Some((free.rough.pixel(free.indexed.zero)?, free.indexed.evidence)));
+        let agrees = proposed.is_some_and(|(place, _)| place.distance_px(zero) < SAME_PLACE_PX);
+        if agrees && proposed.is_some_and(|(_, e)| e.zero_lead > SURE_ZERO && e.log_evidence > SURE_EVIDENCE) {
+            return free;
+        }
+        if let Some((place, _)) = proposed.filter(|_| hypotheses.len() < MOST_HYPOTHESES) {
+            if hypotheses.iter().all(|known| known.distance_px(place) >= SAME_PLACE_PX) {
+                hypotheses.insert(next, place);
+            }
+        }
+        match if agrees { free } else { order_about(spots, rough, zero, Zero::Here, roughness, on_screen) } {
             Ok(ordered) => {
-                let evidence = &ordered.indexed.evidence;
-                let sure = evidence.zero_lead > SURE_ZERO && evidence.log_evidence > SURE_EVIDENCE;
-                if best.as_ref().is_none_or(|b| evidence.log_evidence > b.indexed.evidence.log_evidence) {
-                    best = Some(ordered);
-                }
-                if sure {
-                    break;
+                let evidence = ordered.indexed.evidence;
+                let total = evidence.log_evidence + evidence.zero_score.clamp(-ZERO_SAY, ZERO_SAY);
+                if best.as_ref().is_none_or(|(lead, _)| total > *lead) {
+                    best = Some((total, ordered));
                 }
             }
             Err(error) => refusal = refusal.or(Some(error)),
         }
     }
-    best.ok_or_else(|| refusal.unwrap_or(LatticeError::TooFewSpots { found: 0, needed: 3 }))
+    let none = || refusal.unwrap_or(LatticeError::TooFewSpots { found: 0, needed: 3 });
+    best.map(|(_, ordered)| ordered).ok_or_else(none)
 }
 
-/// Indexes the spots with the zero order first taken to be at `zero`.
+/// Whether the zero order is where the mapping has its origin, or wherever indexing puts it.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+enum Zero {
+    Here,
+    Open,
+}
+
+/// Indexes the spots by the mapping that has its origin at `place`.
 fn order_about(
     spots: &[Spot],
-    mut rough: Rough,
-    mut zero: PixelPoint,
+    rough: &Rough,
+    place: PixelPoint,
+    zero: Zero,
     roughness: Roughness,
     on_screen: &dyn Fn(&Spot) -> bool,
 ) -> Result<Ordered, LatticeError> {
-    let mut last = None;
-    for _ in 0..ZERO_ORDER_PASSES {
-        if !rough.put_zero_order(zero) {
-            break;
-        }
-        let (points, spot_of_point) = points(spots, &rough, on_screen);
-        let options = IndexOptions { expected: roughness.expected, bend: roughness.bend, ..IndexOptions::default() };
-        let indexed = lattice::index(&points, &options, &|place| rough.in_frame(place))?;
-        let found = rough.pixel(indexed.zero);
-        last = Some(Ordered { indexed, spot_of_point, rough: rough.clone() });
-        match found {
-            Some(found) if found.distance_px(zero) > 2.0 => zero = found,
-            _ => break,
-        }
+    let mut rough = rough.clone();
+    if !rough.put_zero_order(place) {
+        return Err(LatticeError::TooFewSpots { found: 0, needed: 3 });
     }
-    last.ok_or(LatticeError::TooFewSpots { found: 0, needed: 3 })
+    let left_out = left_out(spots, on_screen);
+    let (points, spot_of_point) = points(spots, &rough, &left_out);
+    let here = rough.lattice_u(place, PixelCovariance::isotropic(SAME_PLACE_PX)).map(|u| ZeroHint { at: [0.0; 2], u });
+    let zero_hint = here.filter(|_| zero == Zero::Here);
+    let options = IndexOptions { expected: roughness.expected, bend: roughness.bend, zero_hint, ..IndexOptions::default() };
+    let indexed = lattice::index(&points, &options, &|place| rough.in_frame(place))?;
+    Ok(Ordered { indexed, spot_of_point, left_out, rough })
 }
 
 /// Bright spots tried as the zero order.
@@ -145,24 +168,35 @@ pub(super) fn light_of(spot: &Spot) -> f64 {
     spot.peak * (spot.shape.xx * spot.shape.yy - spot.shape.xy.powi(2)).max(0.0).sqrt()
 }
 
-fn points(spots: &[Spot], rough: &Rough, on_screen: &dyn Fn(&Spot) -> bool) -> (Vec<Point>, Vec<usize>) {
+/// Spots that cannot be orders, whatever the lattice.
+fn left_out(spots: &[Spot], on_screen: &dyn Fn(&Spot) -> bool) -> BTreeMap<usize, &'static str> {
     let common = CommonSize::of(spots);
+    let reason = |spot: &Spot| match () {
+        () if !on_screen(spot) => Some("beyond the marks"),
+        () if !common.fits(spot) => Some("far from the common size of the spots"),
+        () => None,
+    };
+    spots.iter().enumerate().filter_map(|(number, spot)| reason(spot).map(|reason| (number, reason))).collect()
+}
+
+fn points(spots: &[Spot], rough: &Rough, left_out: &BTreeMap<usize, &'static str>) -> (Vec<Point>, Vec<usize>) {
     let point = |(i, spot): (usize, &Spot)| {
         let at = rough.lattice_place(spot.at)?;
         let u = rough.lattice_u(spot.at, spot.covariance)?;
         Some((Point::new(at, u, light_of(spot).max(1e-12)), i))
     };
-    spots.iter().enumerate().filter(|(_, spot)| on_screen(spot) && common.fits(spot)).filter_map(point).unzip()
+    spots.iter().enumerate().filter(|(number, _)| !left_out.contains_key(number)).filter_map(point).unzip()
 }
 
 impl Ordered {
-    /// Why a spot carries no order, in words.
-    pub(super) fn reason(&self, spot: usize) -> String {
-        let Some(point) = self.spot_of_point.iter().position(|&s| s == spot) else {
-            return "beyond the marks, or far from the common size of the spots".to_owned();
-        };
-        let reason = self.indexed.rejected.iter().find(|(rejected, _)| *rejected == point);
-        reason.map_or_else(|| "off the model".to_owned(), |(_, reason)| in_words(reason))
+    /// Why a spot carries no order, in words, and how far off it is.
+    pub(super) fn reason(&self, spot: usize) -> (&'static str, String) {
+        if let Some(reason) = self.left_out.get(&spot) {
+            return (reason, String::new());
+        }
+        let point = self.spot_of_point.iter().position(|&s| s == spot);
+        let reason = self.indexed.rejected.iter().find(|(rejected, _)| Some(*rejected) == point);
+        reason.map_or_else(|| ("off the model", String::new()), |(_, reason)| in_words(reason))
     }
 
     /// Pairs of spot number and order.
@@ -172,15 +206,15 @@ impl Ordered {
 }
 
 /// A reason for the overlay and the order table.
-fn in_words(reason: &Reason) -> String {
+fn in_words(reason: &Reason) -> (&'static str, String) {
     match reason {
-        Reason::NotANumber => "no usable place".to_owned(),
-        Reason::OffLattice { offset } => format!("between orders ({:+.2}, {:+.2})", offset[0], offset[1]),
-        Reason::OffLine { distance } => format!("off the row by {distance:.2} orders"),
-        Reason::Duplicate { .. } => "a better spot holds this order".to_owned(),
-        Reason::Ghost { copies, .. } => format!("ghost, one of {copies} with the same offset"),
-        Reason::SecondLattice => "on a second lattice".to_owned(),
-        Reason::OutOfReach => "too far out to number".to_owned(),
-        _ => "off the lattice".to_owned(),
+        Reason::NotANumber => ("no usable place", String::new()),
+        Reason::OffLattice { offset } => ("between orders", format!("off by ({:+.2}, {:+.2}) orders", offset[0], offset[1])),
+        Reason::OffLine { distance } => ("off the row", format!("by {distance:.2} orders")),
+        Reason::Duplicate { .. } => ("a better spot holds this order", String::new()),
+        Reason::Ghost { copies, .. } => ("ghost", format!("one of {copies} with the same offset")),
+        Reason::SecondLattice => ("on a second lattice", String::new()),
+        Reason::OutOfReach => ("too far out to number", String::new()),
+        _ => ("off the lattice", String::new()),
     }
 }

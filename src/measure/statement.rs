@@ -61,6 +61,29 @@ pub(super) fn enough_spots(joint: &Joint) -> Result<(), FitError> {
     Ok(())
 }
 
+/// Orders further off than this share of their spacing, rms, leave neighbours open to doubt: spots strewn at random inside the gate of
+/// indexing have about twice as much.
+const IRREGULAR: f64 = 0.1;
+
+/// Refuses a lattice that its own spots do not follow.
+pub(super) fn regular_enough(fit: &Fit) -> Result<(), MeasureError> {
+    let values = fit.joint.values();
+    let spacing = |photo: usize| {
+        let mut used: Vec<(i32, i32)> =
+            fit.joint.spots.iter().filter(|spot| spot.photo == photo && spot.weight > 0.5).map(|spot| spot.order).collect();
+        used.sort_unstable_by_key(|(h, k)| (h.abs() + k.abs(), *h, *k));
+        let middle = *used.first()?;
+        let places = fit.joint.predict(&values, photo, &[middle, (middle.0 + 1, middle.1), (middle.0, middle.1 + 1)]);
+        let [x, y] = (*places.first()?)?;
+        let steps = places.iter().skip(1).flatten().map(|[x1, y1]| (x1 - x).hypot(y1 - y));
+        // A row has no second step: its prediction stays where it is.
+        steps.filter(|step| *step > 1e-6).min_by(f64::total_cmp)
+    };
+    let spacing_px = (0..fit.joint.shape.photos.len()).filter_map(spacing).fold(f64::INFINITY, f64::min);
+    let rms_px = fit.spot_rms_px;
+    if rms_px > IRREGULAR * spacing_px { Err(MeasureError::Irregular { rms_px, spacing_px }) } else { Ok(()) }
+}
+
 /// The kind of plane lattice, as a statistical statement; `None` for a line grating.
 pub(super) fn kind_statement(fit: &Fit, found: &Cell) -> Option<KindStatement> {
     let [p1, p2] = found.pitch_m.as_slice() else { return None };

@@ -24,7 +24,7 @@ pub(super) fn taken_in(seen: &Seen, bench: &Bench, mut fit: Fit) -> Result<Fit, 
         // The Birge factors belong to the old selection.
         (joint.spot_scale, joint.print_scale) = (1.0, 1.0);
         joint.spots.extend(found);
-        fit = solve(joint, Outliers::Rejected)?;
+        fit = solve(joint, Outliers::Rechecked)?;
     }
     Ok(fit)
 }

@@ -88,10 +88,6 @@ impl LinearPhoto<'_> {
         &self.table
     }
 
-    pub(super) fn clip_code(&self) -> [u16; 3] {
-        self.clip_code
-    }
-
     fn code(&self, x: usize, y: usize, channel: usize) -> Option<u16> {
         if x >= self.photo.width {
             return None;

@@ -75,8 +75,6 @@ pub struct Light {
     pub height: usize,
     /// Row-major linear light.
     pub value: Vec<f32>,
-    /// Row-major; 1 where any channel used clips at this pixel.
-    pub clipped: Vec<u8>,
     /// Variance of one pixel: `a + b * signal`.
     pub noise: Noise,
 }

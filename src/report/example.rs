@@ -121,7 +121,7 @@ fn order(h: i32, k: i32, x_px: f64, y_px: f64) -> OrderRow {
 }
 
 fn rejected(x_px: f64, y_px: f64, reason: &str) -> RejectedSpot {
-    RejectedSpot { photo: 0, at: PixelPoint { x_px, y_px }, reason: reason.to_owned() }
+    RejectedSpot { photo: 0, at: PixelPoint { x_px, y_px }, reason: reason.to_owned(), detail: String::new() }
 }
 
 fn parameters() -> Vec<ParameterRow> {

@@ -210,6 +210,8 @@ struct RejectedJson<'a> {
     #[serde(flatten)]
     at: Place,
     reason: &'a str,
+    #[serde(skip_serializing_if = "str::is_empty")]
+    detail: &'a str,
 }
 
 #[derive(Serialize, JsonSchema)]
@@ -287,7 +289,7 @@ fn order_json(order: &OrderRow) -> Option<OrderJson> {
 }
 
 fn rejected_json(spot: &RejectedSpot) -> Option<RejectedJson<'_>> {
-    Some(RejectedJson { photo: spot.photo, at: place(spot.at.x_px, spot.at.y_px)?, reason: &spot.reason })
+    Some(RejectedJson { photo: spot.photo, at: place(spot.at.x_px, spot.at.y_px)?, reason: &spot.reason, detail: &spot.detail })
 }
 
 fn parameter_json(parameter: &ParameterRow) -> Option<ParameterJson<'_>> {

@@ -106,8 +106,8 @@ fn explanation(measurement: &Measurement) -> String {
 
 fn lattice_kind(sample: &SampleResult) -> String {
     let Some(kind) = &sample.kind else { return String::new() };
-    let sentence = if kind.sentence.is_empty() { String::new() } else { format!(". {}", kind.sentence) };
-    paragraph("Lattice: ", &format!("{}{sentence}", kind_name(kind.kind)), WIDTH)
+    let words = if kind.sentence.is_empty() { kind_name(kind.kind) } else { &kind.sentence };
+    paragraph("Lattice: ", words, WIDTH)
 }
 
 /// What the result rests on: spots and fit.

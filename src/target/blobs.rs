@@ -2,6 +2,8 @@
 
 use super::paper::{Binned, PaperLevel, small_f64};
 use crate::frames::PixelPoint;
+use image::GrayImage;
+use imageproc::contrast::otsu_level;
 
 /// A dark connected patch that may be a dot, in pixels of the photo.
 #[derive(Debug, Clone, Copy)]
@@ -23,48 +25,33 @@ const LEAST_AXIS_RATIO: f64 = 0.3;
 /// How far the area may differ from that of the ellipse with the same moments, beside pixel steps.
 const ELLIPSE_TOLERANCE: f64 = 0.12;
 
+/// Grey levels per paper level, so that glare up to twice the paper's light keeps its place.
+const GREY_OF_PAPER: f32 = 128.0;
+/// Every so many rows count.
+const ROW_STEP: usize = 5;
+
 /// Share of the paper level that parts ink from paper in this photo, by Otsu's criterion (largest
 /// variance between the two classes; N. Otsu, IEEE Trans. SMC 9 (1979) 62, eq. 14 from memory).
 pub(super) fn ink_threshold(plane: &Binned, paper: &PaperLevel) -> f32 {
-    const BINS: usize = 128;
-    let mut histogram = [0_u32; BINS];
+    let mut ratios = GrayImage::new(image_side(plane.width), image_side(plane.height.div_ceil(ROW_STEP)));
     let mut line = vec![0.0_f32; plane.width];
-    for y in (0..plane.height).step_by(5) {
+    for (y, row) in (0..plane.height).step_by(ROW_STEP).zip(ratios.chunks_exact_mut(plane.width)) {
         paper.row(y, &mut line);
         let samples = &plane.value[y * plane.width..(y + 1) * plane.width];
-        for (sample, paper) in samples.iter().zip(&line) {
-            if *paper > 0.0 {
-                histogram[ratio_bin(sample / paper, BINS)] += 1;
-            }
+        for ((sample, paper), grey) in samples.iter().zip(&line).zip(row) {
+            *grey = if *paper > 0.0 { grey_level(sample / paper) } else { u8::MAX };
         }
     }
-    otsu(&histogram)
+    (f32::from(otsu_level(&ratios)) + 1.0) / GREY_OF_PAPER
 }
 
-/// Histogram bin of a ratio; everything from 1 upwards falls into the last.
-#[expect(clippy::cast_possible_truncation, clippy::cast_sign_loss, reason = "clamped to 0..bins before the cast; NaN gives 0")]
-fn ratio_bin(ratio: f32, bins: usize) -> usize {
-    ((ratio * 128.0) as usize).min(bins - 1)
+fn image_side(pixels: usize) -> u32 {
+    u32::try_from(pixels).unwrap_or(u32::MAX)
 }
 
-fn otsu(histogram: &[u32]) -> f32 {
-    let total: f64 = histogram.iter().map(|n| f64::from(*n)).sum();
-    let moment: f64 = histogram.iter().enumerate().map(|(k, n)| small_f64(k) * f64::from(*n)).sum();
-    let (mut below, mut below_moment, mut best, mut at) = (0.0, 0.0, -1.0, 64);
-    for (k, n) in histogram.iter().enumerate() {
-        below += f64::from(*n);
-        below_moment += small_f64(k) * f64::from(*n);
-        let above = total - below;
-        if below < 1.0 || above < 1.0 {
-            continue;
-        }
-        let step = below_moment / below - (moment - below_moment) / above;
-        let between = below * above * step * step;
-        if between > best {
-            (best, at) = (between, k);
-        }
-    }
-    (f32::from(u8::try_from(at).unwrap_or(64)) + 1.0) / 128.0
+#[expect(clippy::cast_possible_truncation, clippy::cast_sign_loss, reason = "a cast to u8 saturates; NaN gives 0")]
+fn grey_level(ratio: f32) -> u8 {
+    (ratio * GREY_OF_PAPER) as u8
 }
 
 /// All dark patches below `threshold` × paper that look like complete discs seen from somewhere.

@@ -45,7 +45,7 @@ fn linear_light(path: &std::path::Path, channel: Option<usize>, orientation: u64
         })
         .collect();
     let (width, height) = (rgb.width() as usize, rgb.height() as usize);
-    Light { width, height, value, clipped: vec![0; width * height], noise: Noise { a: 0.0, b: 0.0 } }
+    Light { width, height, value, noise: Noise { a: 0.0, b: 0.0 } }
 }
 
 /// Centroid of a printed disc in the photo by averaging over many points of the disc.

@@ -175,17 +175,11 @@ fn photos_without_a_target_are_refused() {
 #[test]
 fn senseless_planes_are_refused() {
     for value in [0.0, f32::NAN, f32::INFINITY, -1.0, 0.5] {
-        let light = Light {
-            width: 64,
-            height: 64,
-            value: vec![value; 4096],
-            clipped: vec![0; 4096],
-            noise: crate::photo::Noise { a: 0.0, b: 0.0 },
-        };
+        let light = Light { width: 64, height: 64, value: vec![value; 4096], noise: crate::photo::Noise { a: 0.0, b: 0.0 } };
         assert!(read(&light, &ReadOptions::default()).is_err());
     }
     for (width, height, n) in [(0, 0, 0), (1, 1, 1), (64, 64, 7), (usize::MAX, 2, 4)] {
-        let light = Light { width, height, value: vec![0.5; n], clipped: vec![0; n], noise: crate::photo::Noise { a: 0.0, b: 0.0 } };
+        let light = Light { width, height, value: vec![0.5; n], noise: crate::photo::Noise { a: 0.0, b: 0.0 } };
         assert!(matches!(read(&light, &ReadOptions::default()), Err(TargetError::PhotoTooSmall { .. })));
     }
 }

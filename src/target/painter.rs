@@ -54,7 +54,7 @@ pub(super) fn paint(scene: &Scene) -> Light {
             (paper * (1.0 - share[n] * (1.0 - scene.ink)) + paper * noise + glow).clamp(0.0, 1.0) as f32
         })
         .collect();
-    Light { width, height, value, clipped: vec![0; width * height], noise: Noise { a: 0.0, b: 0.0 } }
+    Light { width, height, value, noise: Noise { a: 0.0, b: 0.0 } }
 }
 
 fn paint_disc(share: &mut [f64], disc: &PrintedDisc, scene: &Scene) {

@@ -171,7 +171,7 @@ mod tests {
 
     fn light(width: usize, height: usize, value: impl Fn(usize, usize) -> f32) -> Light {
         let value = (0..width * height).map(|n| value(n % width, n / width)).collect();
-        Light { width, height, value, clipped: vec![0; width * height], noise: Noise { a: 0.0, b: 0.0 } }
+        Light { width, height, value, noise: Noise { a: 0.0, b: 0.0 } }
     }
 
     #[test]

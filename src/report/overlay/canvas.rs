@@ -1,6 +1,7 @@
 //! Smooth-edged strokes and letters on a picture, each with a dark outline that keeps it readable on any ground.
 
 use image::{Rgb, RgbImage};
+use imageproc::{drawing::draw_filled_rect_mut, rect::Rect};
 
 use super::face::{ADVANCE, Face, LETTER_HEIGHT};
 
@@ -83,10 +84,10 @@ impl Canvas {
     /// Fills a rectangle, far edges excluded.
     fn fill(&mut self, from: Place, to: Place, colour: Rgb<u8>) {
         let (width, height) = self.image.dimensions();
-        for y in index(from[1].round(), height)..index(to[1].round(), height) {
-            for x in index(from[0].round(), width)..index(to[0].round(), width) {
-                self.image.put_pixel(x, y, colour);
-            }
+        let [x, y] = [index(from[0].round(), width), index(from[1].round(), height)];
+        let [columns, rows] = [index(to[0].round(), width) - x, index(to[1].round(), height) - y];
+        if columns > 0 && rows > 0 {
+            draw_filled_rect_mut(&mut self.image, Rect::at(x.cast_signed(), y.cast_signed()).of_size(columns, rows), colour);
         }
     }
 

@@ -68,7 +68,7 @@ fn order(h: i32, k: i32, at: [f64; 2]) -> OrderRow {
 }
 
 fn stray(at: [f64; 2], reason: &str) -> RejectedSpot {
-    RejectedSpot { photo: 0, at: point(at), reason: reason.to_owned() }
+    RejectedSpot { photo: 0, at: point(at), reason: reason.to_owned(), detail: String::new() }
 }
 
 /// Spots that fade outwards on an uneven noisy ground, red laser, 4:3.
