@@ -10,6 +10,7 @@
 pub mod bench;
 pub mod budget;
 pub mod cli;
+pub mod control;
 pub mod digest;
 pub mod error;
 pub mod fit;

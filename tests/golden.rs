@@ -6,8 +6,8 @@ use spotrule::{
     bench::Mode,
     frames::{PixelCovariance, PixelPoint},
     measure::{
-        BudgetLine, FitSummary, KindStatement, LatticeKind, Measurement, OrderRow, ParameterRow, ParameterUnit, PhotoSummary, ReciprocalView, RejectedSpot,
-        SampleResult, Value, ZeroOrder,
+        BudgetLine, FitSummary, KindStatement, LatticeKind, Measurement, OrderRow, ParameterRow, ParameterUnit, PhotoSummary,
+        ReciprocalView, RejectedSpot, SampleResult, Value, ZeroOrder,
     },
     photo::Exif,
     report::{Context, Program, json, refusal_text, refused_json, text},
@@ -107,7 +107,11 @@ fn plane() -> Measurement {
             axes_px: vec![at(2210.01, 1500.15), at(2009.1, 1299.03)],
         }],
         mode: Mode::Reflection,
-        reciprocal: ReciprocalView { wavelength_m: 632.82e-9, zero_order: [0.0, 0.5], vectors_per_m: vec![[15_868.0, 0.0], [0.0, 15_847.0]] },
+        reciprocal: ReciprocalView {
+            wavelength_m: 632.82e-9,
+            zero_order: [0.0, 0.5],
+            vectors_per_m: vec![[15_868.0, 0.0], [0.0, 15_847.0]],
+        },
         notes: vec![Note::ToneCurveAssumed],
     }
 }

@@ -23,7 +23,8 @@ const MAY_USE: &[(&str, &[&str])] = &[
     // a made-up scene speaks the language of the bench file that it writes beside its photo
     ("synth", &["lattice", "optics", "photo", "target", "bench"]),
     ("limits", &["measure"]),
-    ("report", &["measure", "limits"]),
+    ("control", &[]),
+    ("report", &["measure", "limits", "control"]),
     // knows results by their JSON alone
     ("log", &[]),
     ("cli", &["report", "log", "synth"]),

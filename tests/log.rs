@@ -182,7 +182,13 @@ fn measurements_are_entered_shown_exported_and_corrected() {
     assert_eq!(verify.status.code(), Some(0), "{}", text(&verify.stdout));
     assert!(text(&verify.stdout).contains("that of entry 1"), "{}", text(&verify.stdout));
     let outcomes = |filter: &Filter| {
-        Log::read(&folder.path().join("book.db")).unwrap().list(filter, 9).unwrap().iter().map(|listed| listed.entry.outcome.name()).collect::<Vec<_>>()
+        Log::read(&folder.path().join("book.db"))
+            .unwrap()
+            .list(filter, 9)
+            .unwrap()
+            .iter()
+            .map(|listed| listed.entry.outcome.name())
+            .collect::<Vec<_>>()
     };
     assert_eq!(outcomes(&Filter::default()), ["refused", "outside", "measured"]);
 
@@ -199,7 +205,11 @@ fn measurements_are_entered_shown_exported_and_corrected() {
     assert_eq!(spotrule(folder.path(), &["log", "export", "book.db", "--format", "jsonl", "--out", "book.jsonl"]).status.code(), Some(0));
     for line in fs::read_to_string(folder.path().join("book.jsonl")).unwrap().lines() {
         let value: serde_json::Value = serde_json::from_str(line).unwrap();
-        let entry = line.split("\"entry\":").nth(1).map(|_| &line[line.find("\"entry\":").unwrap() + 8..line.rfind(",\"result\":").unwrap()]).unwrap();
+        let entry = line
+            .split("\"entry\":")
+            .nth(1)
+            .map(|_| &line[line.find("\"entry\":").unwrap() + 8..line.rfind(",\"result\":").unwrap()])
+            .unwrap();
         assert_eq!(value["sha256"].as_str().unwrap(), spotrule::digest::sha256_hex(entry.as_bytes()), "{entry}");
     }
     // A kept photo that changes is found by its hash.
@@ -210,10 +220,37 @@ fn measurements_are_entered_shown_exported_and_corrected() {
     assert!(text(&spoilt.stdout).contains("was changed"), "{}", text(&spoilt.stdout));
 }
 
+/// Readings that jump once: the chart names the entry, and leaves out the one that was corrected.
+#[test]
+fn a_chart_names_the_entry_that_jumps() {
+    let folder = tempfile::tempdir().unwrap();
+    let lines: String = (0..24)
+        .map(|i| result("reference").replace("20.0,", &format!("{},", if i == 17 { 21.0 } else { 20.0 + 0.01 * f64::from(i % 4) })) + "\n")
+        .collect();
+    for line in lines.lines() {
+        fs::write(folder.path().join("one.json"), line).unwrap();
+        assert_eq!(spotrule(folder.path(), &["log", "add", "book.db", "one.json"]).status.code(), Some(0));
+    }
+    let chart = || spotrule(folder.path(), &["log", "chart", "book.db", "--sample", "reference", "--out", "chart.svg"]);
+    let drawn = text(&chart().stdout);
+    assert!(drawn.contains("24 readings") && drawn.contains("entry 18: one reading beyond 3 sigma"), "{drawn}");
+    assert!(fs::read_to_string(folder.path().join("chart.svg")).unwrap().contains("24 readings of pitch 1, µm"));
+    assert_eq!(spotrule(folder.path(), &["log", "correct", "book.db", "18", "--why", "dust on the film"]).status.code(), Some(0));
+    let corrected = text(&chart().stdout);
+    assert!(corrected.contains("23 readings") && !corrected.contains("beyond 3 sigma"), "{corrected}");
+    assert_eq!(spotrule(folder.path(), &["log", "chart", "book.db", "--sample", "none", "--out", "no.svg"]).status.code(), Some(1));
+    assert!(!folder.path().join("no.svg").exists());
+}
+
 #[test]
 fn a_log_that_is_not_there_is_not_made_by_looking() {
     let folder = tempfile::tempdir().unwrap();
-    for arguments in [&["log", "list", "b.db"][..], &["log", "verify", "b.db"], &["log", "show", "b.db", "1"], &["log", "correct", "b.db", "1", "--why", "x"]] {
+    for arguments in [
+        &["log", "list", "b.db"][..],
+        &["log", "verify", "b.db"],
+        &["log", "show", "b.db", "1"],
+        &["log", "correct", "b.db", "1", "--why", "x"],
+    ] {
         let done = spotrule(folder.path(), arguments);
         assert_eq!(done.status.code(), Some(2));
         assert!(text(&done.stderr).contains("no such log"), "{}", text(&done.stderr));

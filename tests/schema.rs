@@ -51,11 +51,27 @@ fn what_the_program_writes_is_valid() {
     fs::write(folder.path().join("target.jpg"), photos.target.as_ref().unwrap()).unwrap();
     fs::write(folder.path().join("bench.toml"), scene.bench_text()).unwrap();
     image::RgbImage::from_pixel(800, 600, image::Rgb([3, 3, 3])).save(folder.path().join("dark.png")).unwrap();
-    let run = |arguments: &[&str]| Command::new(env!("CARGO_BIN_EXE_spotrule")).args(arguments).current_dir(folder.path()).output().unwrap();
+    let run =
+        |arguments: &[&str]| Command::new(env!("CARGO_BIN_EXE_spotrule")).args(arguments).current_dir(folder.path()).output().unwrap();
     let result = schema(RESULT);
     let limits = "12.0 ± 0.4 um; angle: >= 100 deg";
     for photo in ["pattern.jpg", "dark.png"] {
-        let done = run(&["measure", photo, "--json", "-", "--log", "book.db", "--limits", limits, "--operator", "A", "--remark", "B", "--mode", "transmission"]);
+        let done = run(&[
+            "measure",
+            photo,
+            "--json",
+            "-",
+            "--log",
+            "book.db",
+            "--limits",
+            limits,
+            "--operator",
+            "A",
+            "--remark",
+            "B",
+            "--mode",
+            "transmission",
+        ]);
         assert_valid(&result, &serde_json::from_slice(&done.stdout).unwrap());
     }
     assert!(run(&["log", "correct", "book.db", "1", "--why", "no reason"]).status.success());

@@ -29,7 +29,9 @@ pub(super) enum Command {
     )]
     Target(TargetArguments),
     /// Look into a log of measurements, check it, add to it
-    #[command(after_help = "Examples:\n  spotrule measure pattern.jpg --log book.db --operator \"A. Person\"\n  spotrule log list book.db\n  spotrule log verify book.db")]
+    #[command(
+        after_help = "Examples:\n  spotrule measure pattern.jpg --log book.db --operator \"A. Person\"\n  spotrule log list book.db\n  spotrule log verify book.db"
+    )]
     Log(LogArguments),
     /// Draw the photos of an invented bench, with the truth behind them
     #[command(after_help = "Example:\n  spotrule render --demo embossed-film --out my-demo")]

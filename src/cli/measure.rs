@@ -79,7 +79,12 @@ pub(super) fn run(arguments: &MeasureArguments) -> Result<ExitCode, Failure> {
 }
 
 /// Into the log goes what was measured and what was refused; wrong use is neither.
-fn enter(arguments: &MeasureArguments, outcome: Result<&Measurement, &Failure>, context: &mut Context, loaded: &Loaded) -> Result<(), Failure> {
+fn enter(
+    arguments: &MeasureArguments,
+    outcome: Result<&Measurement, &Failure>,
+    context: &mut Context,
+    loaded: &Loaded,
+) -> Result<(), Failure> {
     let program = report::Program::this();
     let result = match outcome {
         Ok(measurement) => report::json(measurement, context, &program),
@@ -113,7 +118,9 @@ fn exit_code(context: &Context) -> ExitCode {
 fn named(mut measurement: Measurement, record: &RecordFlags) -> Result<Measurement, Failure> {
     let Some(name) = &record.sample_name else { return Ok(measurement) };
     if measurement.other_samples.iter().any(|other| other.name == *name) {
-        return Err(Failure::Usage(format!("--sample-name {name}: another sample of the bench file has this name; choose a name of its own")));
+        return Err(Failure::Usage(format!(
+            "--sample-name {name}: another sample of the bench file has this name; choose a name of its own"
+        )));
     }
     measurement.sample.name.clone_from(name);
     Ok(measurement)
@@ -127,7 +134,8 @@ fn load(arguments: &MeasureArguments) -> Result<Loaded, Failure> {
         about: bench_path.as_ref().map(|path| path.display().to_string()),
         error: Box::new(Error::Bench(error)),
     };
-    let (bench, notes) = Bench::with_overrides(bench_file.as_ref().map(|file| file.text.as_str()), &overrides(&arguments.bench_flags)).map_err(named)?;
+    let (bench, notes) =
+        Bench::with_overrides(bench_file.as_ref().map(|file| file.text.as_str()), &overrides(&arguments.bench_flags)).map_err(named)?;
     let folder = bench_path.as_deref().and_then(Path::parent).map(Path::to_owned).unwrap_or_default();
     let patterns = match &arguments.photo {
         Some(photo) => vec![(photo.display().to_string(), files::read(photo)?)],

@@ -23,13 +23,17 @@ pub enum LimitsError {
         what: String,
     },
     /// A comma.
-    #[error("limits: \"{part}\" has a comma, which means decimals here and thousands there; write a decimal point, and a semicolon between limits")]
+    #[error(
+        "limits: \"{part}\" has a comma, which means decimals here and thousands there; write a decimal point, and a semicolon between limits"
+    )]
     Comma {
         /// As written.
         part: String,
     },
     /// A number that is none, or a number without the rest.
-    #[error("limits: \"{part}\": \"{found}\" is no number with a unit; write for example \"20.00 ± 0.05 um\", \"19.95 .. 20.05 um\" or \"<= 20.05 um\"")]
+    #[error(
+        "limits: \"{part}\": \"{found}\" is no number with a unit; write for example \"20.00 ± 0.05 um\", \"19.95 .. 20.05 um\" or \"<= 20.05 um\""
+    )]
     Number {
         /// As written.
         part: String,
@@ -81,7 +85,9 @@ pub enum LimitsError {
         part: String,
     },
     /// A pitch or an angle of a lattice is positive.
-    #[error("limits: \"{part}\" allows values that no {what} has; a limit of a {what} is greater than zero (one-sided: write <= and the upper limit alone)")]
+    #[error(
+        "limits: \"{part}\" allows values that no {what} has; a limit of a {what} is greater than zero (one-sided: write <= and the upper limit alone)"
+    )]
     NotPositive {
         /// As written.
         part: String,

@@ -189,9 +189,10 @@ impl<'a> Part<'a> {
             QuantityError::UnknownUnit { unit, advice, .. } => {
                 LimitsError::Unit { part: part(), why: format!("unit \"{unit}\" is not known; {advice}") }
             }
-            QuantityError::WrongDimension { unit, found, needed, accepted, .. } => {
-                LimitsError::Unit { part: part(), why: format!("{unit} is a unit of {found}, but {needed} is needed (accepted: {accepted})") }
-            }
+            QuantityError::WrongDimension { unit, found, needed, accepted, .. } => LimitsError::Unit {
+                part: part(),
+                why: format!("{unit} is a unit of {found}, but {needed} is needed (accepted: {accepted})"),
+            },
             _ => LimitsError::Number { part: part(), found: number.to_owned() },
         })
     }

@@ -44,7 +44,10 @@ impl Rule {
     /// When there is none; the message names them all.
     pub fn named(name: &str) -> Result<Self, LimitsError> {
         let known = || Self::ALL.map(Self::name).join(", ");
-        Self::ALL.into_iter().find(|rule| rule.name() == name).ok_or_else(|| LimitsError::UnknownRule { seen: name.to_owned(), known: known() })
+        Self::ALL
+            .into_iter()
+            .find(|rule| rule.name() == name)
+            .ok_or_else(|| LimitsError::UnknownRule { seen: name.to_owned(), known: known() })
     }
 
     /// What the rule does, in a sentence for a report.

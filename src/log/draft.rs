@@ -114,7 +114,14 @@ impl Draft {
         if why.trim().is_empty() {
             return Err(LogError::NoReason);
         }
-        let entry = Entry { outcome: Outcome::Corrected, sample, operator, corrects: Some(entry), why: Some(why.trim().to_owned()), ..blank(Kind::Correction) };
+        let entry = Entry {
+            outcome: Outcome::Corrected,
+            sample,
+            operator,
+            corrects: Some(entry),
+            why: Some(why.trim().to_owned()),
+            ..blank(Kind::Correction)
+        };
         Ok(Self { entry, result: None, bench_text: None })
     }
 }
@@ -176,7 +183,11 @@ mod tests {
 
     #[test]
     fn what_is_no_result_is_refused_with_the_reason() {
-        for (text, wanted) in [("", "EOF"), ("[]", "invalid length"), ("{\"schema\":\"x\",\"status\":\"measured\",\"program\":{\"version\":\"1\",\"commit\":\"c\"}}", "\"x\"")] {
+        for (text, wanted) in [
+            ("", "EOF"),
+            ("[]", "invalid length"),
+            ("{\"schema\":\"x\",\"status\":\"measured\",\"program\":{\"version\":\"1\",\"commit\":\"c\"}}", "\"x\""),
+        ] {
             let error = Draft::of_result(text, None).unwrap_err().to_string();
             assert!(error.contains(wanted), "{error}");
         }

@@ -119,7 +119,9 @@ impl LogError {
         let cause = error.to_string();
         match error.sqlite_error_code() {
             Some(ErrorCode::CannotOpen) => Self::CannotOpen { path, cause },
-            Some(ErrorCode::ReadOnly | ErrorCode::PermissionDenied | ErrorCode::AuthorizationForStatementDenied) => Self::ReadOnly { path, cause },
+            Some(ErrorCode::ReadOnly | ErrorCode::PermissionDenied | ErrorCode::AuthorizationForStatementDenied) => {
+                Self::ReadOnly { path, cause }
+            }
             Some(ErrorCode::SystemIoFailure) => Self::Medium { path, cause },
             Some(ErrorCode::DiskFull) => Self::DiskFull { path },
             Some(ErrorCode::DatabaseBusy | ErrorCode::DatabaseLocked) => Self::Busy { path, seconds: super::store::PATIENCE.as_secs() },

@@ -46,12 +46,8 @@ fn as_written_or_null<S: Serializer>(json: &Option<&str>, serializer: S) -> Resu
 /// The entry as one line of JSON, without the line break: `sha256`, `entry` byte for byte as it was hashed, `result`, `bench_text`; null where there is none.
 #[must_use]
 pub fn line(shown: &Shown) -> String {
-    let line = Line {
-        sha256: &shown.listed.sha256,
-        entry: &shown.body,
-        result: shown.result.as_deref(),
-        bench_text: shown.bench_text.as_deref(),
-    };
+    let line =
+        Line { sha256: &shown.listed.sha256, entry: &shown.body, result: shown.result.as_deref(), bench_text: shown.bench_text.as_deref() };
     // A walk gives only entries that were read as JSON; a result that was spoilt in the file leaves an empty line, and verify names it.
     serde_json::to_string(&line).unwrap_or_default()
 }

@@ -29,7 +29,10 @@ fn log_of(count: usize) -> (tempfile::TempDir, PathBuf) {
     let mut log = Log::open(&path).unwrap();
     for number in 1..=count {
         let outcome = if number % 3 == 0 { "outside" } else { "inside" };
-        let draft = Draft::of_result(&result(&format!("lot {number}"), 20.0 + 0.001 * f64::from(u32::try_from(number).unwrap()), outcome), Some(BENCH));
+        let draft = Draft::of_result(
+            &result(&format!("lot {number}"), 20.0 + 0.001 * f64::from(u32::try_from(number).unwrap()), outcome),
+            Some(BENCH),
+        );
         assert_eq!(log.append(&draft.unwrap(), &time(number)).unwrap().entry, u64::try_from(number).unwrap());
     }
     (folder, path)
@@ -104,7 +107,15 @@ fn each_kind_of_tampering_is_named() {
         ("DELETE FROM entry WHERE sequence IN (3, 4, 5)", vec![Finding::Missing { from: 3, to: 5 }]),
         ("DELETE FROM entry WHERE sequence > 8", vec![Finding::Head { counted: 10, found: 8 }]),
         ("UPDATE head SET count = 9", vec![Finding::Head { counted: 9, found: 10 }]),
-        (swap, vec![Finding::Displaced { entry: 4, says: 7 }, Finding::Unchained { entry: 5 }, Finding::Displaced { entry: 7, says: 4 }, Finding::Unchained { entry: 8 }]),
+        (
+            swap,
+            vec![
+                Finding::Displaced { entry: 4, says: 7 },
+                Finding::Unchained { entry: 5 },
+                Finding::Displaced { entry: 7, says: 4 },
+                Finding::Unchained { entry: 8 },
+            ],
+        ),
         ("UPDATE result SET json = replace(json, '20.005', '20.000') WHERE sequence = 5", vec![Finding::ResultChanged { entry: 5 }]),
         ("DELETE FROM result WHERE sequence = 5", vec![Finding::ResultMissing { entry: 5 }]),
         ("UPDATE document SET text = text || ' '", vec![Finding::BenchChanged { entry: 1 }]),
@@ -137,7 +148,12 @@ fn a_witness_outside_shows_what_the_chain_cannot() {
     let log = Log::read(&path).unwrap();
     let (fourth, sixth) = (log.entry(4).unwrap().listed.sha256, log.entry(6).unwrap().listed.sha256);
     drop(log);
-    tamper(&path, &format!("DELETE FROM entry WHERE sequence > 4; DELETE FROM result WHERE sequence > 4; UPDATE head SET count = 4, sha256 = '{fourth}'"));
+    tamper(
+        &path,
+        &format!(
+            "DELETE FROM entry WHERE sequence > 4; DELETE FROM result WHERE sequence > 4; UPDATE head SET count = 4, sha256 = '{fourth}'"
+        ),
+    );
     let log = Log::read(&path).unwrap();
     assert_eq!(log.verify(None).unwrap().findings, [], "this is what a chain alone cannot show");
     assert_eq!(log.verify(Some(&fourth)).unwrap().expected_at, Some(4));

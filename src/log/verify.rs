@@ -1,11 +1,6 @@
 //! Whether the log is still what was written.
 
-use super::{
-    Entry, Log, LogError,
-    entry::NO_PREVIOUS,
-    schema::TABLES,
-    store,
-};
+use super::{Entry, Log, LogError, entry::NO_PREVIOUS, schema::TABLES, store};
 use crate::digest::sha256_hex;
 use rusqlite::Connection;
 use std::{
@@ -119,10 +114,16 @@ impl fmt::Display for Finding {
                 write!(f, "the last entries were removed: the log counts {counted}, {found} are there")
             }
             Self::Head { counted, found } => {
-                write!(f, "the head of the log was changed: it counts {counted} entries and does not name the last of the {found} that are there")
+                write!(
+                    f,
+                    "the head of the log was changed: it counts {counted} entries and does not name the last of the {found} that are there"
+                )
             }
             Self::Expected { sha256 } => {
-                write!(f, "no entry has the expected hash {sha256}: entries were removed or changed since it was noted, or it is of another log")
+                write!(
+                    f,
+                    "no entry has the expected hash {sha256}: entries were removed or changed since it was noted, or it is of another log"
+                )
             }
             Self::Guard { names } => write!(f, "what keeps the log from being changed was itself changed: {}", names.join(", ")),
         }

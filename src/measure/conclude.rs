@@ -3,7 +3,9 @@
 use super::{
     Inputs, MeasureError,
     look::Seen,
-    measurement::{FitSummary, Measurement, OrderRow, ParameterRow, ParameterUnit, PhotoSummary, ReciprocalView, RejectedSpot, SampleResult, ZeroOrder},
+    measurement::{
+        FitSummary, Measurement, OrderRow, ParameterRow, ParameterUnit, PhotoSummary, ReciprocalView, RejectedSpot, SampleResult, ZeroOrder,
+    },
     orders::Ordered,
     statement::kind_statement,
 };

@@ -39,7 +39,7 @@ pub struct Measurement {
 /// The sample's reciprocal lattice and what of it can reach the screen, in the plane of the sample as seen by someone who looks along the beam
 /// (first component to the right, second up).
 ///
-/// The order with reciprocal-lattice vector g propagates where |z_t + λ g| < 1: inside a circle of radius 1/λ about -z_t/λ, the Ewald limit.
+/// The order with reciprocal-lattice vector g propagates where `|z_t + λ g| < 1`: inside a circle of radius 1/λ about `-z_t/λ`, the Ewald limit.
 #[derive(Debug, Clone, PartialEq)]
 pub struct ReciprocalView {
     /// Wavelength at the sample in the first photo of the sample, m.

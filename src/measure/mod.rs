@@ -26,7 +26,8 @@ pub use crate::{
 pub use error::{MeasureError, Refusal};
 pub use look::{Inputs, PhotoFile};
 pub use measurement::{
-    FitSummary, KindStatement, Measurement, OrderRow, ParameterRow, ParameterUnit, PhotoSummary, ReciprocalView, RejectedSpot, SampleResult, ZeroOrder,
+    FitSummary, KindStatement, Measurement, OrderRow, ParameterRow, ParameterUnit, PhotoSummary, ReciprocalView, RejectedSpot,
+    SampleResult, ZeroOrder,
 };
 
 use crate::{

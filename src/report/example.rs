@@ -5,8 +5,8 @@ use crate::{
     bench::Mode,
     frames::{PixelCovariance, PixelPoint},
     measure::{
-        BudgetLine, FitSummary, KindStatement, LatticeKind, Measurement, OrderRow, ParameterRow, ParameterUnit, PhotoSummary, ReciprocalView, RejectedSpot,
-        SampleResult, Value, ZeroOrder,
+        BudgetLine, FitSummary, KindStatement, LatticeKind, Measurement, OrderRow, ParameterRow, ParameterUnit, PhotoSummary,
+        ReciprocalView, RejectedSpot, SampleResult, Value, ZeroOrder,
     },
     photo::Exif,
 };

@@ -71,7 +71,7 @@ pub fn json(measurement: &Measurement, context: &Context, program: &Program) -> 
 /// A refusal as JSON: nothing can honestly be said, and why.
 #[must_use]
 pub fn refused_json(code: &str, text: &str, context: &Context, program: &Program) -> String {
-    pretty(&ResultJson::Refused(Refused {
+    pretty(&ResultJson::Refused(Box::new(Refused {
         schema: SCHEMA,
         program,
         status: "refused",
@@ -79,7 +79,7 @@ pub fn refused_json(code: &str, text: &str, context: &Context, program: &Program
         reason: Remark { code, text: text.to_owned() },
         around: around(context),
         warnings: vec![],
-    }))
+    })))
 }
 
 fn around(context: &Context) -> Around<'_> {
@@ -100,7 +100,7 @@ enum ResultJson<'a> {
     /// A measurement.
     Measured(Box<Measured<'a>>),
     /// A refusal.
-    Refused(Refused<'a>),
+    Refused(Box<Refused<'a>>),
 }
 
 /// JSON Schema of the result, generated from the structs that are written; pretty-printed, ending with a line break.

@@ -83,7 +83,10 @@ pub(super) fn incapable(verdict: &Verdict) -> String {
         .iter()
         .filter_map(|judgement| Some((judgement.characteristic.name(pitches(verdict)), index(judgement)?)))
         .map(|(name, index)| {
-            let words = format!("{name}: T / (4 u) = {}, less than 4: measure with a smaller uncertainty, or agree on another rule.", significant(index, 2));
+            let words = format!(
+                "{name}: T / (4 u) = {}, less than 4: measure with a smaller uncertainty, or agree on another rule.",
+                significant(index, 2)
+            );
             paragraph("  ", &words, WIDTH)
         })
         .collect()
@@ -92,7 +95,10 @@ pub(super) fn incapable(verdict: &Verdict) -> String {
 #[cfg(test)]
 mod tests {
     use super::*;
-    use crate::{limits::{Limits, judge}, report::example};
+    use crate::{
+        limits::{Limits, judge},
+        report::example,
+    };
 
     fn text(limits: &str, rule: Rule) -> String {
         limits_text(Some(&judge(&Limits::parse(limits).unwrap(), rule, &example::plane().sample).unwrap()))

@@ -5,6 +5,7 @@
 mod budget_table;
 mod columns;
 mod context;
+mod control_svg;
 #[cfg(test)]
 mod example;
 mod html;
@@ -21,6 +22,7 @@ mod units;
 mod words;
 
 pub use context::{BenchText, Context, LogEntry, PhotoDigest, PhotoRole, Provenance};
+pub use control_svg::{ControlPoint, control_svg};
 pub use html::{Embeddable, Picture, embeddable, html_report, refused_html_report};
 pub use json::{Program, json, refused_json, result_schema};
 pub use orders_csv::orders_csv;

@@ -220,7 +220,8 @@ fn notes(measurement: &Measurement) -> String {
 
 /// The place in the log; with its hash a paper copy is a witness of the log.
 fn logged(context: &Context) -> String {
-    let line = |entry: &LogEntry| paragraph("Logged: ", &format!("entry {} of {}, SHA-256 {}", entry.entry, entry.log, entry.sha256), WIDTH);
+    let line =
+        |entry: &LogEntry| paragraph("Logged: ", &format!("entry {} of {}, SHA-256 {}", entry.entry, entry.log, entry.sha256), WIDTH);
     context.entry.as_ref().map(line).unwrap_or_default()
 }
 

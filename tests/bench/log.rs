@@ -1,5 +1,10 @@
 //! A log of 100,000 entries: listing a page, finding by sample and by day, verifying everything. `cargo bench --bench log`.
-#![allow(clippy::unwrap_used, missing_docs, reason = "a bench fails where it stands; criterion makes undocumented items")]
+#![allow(
+    clippy::unwrap_used,
+    clippy::print_stdout,
+    missing_docs,
+    reason = "a bench fails where it stands and says what it measured; criterion makes undocumented items"
+)]
 
 use criterion::{Criterion, criterion_group, criterion_main};
 use spotrule::log::{Draft, Filter, Log, Outcome};

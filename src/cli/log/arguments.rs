@@ -25,6 +25,11 @@ pub(super) enum LogCommand {
         after_help = "Example:\n  spotrule log verify book.db --expect-head 3f5a...\n\nThe hash is the one that a report or `measure` printed. Without a hash that was noted elsewhere nobody can tell\nwhether the whole log was written anew.\n\nExit code: 0 sound; 1 not; 2 cannot be read."
     )]
     Verify(VerifyArguments),
+    /// Draw a control chart of individuals and moving ranges
+    #[command(
+        after_help = "Example:\n  spotrule log chart book.db --sample \"reference grating\" --out chart.svg\n\nRefused measurements and corrected entries are left out. Exit code: 0 drawn; 1 too few readings."
+    )]
+    Chart(ChartArguments),
     /// Correct an entry by a new one that points to it
     #[command(after_help = "Example:\n  spotrule log correct book.db 12 --why \"sample 8 was in the holder\" --sample-name \"sample 8\"")]
     Correct(CorrectArguments),
@@ -129,6 +134,36 @@ pub(super) struct VerifyArguments {
     /// Also check the photos kept in this folder (measure --keep-photos)
     #[arg(long, value_name = "DIR")]
     pub(super) photos: Option<PathBuf>,
+}
+
+/// What a control chart shows.
+#[derive(Debug, Clone, Copy, PartialEq, Eq, ValueEnum)]
+pub(super) enum ChartedValue {
+    /// First (shortest) pitch
+    #[value(name = "pitch1", alias = "pitch")]
+    FirstPitch,
+    /// Second pitch
+    #[value(name = "pitch2")]
+    SecondPitch,
+    /// Lattice angle
+    Angle,
+}
+
+#[derive(Debug, Args)]
+pub(super) struct ChartArguments {
+    /// The log
+    pub(super) log: PathBuf,
+    #[command(flatten)]
+    pub(super) filter: FilterFlags,
+    /// What to chart
+    #[arg(long, value_enum, default_value = "pitch1")]
+    pub(super) value: ChartedValue,
+    /// The newest readings, at most this many
+    #[arg(long, value_name = "N", default_value_t = 100)]
+    pub(super) last: usize,
+    /// File to write
+    #[arg(long, value_name = "FILE.svg")]
+    pub(super) out: PathBuf,
 }
 
 #[derive(Debug, Args)]

@@ -43,7 +43,9 @@ fn bench_sha256(text: &str) -> Result<String, Failure> {
     }
     let hash = text.to_ascii_lowercase();
     if hash.is_empty() || hash.len() > 64 || !hash.bytes().all(|byte| byte.is_ascii_hexdigit()) {
-        return Err(Failure::Usage(format!("--bench {text}: neither a file nor the beginning of a SHA-256; `spotrule log show` prints the hash")));
+        return Err(Failure::Usage(format!(
+            "--bench {text}: neither a file nor the beginning of a SHA-256; `spotrule log show` prints the hash"
+        )));
     }
     Ok(hash)
 }

@@ -1,6 +1,7 @@
 //! `spotrule log`: looks into a log, checks it, adds to it.
 
 mod arguments;
+mod chart;
 mod filter;
 mod show;
 mod verify;
@@ -26,6 +27,7 @@ pub(super) fn run(arguments: &LogArguments) -> Result<ExitCode, Failure> {
         LogCommand::Show(arguments) => show::show(arguments),
         LogCommand::Export(arguments) => export(arguments),
         LogCommand::Verify(arguments) => verify::verify(arguments),
+        LogCommand::Chart(arguments) => chart::chart(arguments),
         LogCommand::Correct(arguments) => correct(arguments),
         LogCommand::Add(arguments) => add(arguments),
     }

@@ -43,7 +43,10 @@ fn full_hash(text: &str) -> Result<String, Failure> {
     if hash.len() == 64 && hash.bytes().all(|byte| byte.is_ascii_hexdigit()) {
         return Ok(hash);
     }
-    Err(Failure::Usage(format!("--expect-head {text}: a SHA-256 has 64 hexadecimal digits, this has {}; copy it whole", hash.chars().count())))
+    Err(Failure::Usage(format!(
+        "--expect-head {text}: a SHA-256 has 64 hexadecimal digits, this has {}; copy it whole",
+        hash.chars().count()
+    )))
 }
 
 /// Where a photo is kept: named by its hash, with the ending of its name.

@@ -3,10 +3,7 @@
 use super::{Picture, chart, embedded, figure};
 use crate::{
     measure::{Measurement, SampleResult},
-    report::{
-        concise, significant, units,
-        words::reason_counts,
-    },
+    report::{concise, significant, units, words::reason_counts},
 };
 use maud::{Markup, html};
 

@@ -86,7 +86,7 @@ fn head(title: &str, context: &Context, mode: Option<&str>) -> Markup {
         header {
             h1 { (title) }
             p class="sub" {
-                "Measured by laser diffraction" @if let Some(mode) = mode { " in " (mode) }
+                "By laser diffraction" @if let Some(mode) = mode { " in " (mode) }
                 @if let Some(provenance) = provenance { ", " (provenance.time) }
                 @if let Some(operator) = provenance.and_then(|provenance| provenance.operator.as_ref()) { ", by " (operator) }
                 ". " (NO_CERTIFICATE)

@@ -1,6 +1,10 @@
 //! The overlay as a picture small enough to be mailed within a page.
 
-use image::{ImageError, RgbImage, codecs::jpeg::JpegEncoder, imageops::{FilterType, resize}};
+use image::{
+    ImageError, RgbImage,
+    codecs::jpeg::JpegEncoder,
+    imageops::{FilterType, resize},
+};
 
 /// Widest picture in a page, px: 170 mm of paper at 240 dots per inch.
 const WIDEST: u32 = 1600;

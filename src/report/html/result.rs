@@ -55,7 +55,11 @@ fn verdict_box(verdict: &Verdict) -> Markup {
         Outcome::Outside => ("FAIL: outside the limits", "✗"),
         Outcome::Undecided => ("UNDECIDED: a limit lies within the uncertainty", "?"),
     };
-    let word = if verdict.outcome == Outcome::Undecided && !incapable(verdict).is_empty() { "UNDECIDED: the measurement is too coarse for this rule" } else { word };
+    let word = if verdict.outcome == Outcome::Undecided && !incapable(verdict).is_empty() {
+        "UNDECIDED: the measurement is too coarse for this rule"
+    } else {
+        word
+    };
     html! {
         div class={ "verdict " (verdict.outcome.name()) } {
             p { b { (sign) " " (word) } }

@@ -58,7 +58,7 @@ pub(super) fn reach(points: impl Iterator<Item = [f64; 2]>, least: f64) -> f64 {
     points.flatten().map(f64::abs).filter(|reach| reach.is_finite()).fold(least, f64::max) * 1.12
 }
 
-/// A number for an axis: as short as it can be.
+/// A number for an axis: as short as it can be. The plotter computes 0 with a rounding error.
 pub(super) fn tick(value: &f64) -> String {
-    crate::report::significant(*value, 3)
+    crate::report::significant((value * 1e9).round() / 1e9, 6)
 }

@@ -5,7 +5,11 @@ use crate::{
     measure::{Measurement, OrderRow, ReciprocalView},
     report::{significant, units::LINES_PER_MILLIMETRE},
 };
-use plotters::{element::PathElement, prelude::*, style::text_anchor::{HPos, Pos, VPos}};
+use plotters::{
+    element::PathElement,
+    prelude::*,
+    style::text_anchor::{HPos, Pos, VPos},
+};
 
 /// Most lattice points drawn along each direction from the zero order.
 const MOST_STEPS: i32 = 40;
@@ -22,11 +26,14 @@ pub(in crate::report::html) fn reciprocal(measurement: &Measurement) -> Option<C
     let orders: Vec<&OrderRow> = measurement.orders.iter().collect();
     let seen = orders.iter().filter_map(|order| place(view, order.h, order.k));
     let vectors = (0..view.vectors_per_m.len()).filter_map(|vector| place(view, i32::from(vector == 0), i32::from(vector == 1)));
-    let half = reach(seen.chain(vectors), 0.0);
-    if !(half > 0.0 && half.is_finite()) {
+    let orders_reach = reach(seen.chain(vectors), 0.0);
+    if !(orders_reach > 0.0 && orders_reach.is_finite()) {
         return None;
     }
     let limit = Limit::of(view)?;
+    // A limit not far outside the orders is shown whole; one far out would make the pattern a blot.
+    let whole = reach(limit.corners(), 0.0);
+    let half = if whole < 1.6 * orders_reach { whole } else { orders_reach };
     let drawing = svg(super::WIDTH, |area| draw(area, view, &orders, &limit, half))?;
     Some(Chart { svg: drawing, words: words(view, &orders, &limit, half) })
 }
@@ -64,11 +71,8 @@ fn place(view: &ReciprocalView, h: i32, k: i32) -> Option<[f64; 2]> {
 }
 
 fn draw(area: &super::Area<'_>, view: &ReciprocalView, orders: &[&OrderRow], limit: &Limit, half: f64) -> Drawn {
-    let mut chart = ChartBuilder::on(area)
-        .margin(8)
-        .x_label_area_size(44)
-        .y_label_area_size(58)
-        .build_cartesian_2d(-half..half, -half..half)?;
+    let mut chart =
+        ChartBuilder::on(area).margin(8).x_label_area_size(44).y_label_area_size(58).build_cartesian_2d(-half..half, -half..half)?;
     chart
         .configure_mesh()
         .disable_mesh()
@@ -83,7 +87,8 @@ fn draw(area: &super::Area<'_>, view: &ReciprocalView, orders: &[&OrderRow], lim
         .draw()?;
     if limit.is_in(half) {
         let circle: Vec<(f64, f64)> = limit.corners().map(|corner| (corner[0], corner[1])).collect();
-        chart.draw_series(circle.windows(2).map(|ends| PathElement::new(ends.to_vec(), VERMILION.stroke_width(2))))?;
+        let is_in = |ends: &&[(f64, f64)]| ends.iter().all(|(x, y)| x.abs() < half && y.abs() < half);
+        chart.draw_series(circle.windows(2).filter(is_in).map(|ends| PathElement::new(ends.to_vec(), VERMILION.stroke_width(2))))?;
     }
     draw_lattice(&mut chart, view, limit, half)?;
     draw_orders(&mut chart, view, orders)

@@ -32,11 +32,8 @@ pub(in crate::report::html) fn residuals(measurement: &Measurement) -> Option<Ch
 }
 
 fn draw(area: &super::Area<'_>, orders: &[(f64, &OrderRow)], farthest: f64, half: f64) -> Drawn {
-    let mut chart = ChartBuilder::on(area)
-        .margin(8)
-        .x_label_area_size(44)
-        .y_label_area_size(58)
-        .build_cartesian_2d(0.0..farthest, -half..half)?;
+    let mut chart =
+        ChartBuilder::on(area).margin(8).x_label_area_size(44).y_label_area_size(58).build_cartesian_2d(0.0..farthest, -half..half)?;
     chart
         .configure_mesh()
         .disable_x_mesh()

@@ -5,7 +5,10 @@ use crate::{
     measure::{BudgetLine, SampleResult},
     report::columns::shortened,
 };
-use plotters::{prelude::*, style::text_anchor::{HPos, Pos, VPos}};
+use plotters::{
+    prelude::*,
+    style::text_anchor::{HPos, Pos, VPos},
+};
 
 /// Bars that would be shorter than this are summed up in words.
 const SMALLEST: f64 = 0.005;
