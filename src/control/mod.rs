@@ -10,7 +10,7 @@ pub use rules::{Test, Violation};
 const D2: f64 = 2.0 * std::f64::consts::FRAC_2_SQRT_PI / 2.0;
 
 /// Upper limit of the moving range over its mean (D₄ for n = 2): 1 + 3 d₃/d₂ with d₃ = √(2 - 4/π).
-const D4: f64 = 3.266_531_951;
+const D4: f64 = 3.266_531_919_288_601;
 
 /// Fewest readings from which limits are computed; limits from fewer than 20 are provisional (common practice).
 pub const FEWEST: usize = 4;
@@ -84,8 +84,9 @@ mod tests {
     #[test]
     fn constants_of_the_tables() {
         let d3 = (2.0 - 4.0 / std::f64::consts::PI).sqrt();
-        assert!((D2 - 1.128).abs() < 5e-4 && (D4 - 3.267).abs() < 5e-4 && (3.0 / D2 - 2.660).abs() < 1e-3);
-        assert!((D4 - (1.0 + 3.0 * d3 / D2)).abs() < 1e-8, "{}", 1.0 + 3.0 * d3 / D2);
+        // The tables divide by the rounded d₂, which moves E₂ by 0.0013.
+        assert!((D2 - 1.128).abs() < 5e-4 && (D4 - 3.267).abs() < 5e-4 && (3.0 / D2 - 2.660).abs() < 2e-3);
+        assert!((D4 - (1.0 + 3.0 * d3 / D2)).abs() < 1e-12, "{}", 1.0 + 3.0 * d3 / D2);
     }
 
     #[test]

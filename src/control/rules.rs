@@ -112,7 +112,7 @@ mod tests {
         let near: Vec<f64> = (0..15).map(|i| [0.5, -0.5, -0.4][i % 3]).collect();
         assert_eq!(tests_failed(&near), [Test::Hugging]);
         assert_eq!(tests_failed(&near[..14]), []);
-        let far: Vec<f64> = (0..8).map(|i| if i % 3 == 0 { 1.5 } else { -1.5 }).collect();
+        let far: Vec<f64> = (0..8).map(|i| if i % 2 == 0 { 1.5 } else { -1.5 }).collect();
         assert_eq!(tests_failed(&far), [Test::Avoiding]);
         assert_eq!(tests_failed(&far[1..]), []);
     }

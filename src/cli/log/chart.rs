@@ -18,13 +18,12 @@ use std::{collections::BTreeSet, fmt::Write, process::ExitCode};
 /// Limits from fewer readings are provisional (common practice).
 const SETTLED: usize = 20;
 
+/// Entries read at a time.
+const PAGE: usize = 500;
+
 pub(super) fn chart(arguments: &ChartArguments) -> Result<ExitCode, Failure> {
-    let log = Log::read(&arguments.log)?;
-    let found = log.list(&filter::filter(&arguments.filter)?, usize::MAX)?;
-    let sound = found.iter().filter(|listed| listed.corrected_by.is_none());
-    let mut readings: Vec<(u64, &Reading)> =
-        sound.filter_map(|listed| Some((listed.entry.entry, charted(&listed.entry, arguments.value)?))).take(arguments.last).collect();
-    readings.reverse();
+    let found = newest(arguments)?;
+    let readings: Vec<(u64, &Reading)> = found.iter().filter_map(|entry| Some((entry.entry, charted(entry, arguments.value)?))).collect();
     let points: Vec<ControlPoint> =
         readings.iter().map(|(entry, reading)| ControlPoint { entry: *entry, value: reading.value, expanded: reading.expanded }).collect();
     let values: Vec<f64> = points.iter().map(|point| point.value).collect();
@@ -38,7 +37,7 @@ pub(super) fn chart(arguments: &ChartArguments) -> Result<ExitCode, Failure> {
     let svg = control_svg(&points, &chart, &quantity).ok_or_else(unwritable)?;
     files::write(&arguments.out, svg.as_bytes(), Existing::Replaced)?;
     files::print(&summary(&points, &chart, &quantity))?;
-    let samples: BTreeSet<&str> = found.iter().map(|listed| listed.entry.sample.as_str()).collect();
+    let samples: BTreeSet<&str> = found.iter().map(|entry| entry.sample.as_str()).collect();
     if samples.len() > 1 {
         files::print(&format!(
             "to note: {} names of samples among the entries; a chart means something for one sample: --sample\n",
@@ -46,6 +45,23 @@ pub(super) fn chart(arguments: &ChartArguments) -> Result<ExitCode, Failure> {
         ))?;
     }
     Ok(ExitCode::SUCCESS)
+}
+
+/// The newest entries that have the value and were not corrected, oldest first; page by page, so that a long log costs no more than a short one.
+fn newest(arguments: &ChartArguments) -> Result<Vec<Entry>, Failure> {
+    let log = Log::read(&arguments.log)?;
+    let mut wanted = filter::filter(&arguments.filter)?;
+    let mut entries = Vec::new();
+    while entries.len() < arguments.last {
+        let page = log.list(&wanted, PAGE)?;
+        let Some(oldest) = page.last() else { break };
+        wanted.below = Some(oldest.entry.entry);
+        let sound = page.into_iter().filter(|listed| listed.corrected_by.is_none()).map(|listed| listed.entry);
+        entries.extend(sound.filter(|entry| charted(entry, arguments.value).is_some()));
+    }
+    entries.truncate(arguments.last);
+    entries.reverse();
+    Ok(entries)
 }
 
 fn charted(entry: &Entry, value: ChartedValue) -> Option<&Reading> {
