@@ -45,7 +45,7 @@ pub(super) fn write(path: &Path, bytes: &[u8], existing: Existing) -> Result<(),
     write_with(path, existing, |out| out.write_all(bytes).map_err(unwritable))
 }
 
-/// As [`write`], for what is too long to be held in memory.
+/// As [`write()`], for what is too long to be held in memory.
 pub(super) fn write_with(path: &Path, existing: Existing, fill: impl FnOnce(&mut dyn Write) -> Result<(), Failure>) -> Result<(), Failure> {
     let unwritable = |cause| Failure::Unwritable { path: path.to_owned(), cause };
     if path.is_dir() {

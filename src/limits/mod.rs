@@ -1,6 +1,6 @@
 //! In: text such as `20.00 ± 0.05 um`, a decision rule, and a [`SampleResult`](crate::measure::SampleResult). Out: inside, outside or undecided, and
 //! how likely the true value conforms. Must never know: how the value was measured, how a verdict is shown.
-//! Start reading at [`Limits::parse`], then [`judge`].
+//! Start reading at [`Limits::parse`], then [`judge()`].
 
 mod error;
 mod judge;
