@@ -10,8 +10,9 @@ use proptest::prelude::*;
 use spotrule::{
     bench::{Bench, sections},
     calibration::{
-        self, Calibration, CalibrationError, Certificate, Kind, MadeFrom, MadePhoto, Posterior, Shows, TakenWith, UncertainValue, sha256,
+        self, Calibration, CalibrationError, Certificate, Kind, MadeFrom, MadePhoto, Posterior, Shows, TakenWith, UncertainValue,
     },
+    digest::sha256_hex,
     frames::PixelPoint,
     measure::{Inputs, PhotoFile, PointPair, calibrate, calibrate_camera, lens_from_points, measure},
     quantity::Quantity,
@@ -22,13 +23,13 @@ use std::path::{Path, PathBuf};
 /// A calibration with every key that a file can have.
 fn example() -> Calibration {
     let value = |name: &str, unit: &str, value: f64, u: f64| UncertainValue { name: name.to_owned(), unit: unit.to_owned(), value, u };
-    let photo = |file: &str, shows| MadePhoto { file: file.to_owned(), sha256: sha256(file.as_bytes()), shows };
+    let photo = |file: &str, shows| MadePhoto { file: file.to_owned(), sha256: sha256_hex(file.as_bytes()), shows };
     Calibration {
         kind: Kind::Bench,
         made_from: MadeFrom {
             program: "1.2.3".to_owned(),
             date: "2026-01-02T03:04:05Z".to_owned(),
-            bench_sha256: sha256(b"bench"),
+            bench_sha256: sha256_hex(b"bench"),
             photos: vec![photo("reference.jpg", Shows::Pattern), photo("odd \"name\" \\.jpg", Shows::Target)],
             certificates: vec![Certificate { of: "reference".to_owned(), pitch: "2.0000(5) µm".to_owned() }],
             sections: sections("[laser]\nwavelength = \"632.8(1) nm\"").unwrap(),

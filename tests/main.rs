@@ -26,6 +26,10 @@ mod spots_on_known_photos;
 mod truth;
 // a bench or a camera calibrated, saved, read back and used
 mod calibration;
+// the log under killed writers, full disks and closed folders
+mod log;
+// the published schemas against the types and against what is written
+mod schema;
 // the program as a user and a script meet it
 mod cli;
 // what must not matter: turned photos, units of length

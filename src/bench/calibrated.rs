@@ -4,7 +4,8 @@ use super::{
     Bench, BenchError, Pattern, Sample,
     tree::{Content, Node, Table},
 };
-use crate::calibration::{self, Calibration, CalibrationError, Kind, Shows, sha256};
+use crate::calibration::{self, Calibration, CalibrationError, Kind, Shows};
+use crate::digest::sha256_hex;
 
 /// The sections that a calibration stands for. Samples and photos are the next measurement's own.
 const STANDS_FOR: [&str; 5] = ["laser", "air", "screen", "target", "camera"];
@@ -18,7 +19,7 @@ pub fn sections(text: &str) -> Result<Vec<(String, String)>, BenchError> {
 }
 
 fn sections_of(root: &Table) -> Vec<(String, String)> {
-    STANDS_FOR.iter().map(|name| ((*name).to_owned(), sha256(root.get(name).map_or(String::new(), plain).as_bytes()))).collect()
+    STANDS_FOR.iter().map(|name| ((*name).to_owned(), sha256_hex(root.get(name).map_or(String::new(), plain).as_bytes()))).collect()
 }
 
 /// A value as text of one form, whatever the file looks like.

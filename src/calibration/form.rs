@@ -5,7 +5,7 @@
 
 use serde::Deserialize;
 
-use super::sha256;
+use crate::digest::sha256_hex;
 
 /// Name and version of the format.
 pub(super) const FORMAT: &str = "spotrule.calibration/1";
@@ -112,7 +112,7 @@ impl Form {
 
     /// The checksum that belongs to the content.
     pub(super) fn right_checksum(&self) -> String {
-        sha256(self.body().as_bytes())
+        sha256_hex(self.body().as_bytes())
     }
 }
 

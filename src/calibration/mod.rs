@@ -5,13 +5,11 @@
 
 mod error;
 mod form;
-mod hash;
 mod read;
 mod record;
 mod write;
 
 pub use error::CalibrationError;
-pub use hash::sha256;
 pub use read::read;
 pub use record::{Calibration, Certificate, Kind, MadeFrom, MadePhoto, Posterior, Shows, TakenWith, UncertainValue};
 pub use write::text;

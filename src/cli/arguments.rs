@@ -1,5 +1,6 @@
 //! The command line: every command and flag with its help text.
 
+use super::log::LogArguments;
 use clap::{Args, CommandFactory, Parser, Subcommand, ValueEnum};
 use std::path::PathBuf;
 
@@ -30,6 +31,11 @@ pub(super) enum Command {
         after_help = "Example:\n  spotrule target --paper a4 --pitch 10 --out target.pdf\n\nPrint at 100 %, then measure the print with a steel rule in both directions: printers scale by 0.1 to 0.5 %."
     )]
     Target(TargetArguments),
+    /// Look into a log of measurements, check it, add to it
+    #[command(
+        after_help = "Examples:\n  spotrule measure pattern.jpg --log book.db --operator \"A. Person\"\n  spotrule log list book.db\n  spotrule log verify book.db"
+    )]
+    Log(LogArguments),
     /// Draw the photos of an invented bench, with the truth behind them
     #[command(after_help = "Example:\n  spotrule render --demo embossed-film --out my-demo")]
     Render(super::render::RenderArgs),
@@ -52,7 +58,11 @@ const MEASURE_EXAMPLES: &str = "Examples:
 Quantities carry a unit and say how sure they are: 812.0(8) mm means a standard uncertainty of 0.8 mm;
 also \"812.0 ± 1.6 mm (k=2)\", \"812 ± 2 mm (limits)\", \"632.8 nm (exact)\".
 
-Exit code: 0 measured; 1 refused (nothing can honestly be said); 2 wrong use or unreadable input.";
+Limits: \"20.00 ± 0.05 um\", \"19.95 .. 20.05 um\", \"<= 20.05 um\", \"pitch 1: ...; pitch 2: ...; angle: 90.0 ± 0.2 deg\".
+Rules: guarded (guard band U: sure verdicts or undecided), simple (the value alone decides), shared (as simple, if T/(4u) >= 4).
+
+Exit code: 0 measured (and inside the limits, where limits were given); 1 refused (nothing can honestly be said);
+2 wrong use or unreadable input; 3 measured, outside the limits; 4 measured, undecided (a limit lies within the uncertainty).";
 
 #[derive(Debug, Args)]
 pub(super) struct MeasureArguments {
@@ -73,9 +83,23 @@ pub(super) struct MeasureArguments {
     /// Seed of the Monte Carlo
     #[arg(long, value_name = "N", default_value_t = 1, requires = "trials")]
     pub(super) seed: u64,
+    /// Write a report to hand on: one HTML file with the overlay, charts and everything that is needed to repeat the measurement
+    #[arg(long, value_name = "FILE.html")]
+    pub(super) report: Option<PathBuf>,
+    /// Write the table of orders
+    #[arg(long, value_name = "FILE.csv")]
+    pub(super) orders: Option<PathBuf>,
+    /// Limits to judge the result by, e.g. "20.00 ± 0.05 um"
+    #[arg(long, value_name = "LIMITS", allow_hyphen_values = true)]
+    pub(super) limits: Option<String>,
+    /// Decision rule: guarded, simple or shared
+    #[arg(long, value_name = "RULE", default_value = "guarded")]
+    pub(super) rule: String,
     /// Print nothing but errors
     #[arg(long)]
     pub(super) quiet: bool,
+    #[command(flatten, next_help_heading = "Record")]
+    pub(super) record: RecordFlags,
     #[command(flatten, next_help_heading = "Bench, instead of or over the bench file")]
     pub(super) bench_flags: BenchFlags,
 }
@@ -148,6 +172,26 @@ pub(super) struct CalibrateCameraArguments {
     /// Print nothing but errors
     #[arg(long)]
     pub(super) quiet: bool,
+}
+
+/// What the record of a measurement says beside the result.
+#[derive(Debug, Args)]
+pub(super) struct RecordFlags {
+    /// Name of this sample in result, report and log, instead of the one in the bench file
+    #[arg(long, value_name = "TEXT")]
+    pub(super) sample_name: Option<String>,
+    /// Who measures
+    #[arg(long, value_name = "TEXT")]
+    pub(super) operator: Option<String>,
+    /// The operator's words, for result, report and log
+    #[arg(long, value_name = "TEXT")]
+    pub(super) remark: Option<String>,
+    /// Append the result, or the refusal, to this log; made where there is none
+    #[arg(long, value_name = "FILE.db")]
+    pub(super) log: Option<PathBuf>,
+    /// Keep the photos in this folder, named by their SHA-256
+    #[arg(long, value_name = "DIR", requires = "log")]
+    pub(super) keep_photos: Option<PathBuf>,
 }
 
 /// Everything that a quick look needs, each written as in the bench file.

@@ -10,7 +10,8 @@ use super::{
 use crate::{
     Error,
     bench::{Bench, BenchError, sections},
-    calibration::{self, Calibration, sha256},
+    calibration::{self, Calibration},
+    digest::sha256_hex,
     measure::{Inputs, calibrate},
     report,
 };
@@ -43,12 +44,12 @@ fn bench(arguments: &CalibrateBenchArguments) -> Result<ExitCode, Failure> {
     let (mut measurement, mut calibration) =
         calibrate(&inputs, &bench).map_err(|failed| Failure::Measurement { about: failed.file, error: failed.error })?;
     measurement.notes.splice(0..0, notes);
-    calibration.made_from.bench_sha256 = sha256(text.as_bytes());
+    calibration.made_from.bench_sha256 = sha256_hex(text.as_bytes());
     calibration.made_from.sections = sections(&text).map_err(named)?;
     stamp(&mut calibration);
     files::write(&arguments.out, calibrated(&text, &calibration).as_bytes(), existing)?;
     if !arguments.quiet {
-        files::print(&report::text(&measurement))?;
+        files::print(&report::text(&measurement, &report::Context::default()))?;
         files::print(&report::calibration_text(&calibration, &arguments.out.display().to_string()))?;
     }
     Ok(ExitCode::SUCCESS)

@@ -23,7 +23,7 @@ const REMARKS: &str =
 pub(super) fn run(arguments: &CalibrateCameraArguments) -> Result<ExitCode, Failure> {
     let outcome = camera(arguments);
     if let (Err(failure), Some(path)) = (&outcome, &arguments.json) {
-        let text = report::refused_json(failure.code(), &failure.to_string(), &Program::this());
+        let text = report::refused_json(failure.code(), &failure.to_string(), &report::Context::default(), &Program::this());
         if path.as_os_str() == "-" { files::print(&text)? } else { files::write(path, text.as_bytes(), Existing::Replaced)? }
     }
     outcome

@@ -8,9 +8,12 @@ mod calibrate_camera;
 mod completions;
 mod failure;
 mod files;
+mod log;
 mod measure;
 mod new;
 mod progress;
+mod provenance;
+mod record;
 mod render;
 mod target;
 
@@ -33,6 +36,7 @@ pub fn run() -> ExitCode {
         Command::Calibrate(arguments) => calibrate::run(&arguments),
         Command::New(arguments) => new::run(&arguments),
         Command::Target(arguments) => target::run(&arguments),
+        Command::Log(arguments) => log::run(&arguments),
         Command::Render(arguments) => render::run(&arguments),
         Command::Completions(arguments) => completions::shell(&arguments),
         Command::Manual(arguments) => completions::manual(&arguments),

@@ -6,9 +6,8 @@ use super::{
 };
 use crate::{
     bench::{Bench, Target, TargetKind},
-    calibration::{
-        Calibration, CalibrationError, Certificate, Kind, MadeFrom, MadePhoto, Posterior, Shows, TakenWith, UncertainValue, sha256,
-    },
+    calibration::{Calibration, CalibrationError, Certificate, Kind, MadeFrom, MadePhoto, Posterior, Shows, TakenWith, UncertainValue},
+    digest::sha256_hex,
     fit::{Fit, Parameter},
     math::gum::correlation,
     measure::PhotoFile,
@@ -78,7 +77,7 @@ pub(super) fn posterior(
 }
 
 pub(super) fn made_photos<'a>(files: &'a [PhotoFile<'a>], shows: Shows) -> impl Iterator<Item = MadePhoto> + 'a {
-    files.iter().map(move |file| MadePhoto { file: file.name.to_owned(), sha256: sha256(file.bytes), shows })
+    files.iter().map(move |file| MadePhoto { file: file.name.to_owned(), sha256: sha256_hex(file.bytes), shows })
 }
 
 pub(super) fn taken_with(size_px: [usize; 2], exif: &Exif) -> TakenWith {

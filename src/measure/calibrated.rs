@@ -10,7 +10,8 @@ use super::{
 use crate::{
     Error, Note,
     bench::Bench,
-    calibration::{Calibration, CalibrationError, Posterior, Shows, UncertainValue, sha256},
+    calibration::{Calibration, CalibrationError, Posterior, Shows, UncertainValue},
+    digest::sha256_hex,
     fit::{CorrelatedPrior, Entry, Layout, Marginal, Parameter, Prior, Source, camera_at, setup::LensKnowledge},
     frames::PixelPoint,
     optics::Camera,
@@ -182,7 +183,7 @@ fn own_evidence(calibration: &Calibration, inputs: &Inputs<'_>, bench: &Bench) -
         return Err(CalibrationError::CameraMoved { what: format!("[[photo]] {} names", photo.file) }.into());
     }
     for file in &inputs.patterns {
-        let hash = sha256(file.bytes);
+        let hash = sha256_hex(file.bytes);
         if calibration.made_from.photos.iter().any(|photo| photo.shows == Shows::Pattern && photo.sha256 == hash) {
             return Err(super::Refusal { file: Some(file.name.to_owned()), error: Box::new(CalibrationError::SamePhoto.into()) });
         }

@@ -4,7 +4,9 @@ use super::{
     Inputs, MeasureError,
     fitted::Fitted,
     look::Seen,
-    measurement::{FitSummary, Measurement, OrderRow, ParameterRow, ParameterUnit, PhotoSummary, RejectedSpot, SampleResult, ZeroOrder},
+    measurement::{
+        FitSummary, Measurement, OrderRow, ParameterRow, ParameterUnit, PhotoSummary, ReciprocalView, RejectedSpot, SampleResult, ZeroOrder,
+    },
     openness,
     orders::Ordered,
     statement::kind_statement,
@@ -14,6 +16,7 @@ use crate::{
     budget::{self, Value},
     fit::{Cell, Derived, Fit, Parameter, PrintPlace, Prior, Source, cell},
     frames::{PixelCovariance, PixelPoint},
+    optics::{Attitude, zero_order_in_sample_plane},
 };
 
 /// Gathers the result of a solved problem.
@@ -40,6 +43,7 @@ pub(super) fn conclude(fitted: &Fitted<'_>, bench: &Bench) -> Result<Measurement
         photos: photo_summaries(inputs, seen, fit),
         mode: bench.samples[wanted].mode,
         trials: None,
+        reciprocal: reciprocal_view(fit, photo),
         notes: notes.clone(),
     })
 }
@@ -123,6 +127,24 @@ fn zero_order(fit: &Fit, photo: usize, orders: &[OrderRow]) -> Result<ZeroOrder,
     let predicted = fit.joint.predict(&fit.joint.values(), photo, &[(0, 0)]);
     let [x_px, y_px] = predicted[0].ok_or(MeasureError::NoPose)?;
     Ok(ZeroOrder { at: PixelPoint { x_px, y_px }, seen })
+}
+
+/// Right is -x for someone who looks along the beam (docs/conventions.md).
+fn reciprocal_view(fit: &Fit, photo: usize) -> ReciprocalView {
+    let layout = &fit.joint.layout;
+    let (sample, laser) = (fit.joint.shape.photos[photo].sample, fit.joint.shape.photos[photo].laser);
+    let value = |parameter| layout.value(parameter).unwrap_or(0.0);
+    let seen = |[x, y]: [f64; 2]| [-x, y];
+    let attitude = Attitude::turned([0, 1].map(|axis| value(Parameter::Incidence { sample, axis })));
+    let vector = |vector: usize| {
+        let component = |axis| layout.value(Parameter::Lattice { sample, vector, axis });
+        Some(seen([component(0)?, component(1)?]))
+    };
+    ReciprocalView {
+        wavelength_m: value(Parameter::Wavelength { laser }),
+        zero_order: seen(zero_order_in_sample_plane(&attitude)),
+        vectors_per_m: [vector(0), vector(1)].into_iter().flatten().collect(),
+    }
 }
 
 fn summary(fit: &Fit) -> FitSummary {

@@ -34,7 +34,8 @@ pub use error::{MeasureError, Refusal};
 pub use lens::{CameraCalibration, PointPair, ViewSummary, calibrate_camera, lens_from_points};
 pub use look::{Inputs, PhotoFile};
 pub use measurement::{
-    FitSummary, KindStatement, Measurement, OrderRow, ParameterRow, ParameterUnit, PhotoSummary, RejectedSpot, SampleResult, ZeroOrder,
+    FitSummary, KindStatement, Measurement, OrderRow, ParameterRow, ParameterUnit, PhotoSummary, ReciprocalView, RejectedSpot,
+    SampleResult, ZeroOrder,
 };
 pub use trials::{TrialOptions, Trials};
 

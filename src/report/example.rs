@@ -5,8 +5,8 @@ use crate::{
     bench::Mode,
     frames::{PixelCovariance, PixelPoint},
     measure::{
-        BudgetLine, FitSummary, KindStatement, LatticeKind, Measurement, OrderRow, ParameterRow, ParameterUnit, PhotoSummary, RejectedSpot,
-        SampleResult, Value, ZeroOrder,
+        BudgetLine, FitSummary, KindStatement, LatticeKind, Measurement, OrderRow, ParameterRow, ParameterUnit, PhotoSummary,
+        ReciprocalView, RejectedSpot, SampleResult, Value, ZeroOrder,
     },
     photo::Exif,
 };
@@ -32,6 +32,11 @@ pub(super) fn plane() -> Measurement {
         photos: vec![photo()],
         mode: Mode::Transmission,
         trials: None,
+        reciprocal: ReciprocalView {
+            wavelength_m: 632.82e-9,
+            zero_order: [0.02, -0.01],
+            vectors_per_m: vec![[281_958.0, -61_690.0], [193_840.0, 213_880.0]],
+        },
         notes: vec![Note::ToneCurveAssumed],
     }
 }
@@ -48,6 +53,7 @@ pub(super) fn line() -> Measurement {
         notes: vec![],
         mode: Mode::Reflection,
         trials: None,
+        reciprocal: ReciprocalView { wavelength_m: 632.82e-9, zero_order: [0.5, 0.0], vectors_per_m: vec![[599_984.0, 0.0]] },
         ..plane()
     }
 }

@@ -11,6 +11,7 @@ use crate::{
     math::{count, monte_carlo::MonteCarlo},
     measure::{Measurement, Trials, Value},
 };
+use schemars::JsonSchema;
 use serde::Serialize;
 
 /// Every value with its name, unit, linear result and distribution.
@@ -61,13 +62,13 @@ fn explanation(trials: &Trials) -> String {
 }
 
 /// The trials in the JSON result; the interval in the unit of the value.
-#[derive(Serialize)]
+#[derive(Serialize, JsonSchema)]
 pub(super) struct TrialsJson {
     seed: u64,
     values: Vec<DrawnJson>,
 }
 
-#[derive(Serialize)]
+#[derive(Serialize, JsonSchema)]
 struct DrawnJson {
     name: String,
     unit: &'static str,
