@@ -5,8 +5,30 @@ use rand_chacha::ChaCha8Rng;
 
 /// Bytes and words that readers treat in a special way.
 const WORDS: [&[u8]; 24] = [
-    b"\xff\xd8", b"\xff\xc2", b"\xff\xda", b"\xff\xd9", b"II*\0", b"MM\0*", b"IHDR", b"IDAT", b"Exif\0\0", b"\xff\xff\xff\xff", b"\0\0\0\0",
-    b"\x7f\xff\xff\xff", b"(", b")", b"\xc2\xb1", b"(k=2)", b"(limits)", b"NaN", b"1e999", b"-0", b"[[photo]]", b" = ", b"\"", b"\n",
+    b"\xff\xd8",
+    b"\xff\xc2",
+    b"\xff\xda",
+    b"\xff\xd9",
+    b"II*\0",
+    b"MM\0*",
+    b"IHDR",
+    b"IDAT",
+    b"Exif\0\0",
+    b"\xff\xff\xff\xff",
+    b"\0\0\0\0",
+    b"\x7f\xff\xff\xff",
+    b"(",
+    b")",
+    b"\xc2\xb1",
+    b"(k=2)",
+    b"(limits)",
+    b"NaN",
+    b"1e999",
+    b"-0",
+    b"[[photo]]",
+    b" = ",
+    b"\"",
+    b"\n",
 ];
 
 /// Inputs longer than this are cut.
