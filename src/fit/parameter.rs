@@ -45,8 +45,13 @@ pub enum Parameter {
     },
     /// Turn of the print against the bench's horizontal, rad.
     PrintTurn,
-    /// Distance of neighbouring dots of the target, m.
+    /// Distance of neighbouring dots or lines of the target, m.
     TargetPitch,
+    /// Width (`axis` 0, along X) or height (1, along Y) of a sheet of paper, m.
+    SheetSide {
+        /// X or Y.
+        axis: usize,
+    },
     /// Natural logarithm of the focal length in px: a factor is what is known of it, and it can never reach zero.
     LogFocalLength,
     /// Principal point, px.

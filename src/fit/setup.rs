@@ -101,9 +101,16 @@ pub fn add_camera(layout: &mut Layout, lens: &LensKnowledge, views: &[ViewStart]
     }
 }
 
-/// Adds the pitch of the printed target.
+/// Adds the distance of the dots or lines of the target.
 pub fn add_target_pitch(layout: &mut Layout, pitch_m: Quantity) {
     layout.add(stated(Parameter::TargetPitch, pitch_m, Source::TargetPitch));
+}
+
+/// Adds width and height of a sheet of paper.
+pub fn add_sheet_sides(layout: &mut Layout, sides_m: [Quantity; 2]) {
+    for (axis, side_m) in sides_m.into_iter().enumerate() {
+        layout.add(stated(Parameter::SheetSide { axis }, side_m, Source::SheetSize));
+    }
 }
 
 /// Where the zero order falls on the print, as a start value.

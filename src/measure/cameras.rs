@@ -2,14 +2,15 @@
 
 use super::{
     MeasureError,
-    look::Seen,
+    look::{Print, Seen},
+    sheet::{SheetView, sheet_view, slide},
     view::{disc_centroid_offset, lens_knowledge, pose_from_homography, square_on_pose},
 };
 use crate::{
     Error,
-    bench::{Bench, FocalLength, Target, TargetKind},
+    bench::{Bench, FocalLength, SheetFormat, Target, TargetKind},
     fit::{
-        Joint, Layout, Outliers, Parameter, PrintObservation, PrintPlace, Shape, approach,
+        Joint, Layout, Outliers, Parameter, PrintObservation, PrintPlace, Shape, Sharpness, approach,
         setup::{self, LensKnowledge, ViewStart},
     },
     frames::{PixelCovariance, PixelPoint},
@@ -30,6 +31,8 @@ pub(super) struct Cameras {
     pub(super) view_of_photo: Vec<usize>,
     /// Whether a print or marks fix the plane of the screen.
     pub(super) screen_known: bool,
+    /// Width and height of the sheet as the format tells; where there is none, nothing.
+    pub(super) sheet_sides_m: Option<[Quantity; 2]>,
 }
 
 /// Marks and target dots that make up one view.
@@ -37,6 +40,8 @@ struct View {
     start: ViewStart,
     prints: Vec<PrintObservation>,
     reading: Option<Reading>,
+    /// Width and height of the sheet that it shows.
+    sheet_sides_m: Option<[Quantity; 2]>,
 }
 
 /// Sets up all views.
@@ -47,7 +52,8 @@ pub(super) fn cameras(seen: &Seen, bench: &Bench, targets: &[&str]) -> Result<Ca
     let views = match bench.target.as_ref() {
         Some(Target { kind: TargetKind::Dots { pitch_m, .. }, .. }) => dot_views(seen, *pitch_m, &lens)?,
         Some(Target { kind: TargetKind::Marks { marks, u_px }, .. }) => vec![mark_view(marks, *u_px, &lens)?],
-        Some(_) => return Err(MeasureError::TargetKindNotRead.into()),
+        Some(Target { kind: TargetKind::Sheet { format, .. }, .. }) => sheet_views(seen, *format, &lens)?,
+        Some(Target { kind: TargetKind::Ruling { .. }, .. }) => return Err(MeasureError::NoPose.into()),
         None => vec![bare_view(seen, bench, &lens)],
     };
     let screen_known = bench.target.is_some();
@@ -58,6 +64,7 @@ pub(super) fn cameras(seen: &Seen, bench: &Bench, targets: &[&str]) -> Result<Ca
         prints: views.iter().flat_map(|view| view.prints.iter().copied()).collect(),
         view_of_photo,
         screen_known,
+        sheet_sides_m: views.first().and_then(|view| view.sheet_sides_m),
     };
     setup::add_camera(&mut cameras.layout, &lens, &views.iter().map(|view| view.start).collect::<Vec<_>>());
     if screen_known {
@@ -66,14 +73,21 @@ pub(super) fn cameras(seen: &Seen, bench: &Bench, targets: &[&str]) -> Result<Ca
     Ok(cameras)
 }
 
-/// Solves the views from their prints alone; twice where dots have to be corrected for perspective.
+/// Solves the views from their prints alone; twice where dots have to be corrected for perspective, and where points of edges have to be
+/// brought to their places along the edge.
 fn settle(cameras: &mut Cameras, bench: &Bench, views: &[View]) -> Result<(), Error> {
-    let outliers = if views.iter().all(|view| view.reading.is_some()) { Outliers::Rejected } else { Outliers::Kept };
+    let read = |view: &View| view.reading.is_some() || view.sheet_sides_m.is_some();
+    let outliers = if views.iter().all(read) { Outliers::Rejected } else { Outliers::Kept };
     let mut pitch_m = None;
     if let Some(Target { kind: TargetKind::Dots { pitch_m: pitch, .. }, .. }) = &bench.target {
         pitch_m = Some(pitch.value);
         // Alone, a print cannot tell its own pitch from the distance of the camera.
         setup::add_target_pitch(&mut cameras.layout, Quantity { u: 0.0, ..*pitch });
+    }
+    if let Some([width, height]) = cameras.sheet_sides_m {
+        // Nor its own size; the shape is known as well as both sides together.
+        let u = (height.value / width.value * width.u).hypot(height.u);
+        setup::add_sheet_sides(&mut cameras.layout, [Quantity { u: 0.0, ..width }, Quantity { u, ..height }]);
     }
     let uncorrected = cameras.prints.clone();
     for pass in 0..2 {
@@ -90,6 +104,12 @@ fn settle(cameras: &mut Cameras, bench: &Bench, views: &[View]) -> Result<(), Er
         let joint = approach(joint, outliers)?;
         cameras.layout = joint.layout.clone();
         cameras.prints = joint.prints.clone();
+        if let Some(sides_m) = cameras.sheet_sides_m {
+            for view in 0..views.len() {
+                slide(&mut cameras.prints, view, &joint.camera(&joint.values(), view), sides_m.map(|side| side.value));
+            }
+            continue;
+        }
         let (Some(pitch_m), 0) = (pitch_m, pass) else { break };
         for (print, seen) in cameras.prints.iter_mut().zip(&uncorrected) {
             let camera = joint.camera(&joint.values(), print.view);
@@ -135,16 +155,14 @@ fn lens(seen: &Seen, bench: &Bench) -> LensKnowledge {
 
 /// Photos share the view of the bench file's one target photo unless they name their own, or carry their dots themselves.
 fn views_of_photos(bench: &Bench, photos: usize, targets: &[&str]) -> Vec<usize> {
-    let dots_in_pattern = matches!(bench.target.as_ref().map(|target| &target.kind), Some(TargetKind::Dots { photo: None, .. }));
+    let target_in_pattern = matches!(bench.target.as_ref().map(|target| &target.kind), Some(TargetKind::Dots { photo: None, .. } | TargetKind::Sheet { photo: None, .. } | TargetKind::Ruling { photo: None, .. }));
     let own =
         |photo: usize| bench.photos.get(photo).and_then(|p| p.target.as_deref()).and_then(|name| targets.iter().position(|t| *t == name));
-    (0..photos).map(|photo| if dots_in_pattern { photo } else { own(photo).unwrap_or(0) }).collect()
+    (0..photos).map(|photo| if target_in_pattern { photo } else { own(photo).unwrap_or(0) }).collect()
 }
 
 fn dot_views(seen: &Seen, pitch_m: Quantity, lens: &LensKnowledge) -> Result<Vec<View>, Error> {
-    let in_pattern = seen.patterns.iter().filter_map(|pattern| pattern.dots.as_ref());
-    let readings: Vec<&Reading> =
-        if seen.targets.is_empty() { in_pattern.collect() } else { seen.targets.iter().map(|t| &t.reading).collect() };
+    let readings: Vec<&Reading> = prints(seen).into_iter().filter_map(|print| if let Print::Dots(dots) = print { Some(dots) } else { None }).collect();
     let view = |(number, reading): (usize, &&Reading)| {
         let h = reading.pixel_from_pitches;
         let pixel_from_pitches = Matrix3::from_fn(|row, column| h[row][column]);
@@ -153,13 +171,28 @@ fn dot_views(seen: &Seen, pitch_m: Quantity, lens: &LensKnowledge) -> Result<Vec
         let print = |dot: &target::Dot| PrintObservation {
             view: number,
             at: dot.at,
-            covariance: dot.covariance,
+            sharpness: Sharpness::Point(dot.covariance),
             place: PrintPlace::Pitches([f64::from(dot.index.0), f64::from(dot.index.1)]),
             weight: 1.0,
         };
-        Ok(View { start, prints: reading.dots.iter().map(print).collect(), reading: Some((*reading).clone()) })
+        Ok(View { start, prints: reading.dots.iter().map(print).collect(), reading: Some((*reading).clone()), sheet_sides_m: None })
     };
     readings.iter().enumerate().map(view).collect()
+}
+
+/// What was read of the target, view by view.
+fn prints(seen: &Seen) -> Vec<&Print> {
+    let in_pattern = seen.patterns.iter().filter_map(|pattern| pattern.print.as_ref());
+    if seen.targets.is_empty() { in_pattern.collect() } else { seen.targets.iter().map(|target| &target.print).collect() }
+}
+
+fn sheet_views(seen: &Seen, format: SheetFormat, lens: &LensKnowledge) -> Result<Vec<View>, Error> {
+    let outlines = prints(seen).into_iter().filter_map(|print| if let Print::Sheet(outline) = print { Some(outline) } else { None });
+    let view = |(number, outline)| {
+        let SheetView { start, prints, sides_m } = sheet_view(number, outline, format, lens)?;
+        Ok(View { start, prints, reading: None, sheet_sides_m: Some(sides_m) })
+    };
+    outlines.enumerate().map(view).collect()
 }
 
 fn mark_view(marks: &[(PixelPoint, crate::frames::TargetPoint)], u_px: f64, lens: &LensKnowledge) -> Result<View, Error> {
@@ -170,11 +203,11 @@ fn mark_view(marks: &[(PixelPoint, crate::frames::TargetPoint)], u_px: f64, lens
     let print = |(px, mm): &(PixelPoint, crate::frames::TargetPoint)| PrintObservation {
         view: 0,
         at: *px,
-        covariance: PixelCovariance::isotropic(u_px),
+        sharpness: Sharpness::Point(PixelCovariance::isotropic(u_px)),
         place: PrintPlace::Metres([mm.x_m, mm.y_m]),
         weight: 1.0,
     };
-    Ok(View { start, prints: marks.iter().map(print).collect(), reading: None })
+    Ok(View { start, prints: marks.iter().map(print).collect(), reading: None, sheet_sides_m: None })
 }
 
 /// Without print: a camera square-on before the brightest spot, at a distance that the scale or the throw suggests.
@@ -185,7 +218,7 @@ fn bare_view(seen: &Seen, bench: &Bench, lens: &LensKnowledge) -> View {
         Some(scale) => lens.focal_px * scale.distance_m.value / scale.points[0].distance_px(scale.points[1]),
         None => 3.0 * bench.screen.throw_m.map_or(super::GAUGE_THROW_M, |throw| throw.value),
     };
-    View { start: square_on_pose(lens, origin, distance_m), prints: vec![], reading: None }
+    View { start: square_on_pose(lens, origin, distance_m), prints: vec![], reading: None, sheet_sides_m: None }
 }
 
 impl Cameras {

@@ -208,6 +208,7 @@ pub(super) fn described(bench: &Bench, parameter: Parameter) -> (String, Paramet
         Parameter::ZeroOrderOnPrint { axis } => (format!("zero order on target {}", ["X", "Y"][axis.min(1)]), ParameterUnit::Length),
         Parameter::PrintTurn => ("target turn".to_owned(), ParameterUnit::Angle),
         Parameter::TargetPitch => ("target pitch".to_owned(), ParameterUnit::Length),
+        Parameter::SheetSide { axis } => (["sheet width", "sheet height"][axis.min(1)].to_owned(), ParameterUnit::Length),
         Parameter::LogFocalLength => ("focal length".to_owned(), ParameterUnit::Pixel),
         Parameter::PrincipalPoint { axis } => (format!("principal point {}", axis_name(axis)), ParameterUnit::Pixel),
         Parameter::RadialDistortion { term } => (format!("distortion k{}", term + 1), ParameterUnit::Number),

@@ -14,6 +14,7 @@ mod openness;
 mod orders;
 mod rough;
 mod scan;
+mod sheet;
 mod statement;
 mod strain;
 mod strays;

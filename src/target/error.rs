@@ -70,6 +70,26 @@ pub enum TargetError {
          a printed face towards the camera cannot look like this: undo the mirroring of the photo, or turn the print's face to the camera"
     )]
     Mirrored,
+    /// No bright quadrilateral.
+    #[error(
+        "no sheet of paper seen: no bright region with four straight edges (the largest bright region takes {largest_percent:.0} % of the photo, \
+         5 % are needed); photograph the whole sheet, lit, on a darker ground, or state its corners as [target] marks"
+    )]
+    NoSheet {
+        /// Largest bright region, percent of the photo.
+        largest_percent: f64,
+    },
+    /// The sheet is there, but its edges cannot be followed.
+    #[error(
+        "the sheet's outline was found, but only {seen} of its edges can be followed ({needed} are needed); \
+         clear them of clips, tape and shadows, show them sharp, or state the corners as [target] marks"
+    )]
+    SheetEdgesHidden {
+        /// Edges seen.
+        seen: usize,
+        /// Edges needed.
+        needed: usize,
+    },
     /// The pitch of a target to be drawn is no positive number.
     #[error("a target needs a pitch above zero, not {pitch_mm} mm; 10 mm suits an A4 sheet")]
     PitchNotPositive {

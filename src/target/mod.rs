@@ -15,6 +15,7 @@ mod error;
 mod grid;
 mod homography;
 mod marks;
+mod outline;
 mod paper;
 mod pdf;
 mod reading;
@@ -36,6 +37,7 @@ mod painter;
 
 pub use error::TargetError;
 pub use homography::homography;
+pub use outline::{EdgePoint, Outline, read_outline};
 pub use pdf::pdf;
 pub use reading::{Dot, Marks, ReadOptions, Reading, read};
 pub use sheet::{DOT_DIAMETER_PITCHES, MARK_DIAMETER_PITCHES, Paper, Sheet};
