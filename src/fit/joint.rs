@@ -3,7 +3,7 @@
 use super::{
     cell::knowledge_residual,
     model::{self, Bench, PRINT_LOCALS, Places, Shape},
-    observation::{Knowledge, PrintObservation, PrintPlace, Sharpness, SpotObservation, Whitening, whitening},
+    observation::{Knowledge, PrintObservation, PrintPlace, Sharpness, SheetEdge, SpotObservation, Whitening, whitening},
     parameter::{Layout, Parameter, Prior},
     source::Source,
 };
@@ -72,7 +72,7 @@ impl Joint {
             let source = match print.place {
                 PrintPlace::Pitches(_) => Source::Dots,
                 PrintPlace::Lines(_) => Source::Ruling,
-                PrintPlace::Sheet(_) => Source::SheetEdges,
+                PrintPlace::Sheet { .. } => Source::SheetEdges,
                 PrintPlace::Metres(_) => Source::Marks,
                 PrintPlace::ScaleEnd(_) => Source::Scale,
             };
@@ -138,7 +138,10 @@ impl Joint {
         let residual = |print: &PrintObservation| {
             let place = match print.place {
                 PrintPlace::Pitches([i, j]) | PrintPlace::Lines([i, j]) => [i * pitch_m, j * pitch_m],
-                PrintPlace::Sheet([x, y]) => [x * side_m(0)?, y * side_m(1)?],
+                PrintPlace::Sheet { edge, along } => {
+                    let bow_m = value(Parameter::SheetBow { edge }).unwrap_or(0.0);
+                    edge.place(along, bow_m, [side_m(0)?, side_m(1)?])
+                }
                 PrintPlace::Metres(metres) => metres,
                 PrintPlace::ScaleEnd(end) => [end_m(end, 0)?, end_m(end, 1)?],
             };
@@ -204,15 +207,23 @@ impl Joint {
 
     fn print_rows_of_view(&self, values: &[f64], view: usize, first: usize, rows: &mut Rows) -> Option<()> {
         let ends = |end: usize| [None, Some(Parameter::ScaleEnd { end, axis: 0 }), Some(Parameter::ScaleEnd { end, axis: 1 })];
-        let sides = [None, Some(Parameter::SheetSide { axis: 0 }), Some(Parameter::SheetSide { axis: 1 })];
-        let sets = [[Some(Parameter::TargetPitch), None, None], ends(0), ends(1), sides];
-        for (set, leading) in sets.into_iter().enumerate() {
+        let sheet = |edge| {
+            [Some(Parameter::SheetBow { edge }), Some(Parameter::SheetSide { axis: 0 }), Some(Parameter::SheetSide { axis: 1 })]
+        };
+        let sheets = SheetEdge::ALL.map(|edge| (Leading::Sheet(edge), sheet(edge)));
+        let pitch = (Leading::Pitch, [Some(Parameter::TargetPitch), None, None]);
+        let sets = [pitch, (Leading::ScaleEnd(0), ends(0)), (Leading::ScaleEnd(1), ends(1))].into_iter().chain(sheets);
+        for (set, leading) in sets {
+            if !self.prints.iter().any(|print| print.view == view && Leading::of(print.place) == set) {
+                continue;
+            }
             let places = model::print_places(&self.layout, view, leading);
             let v = model::seeded(&self.layout, values, &places);
             let camera = model::camera(&v[3..], self.shape.references[view]);
             let project = camera.print_projector();
-            for (i, print) in self.prints.iter().enumerate().filter(|(_, print)| print.view == view) {
-                let Some(place) = place_of::<PRINT_LOCALS>(print.place, set, &v) else { continue };
+            let own = |print: &PrintObservation| print.view == view && Leading::of(print.place) == set;
+            for (i, print) in self.prints.iter().enumerate().filter(|(_, print)| own(print)) {
+                let place = place_of::<PRINT_LOCALS>(print.place, &v);
                 rows.next = first + 2 * i;
                 let seen = Seen {
                     at: [print.at.x_px, print.at.y_px],
@@ -255,17 +266,32 @@ fn whitened(sharpness: Sharpness, factor: f64, difference: [f64; 2]) -> Option<[
     Some(sharpness.whitening()?.apply(difference).map(|white| factor * white))
 }
 
-/// The set of leading parameters that holds the sides of a sheet.
-const SHEET_SET: usize = 3;
+/// The parameters that a place on the print depends on, which lead those of the camera.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+enum Leading {
+    Pitch,
+    ScaleEnd(usize),
+    Sheet(SheetEdge),
+}
 
-/// The place on the print as dual numbers, if the observation belongs to this set of parameters.
-fn place_of<const N: usize>(place: PrintPlace, set: usize, v: &[DualSVec64<N>; N]) -> Option<[DualSVec64<N>; 2]> {
-    match (place, set) {
-        (PrintPlace::Pitches([i, j]) | PrintPlace::Lines([i, j]), 0) => Some([v[0] * i, v[0] * j]),
-        (PrintPlace::Sheet([x, y]), SHEET_SET) => Some([v[1] * x, v[2] * y]),
-        (PrintPlace::Metres(metres), 0) => Some(metres.map(DualSVec64::from_re)),
-        (PrintPlace::ScaleEnd(end), set) if set == end + 1 => Some([v[1], v[2]]),
-        _ => None,
+impl Leading {
+    /// A place that depends on none of them counts with the pitch.
+    fn of(place: PrintPlace) -> Self {
+        match place {
+            PrintPlace::Pitches(_) | PrintPlace::Lines(_) | PrintPlace::Metres(_) => Self::Pitch,
+            PrintPlace::ScaleEnd(end) => Self::ScaleEnd(end),
+            PrintPlace::Sheet { edge, .. } => Self::Sheet(edge),
+        }
+    }
+}
+
+/// The place on the print as dual numbers, from its leading parameters.
+fn place_of<const N: usize>(place: PrintPlace, v: &[DualSVec64<N>; N]) -> [DualSVec64<N>; 2] {
+    match place {
+        PrintPlace::Pitches([i, j]) | PrintPlace::Lines([i, j]) => [v[0] * i, v[0] * j],
+        PrintPlace::Metres(metres) => metres.map(DualSVec64::from_re),
+        PrintPlace::ScaleEnd(_) => [v[1], v[2]],
+        PrintPlace::Sheet { edge, along } => edge.place(along, v[0], [v[1], v[2]]),
     }
 }
 

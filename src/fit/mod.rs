@@ -15,7 +15,7 @@ mod trials;
 pub use cell::{Cell, Derived, cell};
 pub use joint::Joint;
 pub use model::{PhotoShape, Shape};
-pub use observation::{Knowledge, PrintObservation, PrintPlace, Sharpness, SpotObservation};
+pub use observation::{Knowledge, PrintObservation, PrintPlace, Sharpness, SheetEdge, SpotObservation};
 pub use parameter::{Entry, Layout, Parameter, Prior};
 pub use solve::{Fit, Outliers, approach, solve};
 pub use source::Source;

@@ -4,6 +4,7 @@ use crate::{
     frames::{PixelCovariance, PixelPoint},
     math::statistics::normal_probability,
 };
+use num_dual::DualNum;
 
 /// A spot with its order.
 #[derive(Debug, Clone, Copy, PartialEq)]
@@ -42,7 +43,7 @@ impl PrintObservation {
     /// operator states are few, and never left out.
     #[must_use]
     pub fn is_one_of_many(&self) -> bool {
-        matches!(self.place, PrintPlace::Pitches(_) | PrintPlace::Lines(_) | PrintPlace::Sheet(_))
+        matches!(self.place, PrintPlace::Pitches(_) | PrintPlace::Lines(_) | PrintPlace::Sheet { .. })
     }
 }
 
@@ -117,12 +118,57 @@ pub enum PrintPlace {
     Pitches([f64; 2]),
     /// In units of the distance of ruled lines, which is the same parameter.
     Lines([f64; 2]),
-    /// As shares of a sheet's width and height, which are parameters.
-    Sheet([f64; 2]),
+    /// On an edge of a sheet; its width, its height and the bow of the edge are parameters.
+    Sheet {
+        /// Which edge.
+        edge: SheetEdge,
+        /// Place along the edge as a share of its length, to the right or up.
+        along: f64,
+    },
     /// In metres, exactly.
     Metres([f64; 2]),
     /// One end of a known distance; its place is a parameter.
     ScaleEnd(usize),
+}
+
+/// Edges of a sheet whose origin is the lower left corner.
+#[derive(Debug, Clone, Copy, PartialEq, Eq, Hash)]
+pub enum SheetEdge {
+    /// X = 0
+    Left,
+    /// X = width
+    Right,
+    /// Y = 0
+    Bottom,
+    /// Y = height
+    Top,
+}
+
+impl SheetEdge {
+    /// All four.
+    pub const ALL: [Self; 4] = [Self::Left, Self::Right, Self::Bottom, Self::Top];
+
+    /// Place on the print, m: `bow` is how far the middle of the edge stands out of the straight line between its ends.
+    pub(super) fn place<D: DualNum<f64> + Copy>(self, along: f64, bow: D, [width, height]: [D; 2]) -> [D; 2] {
+        let out = bow * (4.0 * along * (1.0 - along));
+        match self {
+            Self::Left => [-out, height * along],
+            Self::Right => [width + out, height * along],
+            Self::Bottom => [width * along, -out],
+            Self::Top => [width * along, height + out],
+        }
+    }
+
+    /// Which coordinate the edge fixes, and at which share of the side.
+    #[must_use]
+    pub fn level(self) -> (usize, f64) {
+        match self {
+            Self::Left => (0, 0.0),
+            Self::Right => (0, 1.0),
+            Self::Bottom => (1, 0.0),
+            Self::Top => (1, 1.0),
+        }
+    }
 }
 
 /// A value that follows from the parameters and was measured by the operator.

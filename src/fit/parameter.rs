@@ -1,6 +1,6 @@
 //! The unknowns of the joint problem: what each is, what is known of it beforehand, and where it stands in the solver's vector.
 
-use super::source::Source;
+use super::{observation::SheetEdge, source::Source};
 
 /// One scalar unknown. Blocks that several photos share simply name the same parameter.
 #[derive(Debug, Clone, Copy, PartialEq, Eq, Hash)]
@@ -51,6 +51,11 @@ pub enum Parameter {
     SheetSide {
         /// X or Y.
         axis: usize,
+    },
+    /// How far the middle of a sheet's edge stands out of the straight line between its ends, m.
+    SheetBow {
+        /// Which edge.
+        edge: SheetEdge,
     },
     /// Natural logarithm of the focal length in px: a factor is what is known of it, and it can never reach zero.
     LogFocalLength,

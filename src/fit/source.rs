@@ -36,8 +36,8 @@ pub enum Source {
     Ruling,
     /// Places of a sheet's edges.
     SheetEdges,
-    /// Width and height of a sheet.
-    SheetSize,
+    /// Width and height of a sheet, and how straight its edges are.
+    SheetShape,
     /// Pixels of the known marks.
     Marks,
     /// Two points of known distance.
@@ -69,7 +69,7 @@ impl Source {
             Self::Dots => "target dots",
             Self::Ruling => "ruled lines",
             Self::SheetEdges => "sheet edges",
-            Self::SheetSize => "sheet size",
+            Self::SheetShape => "sheet shape",
             Self::Marks => "marks",
             Self::Scale => "scale",
             Self::SquareOn => "camera square-on",

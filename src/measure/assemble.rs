@@ -147,7 +147,7 @@ fn free_the_print(joint: &mut Joint, bench: &Bench, cameras: &Cameras) {
                 joint.layout = joint.layout.without(Parameter::SheetSide { axis });
             }
             if let Some(sides_m) = cameras.sheet_sides_m {
-                setup::add_sheet_sides(&mut joint.layout, sides_m);
+                setup::add_sheet(&mut joint.layout, sides_m);
             }
         }
         Some(TargetKind::Marks { .. }) | None => {}

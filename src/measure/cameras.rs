@@ -87,7 +87,7 @@ fn settle(cameras: &mut Cameras, bench: &Bench, views: &[View]) -> Result<(), Er
     if let Some([width, height]) = cameras.sheet_sides_m {
         // Nor its own size; the shape is known as well as both sides together.
         let u = (height.value / width.value * width.u).hypot(height.u);
-        setup::add_sheet_sides(&mut cameras.layout, [Quantity { u: 0.0, ..width }, Quantity { u, ..height }]);
+        setup::add_sheet(&mut cameras.layout, [Quantity { u: 0.0, ..width }, Quantity { u, ..height }]);
     }
     let uncorrected = cameras.prints.clone();
     for pass in 0..2 {

@@ -12,7 +12,7 @@ use crate::{
     Note,
     bench::Bench,
     budget::{self, Value},
-    fit::{Cell, Derived, Fit, Parameter, PrintPlace, Prior, Source, cell},
+    fit::{Cell, Derived, Fit, Parameter, PrintPlace, Prior, SheetEdge, Source, cell},
     frames::{PixelCovariance, PixelPoint},
 };
 
@@ -209,6 +209,15 @@ pub(super) fn described(bench: &Bench, parameter: Parameter) -> (String, Paramet
         Parameter::PrintTurn => ("target turn".to_owned(), ParameterUnit::Angle),
         Parameter::TargetPitch => ("target pitch".to_owned(), ParameterUnit::Length),
         Parameter::SheetSide { axis } => (["sheet width", "sheet height"][axis.min(1)].to_owned(), ParameterUnit::Length),
+        Parameter::SheetBow { edge } => {
+            let name = match edge {
+                SheetEdge::Left => "left",
+                SheetEdge::Right => "right",
+                SheetEdge::Bottom => "lower",
+                SheetEdge::Top => "upper",
+            };
+            (format!("bow of the sheet's {name} edge"), ParameterUnit::Length)
+        }
         Parameter::LogFocalLength => ("focal length".to_owned(), ParameterUnit::Pixel),
         Parameter::PrincipalPoint { axis } => (format!("principal point {}", axis_name(axis)), ParameterUnit::Pixel),
         Parameter::RadialDistortion { term } => (format!("distortion k{}", term + 1), ParameterUnit::Number),

@@ -7,7 +7,7 @@ use super::{MeasureError, view::pose_from_homography};
 use crate::{
     bench::SheetFormat,
     fit::{
-        PrintObservation, PrintPlace, Sharpness,
+        PrintObservation, PrintPlace, Sharpness, SheetEdge,
         setup::{LensKnowledge, ViewStart},
     },
     frames::{PixelPoint, TargetPoint},
@@ -59,36 +59,30 @@ pub(super) fn sheet_view(view: usize, outline: &Outline, format: SheetFormat, le
     for (number, edge) in outline.edges.iter().enumerate() {
         // Edge n runs from corner n to the next one; the middle of it tells which side of the sheet it is.
         let [a, b] = [outline.corners[number], outline.corners[(number + 1) % 4]];
-        let side = Edge::nearest(at_edge(PixelPoint { x_px: f64::midpoint(a.x_px, b.x_px), y_px: f64::midpoint(a.y_px, b.y_px) }));
+        let side = nearest_edge(at_edge(PixelPoint { x_px: f64::midpoint(a.x_px, b.x_px), y_px: f64::midpoint(a.y_px, b.y_px) }));
         prints.extend(edge.iter().map(|point| PrintObservation {
             view,
             at: point.at,
             sharpness: Sharpness::Line { across: point.across, u_px: point.u_px },
-            place: PrintPlace::Sheet(side.foot(at_edge(point.at))),
+            place: PrintPlace::Sheet { edge: side, along: along(side, at_edge(point.at)) },
             weight: 1.0,
         }));
     }
     Ok(SheetView { start, prints, sides_m })
 }
 
-/// One of the four edges, as shares of width and height.
-#[derive(Debug, Clone, Copy)]
-struct Edge {
-    axis: usize,
-    level: f64,
+/// The edge that a place, in shares of width and height, lies nearest to.
+fn nearest_edge(place: [f64; 2]) -> SheetEdge {
+    let off = |edge: &SheetEdge| {
+        let (axis, level) = edge.level();
+        (place[axis] - level).abs()
+    };
+    SheetEdge::ALL.into_iter().min_by(|a, b| off(a).total_cmp(&off(b))).unwrap_or(SheetEdge::Left)
 }
 
-impl Edge {
-    fn nearest(place: [f64; 2]) -> Self {
-        let edges = [0, 1].into_iter().flat_map(|axis| [0.0, 1.0].map(|level| Self { axis, level }));
-        let off = |edge: &Self| (place[edge.axis] - edge.level).abs();
-        edges.min_by(|a, b| off(a).total_cmp(&off(b))).unwrap_or(Self { axis: 0, level: 0.0 })
-    }
-
-    fn foot(self, mut place: [f64; 2]) -> [f64; 2] {
-        place[self.axis] = self.level;
-        place
-    }
+/// Place along an edge of a place near it.
+fn along(edge: SheetEdge, place: [f64; 2]) -> f64 {
+    place[1 - edge.level().0]
 }
 
 /// Moves each point's place along its edge to where the camera sees it, once the camera is known.
@@ -96,9 +90,8 @@ impl Edge {
 /// Across the edge nothing changes. Along it the place need not be better than some pixels: what counts is the distance from the edge.
 pub(super) fn slide(prints: &mut [PrintObservation], view: usize, camera: &Camera<f64>, sides_m: [f64; 2]) {
     for print in prints.iter_mut().filter(|print| print.view == view) {
-        let (PrintPlace::Sheet(place), Some(TargetPoint { x_m, y_m })) = (print.place, camera.print_point(print.at)) else { continue };
-        // A place lies on its edge exactly, so that is the nearest.
-        print.place = PrintPlace::Sheet(Edge::nearest(place).foot([x_m / sides_m[0], y_m / sides_m[1]]));
+        let (PrintPlace::Sheet { edge, .. }, Some(TargetPoint { x_m, y_m })) = (print.place, camera.print_point(print.at)) else { continue };
+        print.place = PrintPlace::Sheet { edge, along: along(edge, [x_m / sides_m[0], y_m / sides_m[1]]) };
     }
 }
 
