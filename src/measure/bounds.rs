@@ -19,7 +19,7 @@ impl Reach {
     pub(super) fn of(photo: usize, view: usize, seen: &Seen, bench: &Bench) -> Self {
         let sheet = |print: &Print| match print {
             Print::Sheet(outline) => Some(outline.corners.map(|corner| [corner.x_px, corner.y_px]).to_vec()),
-            Print::Dots(_) => None,
+            Print::Dots(_) | Print::Ruling(_) => None,
         };
         let corners = match &bench.target {
             Some(Target { kind: TargetKind::Marks { marks, .. }, .. }) => {

@@ -3,6 +3,7 @@
 use super::{
     MeasureError,
     look::{Print, Seen},
+    ruling::{self, RulingView, ruling_view},
     sheet::{SheetView, sheet_view, slide},
     view::{disc_centroid_offset, lens_knowledge, pose_from_homography, square_on_pose},
 };
@@ -16,7 +17,7 @@ use crate::{
     frames::{PixelCovariance, PixelPoint},
     photo::Exif,
     quantity::Quantity,
-    target::{self, Reading},
+    target::{self, Families, Reading},
 };
 use nalgebra::{Matrix3, Vector3};
 
@@ -42,6 +43,8 @@ struct View {
     reading: Option<Reading>,
     /// Width and height of the sheet that it shows.
     sheet_sides_m: Option<[Quantity; 2]>,
+    /// Families of ruled lines that it shows.
+    families: Option<Families>,
 }
 
 /// Sets up all views.
@@ -53,7 +56,7 @@ pub(super) fn cameras(seen: &Seen, bench: &Bench, targets: &[&str]) -> Result<Ca
         Some(Target { kind: TargetKind::Dots { pitch_m, .. }, .. }) => dot_views(seen, *pitch_m, &lens)?,
         Some(Target { kind: TargetKind::Marks { marks, u_px }, .. }) => vec![mark_view(marks, *u_px, &lens)?],
         Some(Target { kind: TargetKind::Sheet { format, .. }, .. }) => sheet_views(seen, *format, &lens)?,
-        Some(Target { kind: TargetKind::Ruling { .. }, .. }) => return Err(MeasureError::NoPose.into()),
+        Some(Target { kind: TargetKind::Ruling { pitch_m, .. }, .. }) => ruling_views(seen, *pitch_m, &lens)?,
         None => vec![bare_view(seen, bench, &lens)],
     };
     let screen_known = bench.target.is_some();
@@ -76,10 +79,10 @@ pub(super) fn cameras(seen: &Seen, bench: &Bench, targets: &[&str]) -> Result<Ca
 /// Solves the views from their prints alone; twice where dots have to be corrected for perspective, and where points of edges have to be
 /// brought to their places along the edge.
 fn settle(cameras: &mut Cameras, bench: &Bench, views: &[View]) -> Result<(), Error> {
-    let read = |view: &View| view.reading.is_some() || view.sheet_sides_m.is_some();
+    let read = |view: &View| view.reading.is_some() || view.sheet_sides_m.is_some() || view.families.is_some();
     let outliers = if views.iter().all(read) { Outliers::Rejected } else { Outliers::Kept };
     let mut pitch_m = None;
-    if let Some(Target { kind: TargetKind::Dots { pitch_m: pitch, .. }, .. }) = &bench.target {
+    if let Some(Target { kind: TargetKind::Dots { pitch_m: pitch, .. } | TargetKind::Ruling { pitch_m: pitch, .. }, .. }) = &bench.target {
         pitch_m = Some(pitch.value);
         // Alone, a print cannot tell its own pitch from the distance of the camera.
         setup::add_target_pitch(&mut cameras.layout, Quantity { u: 0.0, ..*pitch });
@@ -111,6 +114,11 @@ fn settle(cameras: &mut Cameras, bench: &Bench, views: &[View]) -> Result<(), Er
             continue;
         }
         let (Some(pitch_m), 0) = (pitch_m, pass) else { break };
+        for (number, view) in views.iter().enumerate() {
+            if let Some(families) = view.families {
+                ruling::slide(&mut cameras.prints, number, &joint.camera(&joint.values(), number), families, pitch_m);
+            }
+        }
         for (print, seen) in cameras.prints.iter_mut().zip(&uncorrected) {
             let camera = joint.camera(&joint.values(), print.view);
             let (PrintPlace::Pitches(place), Some(reading)) = (print.place, &views[print.view].reading) else { continue };
@@ -175,9 +183,18 @@ fn dot_views(seen: &Seen, pitch_m: Quantity, lens: &LensKnowledge) -> Result<Vec
             place: PrintPlace::Pitches([f64::from(dot.index.0), f64::from(dot.index.1)]),
             weight: 1.0,
         };
-        Ok(View { start, prints: reading.dots.iter().map(print).collect(), reading: Some((*reading).clone()), sheet_sides_m: None })
+        Ok(View { start, prints: reading.dots.iter().map(print).collect(), reading: Some((*reading).clone()), sheet_sides_m: None, families: None })
     };
     readings.iter().enumerate().map(view).collect()
+}
+
+fn ruling_views(seen: &Seen, pitch_m: Quantity, lens: &LensKnowledge) -> Result<Vec<View>, Error> {
+    let rulings = prints(seen).into_iter().filter_map(|print| if let Print::Ruling(ruling) = print { Some(ruling) } else { None });
+    let view = |(number, ruling): (usize, &target::Ruling)| {
+        let RulingView { start, prints } = ruling_view(number, ruling, pitch_m, lens)?;
+        Ok(View { start, prints, reading: None, sheet_sides_m: None, families: Some(ruling.families) })
+    };
+    rulings.enumerate().map(view).collect()
 }
 
 /// What was read of the target, view by view.
@@ -190,7 +207,7 @@ fn sheet_views(seen: &Seen, format: SheetFormat, lens: &LensKnowledge) -> Result
     let outlines = prints(seen).into_iter().filter_map(|print| if let Print::Sheet(outline) = print { Some(outline) } else { None });
     let view = |(number, outline)| {
         let SheetView { start, prints, sides_m } = sheet_view(number, outline, format, lens)?;
-        Ok(View { start, prints, reading: None, sheet_sides_m: Some(sides_m) })
+        Ok(View { start, prints, reading: None, sheet_sides_m: Some(sides_m), families: None })
     };
     outlines.enumerate().map(view).collect()
 }
@@ -207,7 +224,7 @@ fn mark_view(marks: &[(PixelPoint, crate::frames::TargetPoint)], u_px: f64, lens
         place: PrintPlace::Metres([mm.x_m, mm.y_m]),
         weight: 1.0,
     };
-    Ok(View { start, prints: marks.iter().map(print).collect(), reading: None, sheet_sides_m: None })
+    Ok(View { start, prints: marks.iter().map(print).collect(), reading: None, sheet_sides_m: None, families: None })
 }
 
 /// Without print: a camera square-on before the brightest spot, at a distance that the scale or the throw suggests.
@@ -218,7 +235,7 @@ fn bare_view(seen: &Seen, bench: &Bench, lens: &LensKnowledge) -> View {
         Some(scale) => lens.focal_px * scale.distance_m.value / scale.points[0].distance_px(scale.points[1]),
         None => 3.0 * bench.screen.throw_m.map_or(super::GAUGE_THROW_M, |throw| throw.value),
     };
-    View { start: square_on_pose(lens, origin, distance_m), prints: vec![], reading: None, sheet_sides_m: None }
+    View { start: square_on_pose(lens, origin, distance_m), prints: vec![], reading: None, sheet_sides_m: None, families: None }
 }
 
 impl Cameras {

@@ -6,7 +6,7 @@ use crate::{
     bench::{Bench, TargetKind},
     photo::{self, Exif, Photo},
     spots::{self, Spots},
-    target::{self, Outline, Reading},
+    target::{self, Outline, Reading, Ruling},
 };
 use rayon::prelude::*;
 
@@ -35,6 +35,8 @@ pub(super) enum Print {
     Dots(Reading),
     /// A sheet of paper.
     Sheet(Outline),
+    /// Ruled paper.
+    Ruling(Ruling),
 }
 
 /// What is looked for in a photo.
@@ -42,6 +44,7 @@ pub(super) enum Print {
 enum PrintKind {
     Dots,
     Sheet,
+    Ruling,
 }
 
 /// A photo of the pattern, looked at.
@@ -75,10 +78,12 @@ pub(super) fn look(inputs: &Inputs<'_>, bench: &Bench) -> Result<Seen, Refusal> 
     let in_pattern = match target {
         Some(TargetKind::Dots { photo: None, .. }) => Some(PrintKind::Dots),
         Some(TargetKind::Sheet { photo: None, .. }) => Some(PrintKind::Sheet),
+        Some(TargetKind::Ruling { photo: None, .. }) => Some(PrintKind::Ruling),
         _ => None,
     };
     let in_target = match target {
         Some(TargetKind::Sheet { .. }) => PrintKind::Sheet,
+        Some(TargetKind::Ruling { .. }) => PrintKind::Ruling,
         _ => PrintKind::Dots,
     };
     let (patterns, targets) = rayon::join(
@@ -129,6 +134,7 @@ fn look_at_target(file: &PhotoFile<'_>, kind: PrintKind) -> Result<SeenTarget, E
 fn read_print(light: &photo::Light, kind: PrintKind) -> Result<Print, Error> {
     Ok(match kind {
         PrintKind::Dots => Print::Dots(target::read(light, &target::ReadOptions::default())?),
+        PrintKind::Ruling => Print::Ruling(target::read_ruling(light)?),
         PrintKind::Sheet => Print::Sheet(target::read_outline(light)?),
     })
 }

@@ -13,6 +13,7 @@ mod measurement;
 mod openness;
 mod orders;
 mod rough;
+mod ruling;
 mod scan;
 mod sheet;
 mod statement;

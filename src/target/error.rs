@@ -90,6 +90,25 @@ pub enum TargetError {
         /// Edges needed.
         needed: usize,
     },
+    /// No evenly spaced lines.
+    #[error(
+        "no ruled paper seen: {parts} parts of the photo show evenly spaced lines clearly, {needed} are needed; \
+         show the ruling sharp over much of the frame and in even light, lines at least 8 px apart"
+    )]
+    NoRuling {
+        /// Parts of the photo that show lines.
+        parts: usize,
+        /// Parts needed.
+        needed: usize,
+    },
+    /// Lines too close for the photo.
+    #[error("the ruled lines are {period_px:.1} px apart, too fine to be told apart for certain ({least_px:.0} px are needed); photograph them closer")]
+    RulingTooFine {
+        /// Distance of the lines, px.
+        period_px: f64,
+        /// Least distance, px.
+        least_px: f64,
+    },
     /// The pitch of a target to be drawn is no positive number.
     #[error("a target needs a pitch above zero, not {pitch_mm} mm; 10 mm suits an A4 sheet")]
     PitchNotPositive {

@@ -22,6 +22,7 @@ mod reading;
 mod refine;
 mod residuals;
 mod rim;
+mod ruling;
 mod sheet;
 mod svg;
 mod view;
@@ -40,6 +41,7 @@ pub use homography::homography;
 pub use outline::{EdgePoint, Outline, read_outline};
 pub use pdf::pdf;
 pub use reading::{Dot, Marks, ReadOptions, Reading, read};
+pub use ruling::{Families, RuledPoint, Ruling, read_ruling};
 pub use sheet::{DOT_DIAMETER_PITCHES, MARK_DIAMETER_PITCHES, Paper, Sheet};
 pub use svg::svg;
 
