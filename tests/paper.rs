@@ -47,7 +47,7 @@ fn cross_grating_by_the_sheet_that_it_falls_on() {
     // Corners of the sheet: (380, 293), (1487, 336), (1421, 1054), (409, 1044).
     let on_sheet = |x: f64, y: f64| (370.0..=1495.0).contains(&x) && (285.0..=1066.0).contains(&y);
     assert!(used.iter().all(|order| on_sheet(order.at.x_px, order.at.y_px)));
-    assert!(found.budget.iter().any(|line| line.source == "sheet shape"));
+    assert!(found.sample.budget.iter().any(|line| line.source == "sheet shape"));
 }
 
 /// By hand: 20.3 px/mm along x; 20.7 to 21.5 px/mm along y where the screen leans to the camera.
@@ -74,7 +74,12 @@ fn millimetre_paper_has_its_scale() {
     let off = |(place, at): &([f64; 2], [f64; 2])| (project(*place)[0] - at[0]).hypot(project(*place)[1] - at[1]);
     let rms = (crossings.iter().map(|c| off(c).powi(2)).sum::<f64>() / crossings.len() as f64).sqrt();
     let step = |to: [f64; 2]| (project(to)[0] - project([0.0; 2])[0]).hypot(project(to)[1] - project([0.0; 2])[1]);
-    println!("{:.2} px/mm along x, {:.2} along y; {} crossings, {rms:.2} px off a plane", step([1.0, 0.0]), step([0.0, 1.0]), crossings.len());
+    println!(
+        "{:.2} px/mm along x, {:.2} along y; {} crossings, {rms:.2} px off a plane",
+        step([1.0, 0.0]),
+        step([0.0, 1.0]),
+        crossings.len()
+    );
     assert!((step([1.0, 0.0]) - 20.3).abs() < 0.3, "{}", step([1.0, 0.0]));
     assert!((20.4..21.7).contains(&step([0.0, 1.0])), "{}", step([0.0, 1.0]));
     assert!(rms < 1.0, "{rms} px");

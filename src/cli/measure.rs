@@ -82,9 +82,9 @@ fn bench_path(arguments: &MeasureArguments) -> Result<Option<PathBuf>, Failure> 
 /// Names of the target photos, each once: the bench file's, then those of single photos.
 fn target_names(bench: &Bench) -> Vec<&str> {
     let common = match &bench.target {
-        Some(Target { kind: TargetKind::Dots { photo, .. } | TargetKind::Sheet { photo, .. } | TargetKind::Ruling { photo, .. }, .. }) => {
-            photo.as_deref()
-        }
+        Some(Target {
+            kind: TargetKind::Dots { photo, .. } | TargetKind::Sheet { photo, .. } | TargetKind::Ruling { photo, .. }, ..
+        }) => photo.as_deref(),
         Some(Target { kind: TargetKind::Marks { .. }, .. }) | None => None,
     };
     let mut names: Vec<&str> = Vec::new();

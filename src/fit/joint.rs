@@ -207,9 +207,8 @@ impl Joint {
 
     fn print_rows_of_view(&self, values: &[f64], view: usize, first: usize, rows: &mut Rows) -> Option<()> {
         let ends = |end: usize| [None, Some(Parameter::ScaleEnd { end, axis: 0 }), Some(Parameter::ScaleEnd { end, axis: 1 })];
-        let sheet = |edge| {
-            [Some(Parameter::SheetBow { edge }), Some(Parameter::SheetSide { axis: 0 }), Some(Parameter::SheetSide { axis: 1 })]
-        };
+        let sheet =
+            |edge| [Some(Parameter::SheetBow { edge }), Some(Parameter::SheetSide { axis: 0 }), Some(Parameter::SheetSide { axis: 1 })];
         let sheets = SheetEdge::ALL.map(|edge| (Leading::Sheet(edge), sheet(edge)));
         let pitch = (Leading::Pitch, [Some(Parameter::TargetPitch), None, None]);
         let sets = [pitch, (Leading::ScaleEnd(0), ends(0)), (Leading::ScaleEnd(1), ends(1))].into_iter().chain(sheets);

@@ -163,14 +163,18 @@ fn lens(seen: &Seen, bench: &Bench) -> LensKnowledge {
 
 /// Photos share the view of the bench file's one target photo unless they name their own, or carry their dots themselves.
 fn views_of_photos(bench: &Bench, photos: usize, targets: &[&str]) -> Vec<usize> {
-    let target_in_pattern = matches!(bench.target.as_ref().map(|target| &target.kind), Some(TargetKind::Dots { photo: None, .. } | TargetKind::Sheet { photo: None, .. } | TargetKind::Ruling { photo: None, .. }));
+    let target_in_pattern = matches!(
+        bench.target.as_ref().map(|target| &target.kind),
+        Some(TargetKind::Dots { photo: None, .. } | TargetKind::Sheet { photo: None, .. } | TargetKind::Ruling { photo: None, .. })
+    );
     let own =
         |photo: usize| bench.photos.get(photo).and_then(|p| p.target.as_deref()).and_then(|name| targets.iter().position(|t| *t == name));
     (0..photos).map(|photo| if target_in_pattern { photo } else { own(photo).unwrap_or(0) }).collect()
 }
 
 fn dot_views(seen: &Seen, pitch_m: Quantity, lens: &LensKnowledge) -> Result<Vec<View>, Error> {
-    let readings: Vec<&Reading> = prints(seen).into_iter().filter_map(|print| if let Print::Dots(dots) = print { Some(dots) } else { None }).collect();
+    let readings: Vec<&Reading> =
+        prints(seen).into_iter().filter_map(|print| if let Print::Dots(dots) = print { Some(dots) } else { None }).collect();
     let view = |(number, reading): (usize, &&Reading)| {
         let h = reading.pixel_from_pitches;
         let pixel_from_pitches = Matrix3::from_fn(|row, column| h[row][column]);
@@ -183,7 +187,13 @@ fn dot_views(seen: &Seen, pitch_m: Quantity, lens: &LensKnowledge) -> Result<Vec
             place: PrintPlace::Pitches([f64::from(dot.index.0), f64::from(dot.index.1)]),
             weight: 1.0,
         };
-        Ok(View { start, prints: reading.dots.iter().map(print).collect(), reading: Some((*reading).clone()), sheet_sides_m: None, families: None })
+        Ok(View {
+            start,
+            prints: reading.dots.iter().map(print).collect(),
+            reading: Some((*reading).clone()),
+            sheet_sides_m: None,
+            families: None,
+        })
     };
     readings.iter().enumerate().map(view).collect()
 }

@@ -59,10 +59,10 @@ pub(super) fn order_spots(
         if agrees && proposed.is_some_and(|(_, e)| e.zero_lead > SURE_ZERO && e.log_evidence > SURE_EVIDENCE) {
             return free;
         }
-        if let Some((place, _)) = proposed.filter(|_| hypotheses.len() < MOST_HYPOTHESES) {
-            if hypotheses.iter().all(|known| known.distance_px(place) >= SAME_PLACE_PX) {
-                hypotheses.insert(next, place);
-            }
+        if let Some((place, _)) = proposed.filter(|_| hypotheses.len() < MOST_HYPOTHESES)
+            && hypotheses.iter().all(|known| known.distance_px(place) >= SAME_PLACE_PX)
+        {
+            hypotheses.insert(next, place);
         }
         match if agrees { free } else { order_about(spots, rough, zero, Zero::Here, roughness, on_screen) } {
             Ok(ordered) => {

@@ -90,7 +90,9 @@ fn along(edge: SheetEdge, place: [f64; 2]) -> f64 {
 /// Across the edge nothing changes. Along it the place need not be better than some pixels: what counts is the distance from the edge.
 pub(super) fn slide(prints: &mut [PrintObservation], view: usize, camera: &Camera<f64>, sides_m: [f64; 2]) {
     for print in prints.iter_mut().filter(|print| print.view == view) {
-        let (PrintPlace::Sheet { edge, .. }, Some(TargetPoint { x_m, y_m })) = (print.place, camera.print_point(print.at)) else { continue };
+        let (PrintPlace::Sheet { edge, .. }, Some(TargetPoint { x_m, y_m })) = (print.place, camera.print_point(print.at)) else {
+            continue;
+        };
         print.place = PrintPlace::Sheet { edge, along: along(edge, [x_m / sides_m[0], y_m / sides_m[1]]) };
     }
 }

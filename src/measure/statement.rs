@@ -1,6 +1,11 @@
 //! What can be said beside the numbers: colour of the laser, kind of lattice, doubts about the numbering.
 
-use super::{MeasureError, look::{Print, Seen}, measurement::KindStatement, orders::Ordered};
+use super::{
+    MeasureError,
+    look::{Print, Seen},
+    measurement::KindStatement,
+    orders::Ordered,
+};
 use crate::{
     Note,
     bench::Bench,

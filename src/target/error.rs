@@ -102,7 +102,9 @@ pub enum TargetError {
         needed: usize,
     },
     /// Lines too close for the photo.
-    #[error("the ruled lines are {period_px:.1} px apart, too fine to be told apart for certain ({least_px:.0} px are needed); photograph them closer")]
+    #[error(
+        "the ruled lines are {period_px:.1} px apart, too fine to be told apart for certain ({least_px:.0} px are needed); photograph them closer"
+    )]
     RulingTooFine {
         /// Distance of the lines, px.
         period_px: f64,

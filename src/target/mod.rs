@@ -1,6 +1,6 @@
-//! In: a photo of the printed dot target. Out: its dots, each with its place on the print. Also draws the print.
+//! In: a photo of the printed dot target, of a sheet or of ruled paper. Out: its dots, edges or lines, each with its place. Also draws the print.
 //! Must never know: the pattern, the sample, the bench.
-//! Start reading at [`read`] and [`Reading`]; for the print at [`Sheet`].
+//! Start reading at [`read`] and [`Reading`], [`read_outline`], [`read_ruling`]; for the print at [`Sheet`].
 //!
 //! ```text
 //!   o  o  o  o  o      dots at (i, j) pitches, X to the right, Y up as printed

@@ -117,11 +117,9 @@ impl Side<'_> {
     /// Half the width of the step that profiles have to span, px: three standard deviations of the blur that the median profile shows.
     fn half_width(&self, run: &Run) -> f64 {
         const SEARCH: f64 = 12.0;
-        let profiles: Vec<Vec<f64>> =
-            places().filter_map(|t| self.profile(t, run.at(t) - SEARCH, run.at(t) + SEARCH)).collect();
+        let profiles: Vec<Vec<f64>> = places().filter_map(|t| self.profile(t, run.at(t) - SEARCH, run.at(t) + SEARCH)).collect();
         let samples = profiles.first().map_or(0, Vec::len);
-        let usual: Vec<f64> =
-            (0..samples).filter_map(|n| median(&profiles.iter().map(|p| p[n]).collect::<Vec<_>>())).collect();
+        let usual: Vec<f64> = (0..samples).filter_map(|n| median(&profiles.iter().map(|p| p[n]).collect::<Vec<_>>())).collect();
         let (Some(bright), Some(dark)) = (usual.first(), usual.last()) else { return 4.0 };
         // Outwards from inside: the last sample above a level.
         let beyond = |share: f64| usual.iter().rposition(|v| *v > dark + share * (bright - dark)).map_or(0.0, |n| STEP * count(n));

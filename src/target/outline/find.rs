@@ -160,8 +160,7 @@ impl Region<'_> {
         let within = tolerance(self.size);
         let least = self.size[0].max(self.size[1]) / 25;
         let centre = self.centre();
-        let lines: Vec<Line> =
-            dominant_lines(&boundary, within, least, MOST_LINES).into_iter().map(|line| line.facing(centre)).collect();
+        let lines: Vec<Line> = dominant_lines(&boundary, within, least, MOST_LINES).into_iter().map(|line| line.facing(centre)).collect();
         let mut best: Option<Candidate> = None;
         for a in 0..lines.len() {
             for b in a + 1..lines.len() {
@@ -201,7 +200,11 @@ impl Region<'_> {
         let along = [(to[0] - from[0]) / length, (to[1] - from[1]) / length];
         let within = tolerance(self.size);
         let [width, height] = self.size.map(small_f64);
-        #[expect(clippy::cast_possible_truncation, clippy::cast_sign_loss, reason = "a place along a side that is some thousand pixels long")]
+        #[expect(
+            clippy::cast_possible_truncation,
+            clippy::cast_sign_loss,
+            reason = "a place along a side that is some thousand pixels long"
+        )]
         let step = |distance: f64| (distance / STEP) as usize;
         let mut covered = vec![false; step(length) + 1];
         for p in boundary {

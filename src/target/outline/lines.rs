@@ -44,9 +44,10 @@ impl Line {
     fn fitted(points: &[[f64; 2]]) -> Option<Self> {
         let n = count(points.len());
         let mean = [0, 1].map(|c| points.iter().map(|p| p[c]).sum::<f64>() / n);
-        let (xx, xy, yy) = points.iter().map(|p| [p[0] - mean[0], p[1] - mean[1]]).fold((0.0, 0.0, 0.0), |(xx, xy, yy), [x, y]| {
-            (xx + x * x, xy + x * y, yy + y * y)
-        });
+        let (xx, xy, yy) = points
+            .iter()
+            .map(|p| [p[0] - mean[0], p[1] - mean[1]])
+            .fold((0.0, 0.0, 0.0), |(xx, xy, yy), [x, y]| (xx + x * x, xy + x * y, yy + y * y));
         let along = 0.5 * (2.0 * xy).atan2(xx - yy);
         let normal = [-along.sin(), along.cos()];
         (points.len() > 1).then(|| Self { normal, offset: normal[0] * mean[0] + normal[1] * mean[1] })
@@ -89,9 +90,9 @@ mod tests {
 
     #[test]
     fn three_lines_among_as_many_strays() {
-        let mut points: Vec<[f64; 2]> = (0..200).map(|n| f64::from(n)).flat_map(|t| [[t, 10.0 + 0.1 * t], [50.0 - 0.2 * t, t]]).collect();
-        points.extend((0..100).map(|n| f64::from(n)).map(|t| [t + 20.0, 150.0 - t]));
-        points.extend((0..500).map(|n| f64::from(n)).map(|n| [(n * 37.7) % 200.0, (n * 91.3) % 200.0]));
+        let mut points: Vec<[f64; 2]> = (0..200).map(f64::from).flat_map(|t| [[t, 10.0 + 0.1 * t], [50.0 - 0.2 * t, t]]).collect();
+        points.extend((0..100).map(f64::from).map(|t| [t + 20.0, 150.0 - t]));
+        points.extend((0..500).map(f64::from).map(|n| [(n * 37.7) % 200.0, (n * 91.3) % 200.0]));
         let lines = dominant_lines(&points, 1.0, 50, 8);
         let truth = [([0.0, 10.0], [100.0, 20.0]), ([50.0, 0.0], [30.0, 100.0]), ([20.0, 150.0], [120.0, 50.0])];
         for (a, b) in truth {

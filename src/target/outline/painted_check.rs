@@ -121,7 +121,13 @@ fn clutter_about_the_edges_is_left_out() {
         let clip = disc(x, y, [600.0, 155.0], 45.0) || disc(x, y, [240.0, 500.0], 30.0) || disc(x, y, [700.0, 500.0], 60.0);
         let hand = (1100.0..1400.0).contains(&x) && (600.0..720.0).contains(&y);
         let lamp = x < 120.0 && y < 90.0;
-        if clip { Some(0.02) } else if hand { Some(0.4) } else { lamp.then_some(1.0) }
+        if clip {
+            Some(0.02)
+        } else if hand {
+            Some(0.4)
+        } else {
+            lamp.then_some(1.0)
+        }
     };
     assert_points_are_right(&Painted { corners: CORNERS, k1: 0.0, clutter: &clutter, seed: 3 }, 220, "clutter");
 }

@@ -1,10 +1,7 @@
 //! From the clearest window over the whole photo: each window's wave from its neighbour's, with whole lines counted between them.
 
 use super::wave::{Patch, Wave, Window};
-use crate::{
-    math::count,
-    photo::Light,
-};
+use crate::{math::count, photo::Light};
 use nalgebra::Vector2;
 use rayon::prelude::*;
 use std::collections::BinaryHeap;

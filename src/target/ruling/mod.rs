@@ -4,11 +4,11 @@
 //! place change the wave's strength, hardly its phase.
 
 mod grow;
-mod spectrum;
-mod wave;
 #[cfg(test)]
 #[expect(clippy::cast_possible_truncation, reason = "test scenes are small")]
 mod painted_check;
+mod spectrum;
+mod wave;
 
 use super::error::TargetError;
 use crate::{

@@ -55,7 +55,8 @@ impl Painted {
                     0.12 * heavier * (-((n - n.round()) / 0.1).powi(2) / 2.0).exp()
                 })
                 .sum();
-            let pencil = self.pencil && ((x - 300.0).abs() < 3.0 || (y - 0.7 * x - 40.0).abs() < 4.0 || (x - 640.0).hypot(y - 420.0) < 60.0);
+            let pencil =
+                self.pencil && ((x - 300.0).abs() < 3.0 || (y - 0.7 * x - 40.0).abs() < 4.0 || (x - 640.0).hypot(y - 420.0) < 60.0);
             let shade = 0.5 * (1.0 - 0.4 * x / SIZE[0] as f64);
             if pencil { 0.08 } else { shade * (1.0 - ink).max(0.1) }
         };

@@ -39,8 +39,7 @@ const SAME: f64 = 0.6;
 pub(super) fn strongest(light: &Light) -> Option<First> {
     let side = SIDE.min(light.width.min(light.height) / 2 * 2);
     let place = |n: usize, length: usize| count(side) / 2.0 + (count(length) - count(side)) * count(n) / count(TRIED - 1);
-    let windows: Vec<[f64; 2]> =
-        (0..TRIED * TRIED).map(|n| [place(n % TRIED, light.width), place(n / TRIED, light.height)]).collect();
+    let windows: Vec<[f64; 2]> = (0..TRIED * TRIED).map(|n| [place(n % TRIED, light.width), place(n / TRIED, light.height)]).collect();
     let best = windows.into_par_iter().filter_map(|centre| Spectrum::of(light, centre, side)).filter_map(|spectrum| {
         let peak = spectrum.peak(&|_| true)?;
         Some((peak.1, spectrum))
@@ -59,7 +58,6 @@ struct Spectrum {
 }
 
 impl Spectrum {
-    #[expect(clippy::cast_possible_truncation, clippy::cast_sign_loss, reason = "places in a photo")]
     fn of(light: &Light, centre: [f64; 2], side: usize) -> Option<Self> {
         let half = side / 2 - 1;
         let bounded = |c: f64, length: usize| c.round().clamp(count(half), count(length - 1 - half));

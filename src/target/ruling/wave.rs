@@ -129,7 +129,8 @@ impl Patch {
             let [sum, x, y] = self.moments(frequency);
             let off = Vector2::new((x / sum).im, (y / sum).im) / (TAU * self.window.moment());
             frequency += off.cap_magnitude(0.5 / (2.0 * count(self.window.half)));
-            if !((frequency - near).norm() < reach) {
+            let off = (frequency - near).norm();
+            if off.is_nan() || off >= reach {
                 return None;
             }
         }
