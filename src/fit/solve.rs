@@ -101,9 +101,9 @@ fn scaled_by_birge(mut joint: Joint, mut evaluations: usize) -> Result<Fit, FitE
         let solution = solve_once(&mut joint, &fine(), &mut evaluations)?;
         freedom = freedoms(&joint, &solution);
         let next = [freedom.spots.birge(), freedom.prints.birge()];
-        #[expect(clippy::float_cmp, reason = "a factor that is not needed is 1 exactly, and stays so")]
-        let unchanged = next == [joint.spot_scale, joint.print_scale];
-        if unchanged {
+        #[expect(clippy::float_cmp, reason = "the very factors that it was weighed with, usually 1")]
+        let weighed_with_them = next == [joint.spot_scale, joint.print_scale];
+        if weighed_with_them {
             return Ok(finished(joint, &solution, &freedom, evaluations));
         }
         let settled = (next[0] / joint.spot_scale).ln().abs() < BIRGE_SETTLED && (next[1] / joint.print_scale).ln().abs() < BIRGE_SETTLED;

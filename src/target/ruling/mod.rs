@@ -1,7 +1,8 @@
 //! Ruled and millimetre paper: its lines numbered over the whole photo. Start reading at [`read_ruling`].
 //!
 //! Lines of one family are a wave of darkness across the photo. Its phase, over 2π, counts lines; heavier lines at every fifth or tenth
-//! place change the wave's strength, hardly its phase.
+//! place change the wave's strength, hardly its phase. Pencil and magnets move the phase of the few windows that they run through by more than
+//! its stated uncertainty: the fit has to drop these points.
 
 mod grow;
 #[cfg(test)]

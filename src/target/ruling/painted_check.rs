@@ -3,6 +3,7 @@
 use super::{Families, RuledPoint, Ruling, read_ruling};
 use crate::{
     frames::PixelPoint,
+    math::robust::mad_scale,
     photo::{Light, Noise},
     target::TargetError,
 };
@@ -102,8 +103,11 @@ fn millimetre_paper_in_perspective() {
         assert_eq!(ruling.families, Families::Both);
         assert!(ruling.points.len() >= 40, "{} points", ruling.points.len());
         assert!((13.0..18.0).contains(&ruling.period_px), "{}", ruling.period_px);
-        // Uncertainties hold what the paper shows besides its lines; they may promise too little, not too much.
-        assert!((0.2..1.5).contains(&rms(&pulls)), "rms pull {}", rms(&pulls));
+        // Crossings that a pencil line runs through are off by more than they say; few, so that a robust fit drops them.
+        let usual = mad_scale(&pulls).unwrap();
+        let wild = pulls.iter().filter(|pull| pull.abs() > 4.3).count();
+        assert!((0.5..1.5).contains(&usual), "usual pull {usual}");
+        assert!(if pencil { 10 * wild <= pulls.len() } else { rms(&pulls) < 1.5 && wild == 0 }, "{wild} wild, rms {}", rms(&pulls));
     }
 }
 
