@@ -16,6 +16,7 @@ mod live;
 mod nist;
 // OpenCV beside our rotations, camera and solver
 mod opencv;
+mod paper;
 // worked examples and tables from the GUM, its supplement and textbooks
 mod published;
 // photos drawn from known truth, for the tests above and below

@@ -195,8 +195,10 @@ pub(super) fn target_names(bench: &Bench) -> Vec<&str> {
         return Vec::new();
     }
     let common = match &bench.target {
-        Some(Target { kind: TargetKind::Dots { photo, .. }, .. }) => photo.as_deref(),
-        _ => None,
+        Some(Target {
+            kind: TargetKind::Dots { photo, .. } | TargetKind::Sheet { photo, .. } | TargetKind::Ruling { photo, .. }, ..
+        }) => photo.as_deref(),
+        Some(Target { kind: TargetKind::Marks { .. }, .. }) | None => None,
     };
     let mut names: Vec<&str> = Vec::new();
     for name in common.into_iter().chain(bench.photos.iter().filter_map(|photo| photo.target.as_deref())) {

@@ -4,11 +4,11 @@ use super::{
     cell::knowledge_residual,
     correlated::CorrelatedPrior,
     model::{self, Bench, PRINT_LOCALS, Places, Shape},
-    observation::{Knowledge, PrintObservation, PrintPlace, SpotObservation, whitened_length, whitening},
+    observation::{Knowledge, PrintObservation, PrintPlace, Sharpness, SheetEdge, SpotObservation, Whitening, whitening},
     parameter::{Layout, Parameter, Prior},
     source::Source,
 };
-use crate::{frames::PixelCovariance, math::Problem, optics::Camera};
+use crate::{math::Problem, optics::Camera};
 use nalgebra::{DMatrix, DVector};
 use num_dual::DualSVec64;
 use rayon::prelude::*;
@@ -48,14 +48,15 @@ impl Rows {
     fn whitened_pixel<const N: usize>(&mut self, joint: &Joint, places: &Places<N>, seen: Seen, predicted: [DualSVec64<N>; 2]) {
         let Seen { at, white, factor } = seen;
         let difference = [at[0] - predicted[0].re, at[1] - predicted[1].re];
-        self.residuals[self.next] = factor * white[0] * difference[0];
-        self.residuals[self.next + 1] = factor * (white[1] * difference[0] + white[2] * difference[1]);
+        let [first, second] = white.apply(difference);
+        self.residuals[self.next] = factor * first;
+        self.residuals[self.next + 1] = factor * second;
         let slopes = predicted.map(|p| p.eps.unwrap_generic(nalgebra::Const::<N>, nalgebra::U1));
         for (i, place) in places.iter().enumerate() {
             let Some((column, scale)) = joint.column(*place) else { continue };
-            let (dx, dy) = (-slopes[0][i] * scale, -slopes[1][i] * scale);
-            self.jacobian[(self.next, column)] += factor * white[0] * dx;
-            self.jacobian[(self.next + 1, column)] += factor * (white[1] * dx + white[2] * dy);
+            let [first, second] = white.apply([-slopes[0][i] * scale, -slopes[1][i] * scale]);
+            self.jacobian[(self.next, column)] += factor * first;
+            self.jacobian[(self.next + 1, column)] += factor * second;
         }
         self.next += 2;
     }
@@ -65,7 +66,7 @@ impl Rows {
 #[derive(Clone, Copy)]
 struct Seen {
     at: [f64; 2],
-    white: [f64; 3],
+    white: Whitening,
     factor: f64,
 }
 
@@ -77,6 +78,8 @@ impl Joint {
         for print in &self.prints {
             let source = match print.place {
                 PrintPlace::Pitches(_) => Source::Dots,
+                PrintPlace::Lines(_) => Source::Ruling,
+                PrintPlace::Sheet { .. } => Source::SheetEdges,
                 PrintPlace::Metres(_) => Source::Marks,
                 PrintPlace::ScaleEnd(_) => Source::Scale,
             };
@@ -129,7 +132,7 @@ impl Joint {
     #[must_use]
     pub fn print_lengths(&self) -> Vec<Option<f64>> {
         let residuals = self.print_residuals_at(&self.values());
-        self.prints.iter().zip(residuals).map(|(print, residual)| whitened_length(print.covariance, residual?)).collect()
+        self.prints.iter().zip(residuals).map(|(print, residual)| print.sharpness.length(residual?)).collect()
     }
 
     /// Seen minus predicted, px, of every dot, mark and scale end.
@@ -142,11 +145,16 @@ impl Joint {
         let value = |parameter| self.layout.place(parameter).map(|place| values[place]);
         let pitch_m = value(Parameter::TargetPitch).unwrap_or(1.0);
         let end_m = |end, axis| value(Parameter::ScaleEnd { end, axis });
+        let side_m = |axis| value(Parameter::SheetSide { axis });
         let cameras: Vec<Camera<f64>> = (0..self.shape.references.len()).map(|view| self.camera(values, view)).collect();
         let project: Vec<_> = cameras.iter().map(Camera::print_projector).collect();
         let residual = |print: &PrintObservation| {
             let place = match print.place {
-                PrintPlace::Pitches([i, j]) => [i * pitch_m, j * pitch_m],
+                PrintPlace::Pitches([i, j]) | PrintPlace::Lines([i, j]) => [i * pitch_m, j * pitch_m],
+                PrintPlace::Sheet { edge, along } => {
+                    let bow_m = value(Parameter::SheetBow { edge }).unwrap_or(0.0);
+                    edge.place(along, bow_m, [side_m(0)?, side_m(1)?])
+                }
                 PrintPlace::Metres(metres) => metres,
                 PrintPlace::ScaleEnd(end) => [end_m(end, 0)?, end_m(end, 1)?],
             };
@@ -215,21 +223,28 @@ impl Joint {
 
     fn print_rows_of_view(&self, values: &[f64], view: usize, first: usize, rows: &mut Rows) -> Option<()> {
         let ends = |end: usize| [None, Some(Parameter::ScaleEnd { end, axis: 0 }), Some(Parameter::ScaleEnd { end, axis: 1 })];
-        let sets: [[Option<Parameter>; 3]; 3] = [[Some(Parameter::TargetPitch), None, None], ends(0), ends(1)];
-        for (set, leading) in sets.into_iter().enumerate() {
+        let sheet =
+            |edge| [Some(Parameter::SheetBow { edge }), Some(Parameter::SheetSide { axis: 0 }), Some(Parameter::SheetSide { axis: 1 })];
+        let sheets = SheetEdge::ALL.map(|edge| (Leading::Sheet(edge), sheet(edge)));
+        let pitch = (Leading::Pitch, [Some(Parameter::TargetPitch), None, None]);
+        let sets = [pitch, (Leading::ScaleEnd(0), ends(0)), (Leading::ScaleEnd(1), ends(1))].into_iter().chain(sheets);
+        for (set, leading) in sets {
+            if !self.prints.iter().any(|print| print.view == view && Leading::of(print.place) == set) {
+                continue;
+            }
             let places = model::print_places(&self.layout, view, leading);
             let v = model::seeded(&self.layout, values, &places);
             let camera = model::camera(&v[3..], self.shape.references[view]);
             let project = camera.print_projector();
-            let in_view = self.prints.iter().enumerate().filter(|(_, print)| print.view == view);
-            let of_set: Vec<_> =
-                in_view.filter_map(|(i, print)| place_of::<PRINT_LOCALS>(print.place, set, &v).map(|place| (i, print, place))).collect();
-            let predicted: Vec<_> = of_set.par_iter().with_min_len(TASK).map(|(_, _, place)| project(*place)).collect();
-            for ((i, print, _), predicted) in of_set.into_iter().zip(predicted) {
+            let own = |print: &PrintObservation| print.view == view && Leading::of(print.place) == set;
+            let of_set: Vec<(usize, &PrintObservation)> = self.prints.iter().enumerate().filter(|(_, print)| own(print)).collect();
+            let predicted = of_set.par_iter().with_min_len(TASK).map(|(_, print)| project(place_of::<PRINT_LOCALS>(print.place, &v)));
+            let predicted: Vec<_> = predicted.collect();
+            for ((i, print), predicted) in of_set.into_iter().zip(predicted) {
                 rows.next = first + 2 * i;
                 let seen = Seen {
                     at: [print.at.x_px, print.at.y_px],
-                    white: whitening(print.covariance)?,
+                    white: print.sharpness.whitening()?,
                     factor: print.weight.sqrt() / self.print_scale,
                 };
                 rows.whitened_pixel(self, &places, seen, predicted?);
@@ -277,18 +292,36 @@ impl Joint {
 }
 
 /// A difference in px as two whitened residuals.
-fn whitened(covariance: PixelCovariance, factor: f64, difference: [f64; 2]) -> Option<[f64; 2]> {
-    let white = whitening(covariance)?;
-    Some([factor * white[0] * difference[0], factor * (white[1] * difference[0] + white[2] * difference[1])])
+fn whitened(sharpness: Sharpness, factor: f64, difference: [f64; 2]) -> Option<[f64; 2]> {
+    Some(sharpness.whitening()?.apply(difference).map(|white| factor * white))
 }
 
-/// The place on the print as dual numbers, if the observation belongs to this set of parameters.
-fn place_of<const N: usize>(place: PrintPlace, set: usize, v: &[DualSVec64<N>; N]) -> Option<[DualSVec64<N>; 2]> {
-    match (place, set) {
-        (PrintPlace::Pitches([i, j]), 0) => Some([v[0] * i, v[0] * j]),
-        (PrintPlace::Metres(metres), 0) => Some(metres.map(DualSVec64::from_re)),
-        (PrintPlace::ScaleEnd(end), set) if set == end + 1 => Some([v[1], v[2]]),
-        _ => None,
+/// The parameters that a place on the print depends on, which lead those of the camera.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+enum Leading {
+    Pitch,
+    ScaleEnd(usize),
+    Sheet(SheetEdge),
+}
+
+impl Leading {
+    /// A place that depends on none of them counts with the pitch.
+    fn of(place: PrintPlace) -> Self {
+        match place {
+            PrintPlace::Pitches(_) | PrintPlace::Lines(_) | PrintPlace::Metres(_) => Self::Pitch,
+            PrintPlace::ScaleEnd(end) => Self::ScaleEnd(end),
+            PrintPlace::Sheet { edge, .. } => Self::Sheet(edge),
+        }
+    }
+}
+
+/// The place on the print as dual numbers, from its leading parameters.
+fn place_of<const N: usize>(place: PrintPlace, v: &[DualSVec64<N>; N]) -> [DualSVec64<N>; 2] {
+    match place {
+        PrintPlace::Pitches([i, j]) | PrintPlace::Lines([i, j]) => [v[0] * i, v[0] * j],
+        PrintPlace::Metres(metres) => metres.map(DualSVec64::from_re),
+        PrintPlace::ScaleEnd(_) => [v[1], v[2]],
+        PrintPlace::Sheet { edge, along } => edge.place(along, v[0], [v[1], v[2]]),
     }
 }
 
@@ -298,10 +331,10 @@ impl Problem for Joint {
         let values = self.layout.values_at(step);
         let mut rows = Vec::new();
         for (spot, residual) in self.spots.iter().zip(self.spot_residuals_at(&values)) {
-            rows.extend(whitened(spot.covariance, spot.weight.sqrt() / self.spot_scale, residual?)?);
+            rows.extend(whitened(Sharpness::Point(spot.covariance), spot.weight.sqrt() / self.spot_scale, residual?)?);
         }
         for (print, residual) in self.prints.iter().zip(self.print_residuals_at(&values)) {
-            rows.extend(whitened(print.covariance, print.weight.sqrt() / self.print_scale, residual?)?);
+            rows.extend(whitened(print.sharpness, print.weight.sqrt() / self.print_scale, residual?)?);
         }
         for known in &self.knowledge {
             rows.push(knowledge_residual(&self.layout, &self.shape, &values, known)?.0);

@@ -17,7 +17,7 @@ pub use cell::{Cell, Derived, cell};
 pub use correlated::{CorrelatedPrior, Marginal};
 pub use joint::Joint;
 pub use model::{PhotoShape, Shape, camera_at};
-pub use observation::{Knowledge, PrintObservation, PrintPlace, SpotObservation};
+pub use observation::{Knowledge, PrintObservation, PrintPlace, Sharpness, SheetEdge, SpotObservation};
 pub use parameter::{Entry, Layout, Parameter, Prior};
 pub use solve::{Fit, Outliers, approach, solve};
 pub use source::Source;

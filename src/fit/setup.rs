@@ -2,6 +2,7 @@
 //! and cameras where it is silent.
 
 use super::{
+    observation::SheetEdge,
     parameter::{Entry, Layout, Parameter, Prior},
     source::Source,
 };
@@ -21,6 +22,8 @@ const TANGENTIAL_U: f64 = 0.005;
 const ATTITUDE_BY_EYE_RAD: f64 = 5.0 * std::f64::consts::PI / 180.0;
 /// A camera that stands square-on by eye.
 pub const SQUARE_ON_BY_EYE_RAD: f64 = 5.0 * std::f64::consts::PI / 180.0;
+/// A sheet that is pinned up waves a little: its edges are straight within a millimetre (common practice), u = 1 mm / √3.
+const SHEET_BOW_U_M: f64 = 0.58e-3;
 /// A print that nobody levelled.
 const PRINT_TURN_BY_EYE_RAD: f64 = 5.0 * std::f64::consts::PI / 180.0;
 
@@ -124,9 +127,19 @@ pub fn add_views(layout: &mut Layout, views: &[ViewStart]) {
     }
 }
 
-/// Adds the pitch of the printed target.
+/// Adds the distance of the dots or lines of the target.
 pub fn add_target_pitch(layout: &mut Layout, pitch_m: Quantity) {
     layout.add(stated(Parameter::TargetPitch, pitch_m, Source::TargetPitch));
+}
+
+/// Adds width and height of a sheet of paper, and the bows of its edges.
+pub fn add_sheet(layout: &mut Layout, sides_m: [Quantity; 2]) {
+    for (axis, side_m) in sides_m.into_iter().enumerate() {
+        layout.add(stated(Parameter::SheetSide { axis }, side_m, Source::SheetShape));
+    }
+    for edge in SheetEdge::ALL {
+        layout.add(by_eye(Parameter::SheetBow { edge }, SHEET_BOW_U_M, Source::SheetShape));
+    }
 }
 
 /// Where the zero order falls on the print, as a start value.

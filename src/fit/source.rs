@@ -32,6 +32,12 @@ pub enum Source {
     TargetTurn,
     /// Centroids of the dots.
     Dots,
+    /// Places of ruled lines.
+    Ruling,
+    /// Places of a sheet's edges.
+    SheetEdges,
+    /// Width and height of a sheet, and how straight its edges are.
+    SheetShape,
     /// Pixels of the known marks.
     Marks,
     /// Two points of known distance.
@@ -65,6 +71,9 @@ impl Source {
             Self::TargetPitch => "target pitch",
             Self::TargetTurn => "target turn",
             Self::Dots => "target dots",
+            Self::Ruling => "ruled lines",
+            Self::SheetEdges => "sheet edges",
+            Self::SheetShape => "sheet shape",
             Self::Marks => "marks",
             Self::Scale => "scale",
             Self::SquareOn => "camera square-on",

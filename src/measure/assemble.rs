@@ -2,9 +2,9 @@
 
 use super::{GAUGE_THROW_M, MeasureError, cameras::Cameras, look::Seen, orders::Ordered, rough::Rough};
 use crate::{
-    bench::{Air, Bench, Laser, Medium, Pattern, Scale},
+    bench::{Air, Bench, Laser, Medium, Pattern, Scale, TargetKind},
     fit::{
-        Joint, Knowledge, Parameter, PhotoShape, PrintObservation, PrintPlace, Shape, SpotObservation,
+        Joint, Knowledge, Parameter, PhotoShape, PrintObservation, PrintPlace, Shape, Sharpness, SpotObservation,
         setup::{self, ThrowStart, ZeroOrderStart},
     },
     frames::PixelCovariance,
@@ -102,7 +102,7 @@ fn bare_joint(cameras: &Cameras, bench: &Bench) -> Joint {
 pub(super) fn assemble(seen: &Seen, bench: &Bench, cameras: &Cameras, ordered: &[Ordered], wavelengths_m: &[Quantity]) -> Joint {
     let mut joint = bare_joint(cameras, bench);
     if bench.calibration.is_none() {
-        free_the_print(&mut joint, bench);
+        free_the_print(&mut joint, bench, cameras);
     }
     let zero_order =
         if cameras.screen_known { ZeroOrderStart::OnPrint(ordered[0].rough.print.zero_order_m) } else { ZeroOrderStart::Origin };
@@ -144,11 +144,22 @@ fn move_bare_cameras(joint: &mut Joint, ordered: &[Ordered]) {
     }
 }
 
-/// On its own the print had to take its nominal pitch as exact; in the joint problem it is what the bench file says.
-fn free_the_print(joint: &mut Joint, bench: &Bench) {
-    if let Some(crate::bench::Target { kind: crate::bench::TargetKind::Dots { pitch_m, .. }, .. }) = &bench.target {
-        joint.layout = joint.layout.without(Parameter::TargetPitch);
-        setup::add_target_pitch(&mut joint.layout, *pitch_m);
+/// On its own the print had to take its nominal size as exact; in the joint problem it is what the bench file says.
+fn free_the_print(joint: &mut Joint, bench: &Bench, cameras: &Cameras) {
+    match bench.target.as_ref().map(|target| &target.kind) {
+        Some(TargetKind::Dots { pitch_m, .. } | TargetKind::Ruling { pitch_m, .. }) => {
+            joint.layout = joint.layout.without(Parameter::TargetPitch);
+            setup::add_target_pitch(&mut joint.layout, *pitch_m);
+        }
+        Some(TargetKind::Sheet { .. }) => {
+            for axis in 0..2 {
+                joint.layout = joint.layout.without(Parameter::SheetSide { axis });
+            }
+            if let Some(sides_m) = cameras.sheet_sides_m {
+                setup::add_sheet(&mut joint.layout, sides_m);
+            }
+        }
+        Some(TargetKind::Marks { .. }) | None => {}
     }
 }
 
@@ -199,7 +210,7 @@ fn add_scale(joint: &mut Joint, bench: &Bench) {
     joint.prints.extend(points.into_iter().enumerate().map(|(end, at)| PrintObservation {
         view: 0,
         at,
-        covariance: PixelCovariance::isotropic(CLICK_U_PX),
+        sharpness: Sharpness::Point(PixelCovariance::isotropic(CLICK_U_PX)),
         place: PrintPlace::ScaleEnd(end),
         weight: 1.0,
     }));

@@ -133,6 +133,7 @@ pub(super) fn cameras(calibration: &Calibration, seen: &Seen, bench: &Bench) -> 
         lens,
         references: vec![reference],
         prints: vec![],
+        sheet_sides_m: None,
         view_of_photo: vec![0; seen.patterns.len()],
         correlated: prior.into_iter().collect(),
         screen_known: true,

@@ -14,7 +14,7 @@ use super::{
 use crate::{
     bench::Bench,
     budget::{self, Value},
-    fit::{Cell, Derived, Fit, Parameter, PrintPlace, Prior, Source, cell},
+    fit::{Cell, Derived, Fit, Parameter, PrintPlace, Prior, SheetEdge, Source, cell},
     frames::{PixelCovariance, PixelPoint},
     optics::{Attitude, zero_order_in_sample_plane},
 };
@@ -224,6 +224,16 @@ pub(super) fn described(bench: &Bench, parameter: Parameter) -> (String, Paramet
         Parameter::ZeroOrderOnPrint { axis } => (format!("zero order on target {}", ["X", "Y"][axis.min(1)]), ParameterUnit::Length),
         Parameter::PrintTurn => ("target turn".to_owned(), ParameterUnit::Angle),
         Parameter::TargetPitch => ("target pitch".to_owned(), ParameterUnit::Length),
+        Parameter::SheetSide { axis } => (["sheet width", "sheet height"][axis.min(1)].to_owned(), ParameterUnit::Length),
+        Parameter::SheetBow { edge } => {
+            let name = match edge {
+                SheetEdge::Left => "left",
+                SheetEdge::Right => "right",
+                SheetEdge::Bottom => "lower",
+                SheetEdge::Top => "upper",
+            };
+            (format!("bow of the sheet's {name} edge"), ParameterUnit::Length)
+        }
         Parameter::LogFocalLength
         | Parameter::PrincipalPoint { .. }
         | Parameter::RadialDistortion { .. }

@@ -36,11 +36,12 @@ pub enum MeasureError {
         /// Width and height of the odd one.
         other: [usize; 2],
     },
-    /// The target kind needs a reader that does not exist yet.
+    /// The sheet may lie lengthwise or upright.
     #[error(
-        "[target] sheet and ruling cannot be read from a photo; use the printed dot target, or state the sheet's corners as [target] marks"
+        "the sheet looks as if it lay lengthwise or upright alike, so oblique is the camera to it; photograph it more square-on, \
+         state [camera] focal_length, or state its corners as [target] marks"
     )]
-    TargetKindNotRead,
+    SheetEitherWay,
     /// No camera sees the print as it appears.
     #[error(
         "no camera can see the target's points as they lie in the photo; check that marks and pixels belong together, in the order right, up"
@@ -115,7 +116,7 @@ impl MeasureError {
         match self {
             Self::NoPhoto => "no-photo",
             Self::SizesDiffer { .. } => "photo-sizes-differ",
-            Self::TargetKindNotRead => "target-kind",
+            Self::SheetEitherWay => "sheet-either-way",
             Self::NoPose => "no-camera-pose",
             Self::FlatLattice => "flat-lattice",
             Self::Irregular { .. } => "irregular",
@@ -129,6 +130,6 @@ impl MeasureError {
     /// Whether the input could not be used at all.
     #[must_use]
     pub fn is_unusable_input(&self) -> bool {
-        matches!(self, Self::NoPhoto | Self::SizesDiffer { .. } | Self::TargetKindNotRead | Self::AirOutOfRange { .. })
+        matches!(self, Self::NoPhoto | Self::SizesDiffer { .. } | Self::SheetEitherWay | Self::AirOutOfRange { .. })
     }
 }

@@ -6,7 +6,7 @@ use super::{
     calibrated::{LENS, belongs, in_file},
     cameras::{Discs, approached, pixel_from_metres, print_observations},
     conclude::described_lens,
-    look::{SeenTarget, look_at_target},
+    look::{SeenDots, look_at_dots},
     view::pose_from_homography,
     zhang::lens_from_homographies,
 };
@@ -14,7 +14,7 @@ use crate::{
     Error, Note,
     calibration::{Calibration, CalibrationError, Certificate, Kind, MadeFrom, Posterior, Shows},
     fit::{
-        Fit, Joint, Layout, Outliers, PrintObservation, PrintPlace, Shape,
+        Fit, Joint, Layout, Outliers, PrintObservation, PrintPlace, Shape, Sharpness,
         setup::{self, LensKnowledge, ViewStart},
         solve,
     },
@@ -90,8 +90,8 @@ pub fn calibrate_camera(photos: &[PhotoFile<'_>], pitch_m: Quantity) -> Result<C
             return Err(blaming(&photo.file, CalibrationError::ViewTwice { first: first.file.clone() }.into()));
         }
     }
-    let looked = |file: &PhotoFile<'_>| look_at_target(file).map_err(|error| blaming(file.name, error));
-    let seen = photos.par_iter().map(looked).collect::<Result<Vec<SeenTarget>, Refusal>>()?;
+    let looked = |file: &PhotoFile<'_>| look_at_dots(file).map_err(|error| blaming(file.name, error));
+    let seen = photos.par_iter().map(looked).collect::<Result<Vec<SeenDots>, Refusal>>()?;
     let mut calibration = Calibration {
         kind: Kind::Camera,
         made_from: MadeFrom {
@@ -141,7 +141,7 @@ pub fn lens_from_points(views: &[Vec<PointPair>], size_px: [usize; 2], u_px: f64
         let print = |pair: &PointPair| PrintObservation {
             view,
             at: pair.at,
-            covariance: PixelCovariance::isotropic(u_px),
+            sharpness: Sharpness::Point(PixelCovariance::isotropic(u_px)),
             place: PrintPlace::Metres(pair.plane_m),
             weight: 1.0,
         };

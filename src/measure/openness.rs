@@ -42,6 +42,7 @@ fn what_to_state(parameter: Parameter) -> &'static str {
         Parameter::Throw | Parameter::Step { .. } => "measure [screen] throw, or photograph wider orders",
         Parameter::ScreenTilt { .. } => "state [screen] tilt",
         Parameter::TargetPitch => "measure [target] pitch on the print",
+        Parameter::SheetSide { .. } | Parameter::SheetBow { .. } => "measure the sheet and state its corners as [target] marks",
         Parameter::ScaleEnd { .. } | Parameter::CameraPlace { .. } | Parameter::LogFocalLength => {
             "give a scale in the plane of the screen ([target], or [camera] scale)"
         }

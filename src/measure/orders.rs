@@ -172,7 +172,7 @@ pub(super) fn light_of(spot: &Spot) -> f64 {
 fn left_out(spots: &[Spot], on_screen: &dyn Fn(&Spot) -> bool) -> BTreeMap<usize, &'static str> {
     let common = CommonSize::of(spots);
     let reason = |spot: &Spot| match () {
-        () if !on_screen(spot) => Some("beyond the marks"),
+        () if !on_screen(spot) => Some("beyond the marks or the sheet"),
         () if !common.fits(spot) => Some("far from the common size of the spots"),
         () => None,
     };
