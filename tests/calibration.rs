@@ -469,3 +469,69 @@ fn opencv_finds_the_same_lens() {
         }
     });
 }
+
+fn spotrule(folder: &Path, arguments: &[&str]) -> (Option<i32>, String, String) {
+    let done = std::process::Command::new(env!("CARGO_BIN_EXE_spotrule")).args(arguments).current_dir(folder).output().unwrap();
+    let text = |bytes: &[u8]| String::from_utf8_lossy(bytes).into_owned();
+    (done.status.code(), text(&done.stdout), text(&done.stderr))
+}
+
+/// The commands as the documents write them.
+#[test]
+fn a_bench_is_calibrated_and_used_on_the_command_line() {
+    let bench = one_bench(330);
+    let folder = tempfile::tempdir().unwrap();
+    let at = |name: &str| folder.path().join(name);
+    for (name, bytes) in [("reference.jpg", &bench.reference), ("sample.jpg", &bench.sample), ("target.jpg", &bench.target)] {
+        std::fs::write(at(name), bytes).unwrap();
+    }
+    std::fs::write(at("bench.toml"), bench.bench.clone() + &bench.photos(&["reference.jpg"])).unwrap();
+    let calibrate = ["calibrate", "--bench", "bench.toml", "--out", "bench-calibrated.toml"];
+    let (code, out, errors) = spotrule(folder.path(), &calibrate);
+    assert_eq!(code, Some(0), "{errors}");
+    assert!(out.contains("throw") && out.contains("not a calibration certificate"), "{out}");
+    let (code, _, errors) = spotrule(folder.path(), &calibrate);
+    assert!(code == Some(2) && errors.contains("--force"), "{errors}");
+    std::fs::remove_file(at("target.jpg")).unwrap();
+    let measure = ["measure", "sample.jpg", "--bench", "bench-calibrated.toml", "--json", "-"];
+    let (code, out, errors) = spotrule(folder.path(), &measure);
+    assert_eq!(code, Some(0), "{errors}");
+    let result: serde_json::Value = serde_json::from_str(&out).unwrap();
+    assert!(list(&result, "budget").iter().any(|line| line["source"] == "calibration"), "{out}");
+    let (code, _, errors) = spotrule(folder.path(), &[&measure[..4], &["--throw", "1.000(1) m"]].concat());
+    assert!(code == Some(2) && errors.contains("[screen] is not what it was"), "{errors}");
+    let (code, _, errors) = spotrule(folder.path(), &["measure", "reference.jpg", "--bench", "bench-calibrated.toml"]);
+    assert!(code == Some(2) && errors.contains("count twice"), "{errors}");
+    let text = std::fs::read_to_string(at("bench-calibrated.toml")).unwrap();
+    assert!(text.contains(&sha256(&bench.reference)) && text.contains("5.00000(50)") || text.contains("5.0000(5)"), "{text}");
+    std::fs::write(at("bench-calibrated.toml"), text.replacen("u = 0.", "u = 0.0", 1)).unwrap();
+    let (code, out, errors) = spotrule(folder.path(), &measure);
+    assert!(code == Some(2) && errors.contains("was changed after it was written"), "{errors}");
+    assert!(out.contains("calibration-edited"), "{out}");
+}
+
+#[test]
+fn a_camera_is_calibrated_on_the_command_line() {
+    let scene = lens_scene(900);
+    let folder = tempfile::tempdir().unwrap();
+    let names = ["a.jpg", "b.jpg", "c.jpg", "d.jpg"];
+    for (name, bytes) in names.iter().zip(views(&scene, &SIDES[..4])) {
+        std::fs::write(folder.path().join(name), bytes).unwrap();
+    }
+    let camera = |photos: &[&str], pitch: &str| {
+        let options = ["--target-pitch", pitch, "--out", "camera.toml", "--json", "-"];
+        spotrule(folder.path(), &[&["calibrate", "camera"], photos, &options].concat())
+    };
+    let (code, out, errors) = camera(&names[..2], "20.00(1) mm");
+    assert!(code == Some(1) && errors.contains("2 views") && out.contains("calibration-views"), "{errors}");
+    let (code, _, errors) = camera(&names, "20.00 mm");
+    assert!(code == Some(2) && errors.contains("--target-pitch") && errors.contains("how sure?"), "{errors}");
+    assert!(!folder.path().join("camera.toml").exists(), "a refusal leaves no file");
+    let (code, out, errors) = camera(&names, "20.00(1) mm");
+    assert_eq!(code, Some(0), "{errors}");
+    let result: serde_json::Value = serde_json::from_str(&out).unwrap();
+    assert_eq!((result["schema"].as_str(), list(&result, "views").len()), (Some("spotrule.camera/1"), 4));
+    let text = std::fs::read_to_string(folder.path().join("camera.toml")).unwrap();
+    assert_eq!(calibration::read(&text).unwrap().unwrap().kind, Kind::Camera);
+    assert!(Bench::parse(&text).is_err(), "a camera is no bench");
+}

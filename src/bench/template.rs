@@ -111,7 +111,8 @@ seen_from = "front"  # or "behind", when the camera looks through a translucent 
 # [camera]
 # square_on = ["0(2) deg", "0(2) deg"]  # how far the line from screen to camera leans from the screen's normal: to the right, up
 # focal_length = "3400(50) px"  # or { focal = "4.20(5) mm", pixel = "1.40(1) um" }; otherwise from the photo's own data, or free
-# calibration = "camera.toml"  # instead of focal_length: the lens, from spotrule calibrate camera
+# Instead of focal_length, the lens as spotrule calibrate camera found it:
+#   calibration = "camera.toml"
 # scale = { points = [[412.0, 880.0], [1630.0, 902.0]], distance = "100.0(2) mm" }  # two points of the pattern photo, their distance on the screen
 
 # One photo can be named on the command line. For a series, list every photo:

@@ -17,4 +17,17 @@ pub enum SpotError {
         /// Height over the noise that the false-alarm rate asks for.
         needed: f64,
     },
+    /// Things stand out, but none has the profile of a spot.
+    #[error(
+        "{candidates} things stand out of the noise, the brightest near pixel ({x_px:.0}, {y_px:.0}), but none has the profile of a laser spot; \
+         darken the room so that the paper stays far from clipping, or check that this is the pattern photo"
+    )]
+    NoneFits {
+        /// Number of things that stand out.
+        candidates: usize,
+        /// Where the brightest is, px.
+        x_px: f64,
+        /// Where the brightest is, px.
+        y_px: f64,
+    },
 }

@@ -78,7 +78,7 @@ const MANY_MARKS: usize = 30;
 ///    off, clipped pixels and their neighbours left out. A clipped spot is also fitted in the weaker channels; the best known centre stays.
 ///
 /// # Errors
-/// [`SpotError::NothingFound`] with the brightest thing seen.
+/// [`SpotError::NothingFound`] or [`SpotError::NoneFits`] with the brightest thing seen.
 pub fn find(photo: &Photo, options: &SpotOptions) -> Result<Spots, SpotError> {
     let linear = photo.linear();
     let half = linear.half_planes();
@@ -91,7 +91,10 @@ pub fn find(photo: &Photo, options: &SpotOptions) -> Result<Spots, SpotError> {
     let found = detect::detect(&plane, noise, options.false_spots);
     let mut spots = measure::measure(&linear, &colour, noise, &found);
     if spots.is_empty() {
-        let best = found.peaks.first().copied().or(found.best_reject);
+        if let Some(brightest) = found.peaks.first() {
+            return Err(SpotError::NoneFits { candidates: found.peaks.len(), x_px: brightest.x_px, y_px: brightest.y_px });
+        }
+        let best = found.best_reject;
         return Err(SpotError::NothingFound {
             x_px: best.map_or(0.0, |peak| peak.x_px),
             y_px: best.map_or(0.0, |peak| peak.y_px),
