@@ -87,7 +87,7 @@ pub fn budget(fit: &Fit, pitches: &[Derived], angle: Option<&Derived>, name: imp
 fn effective_freedom(fit: &Fit, parts: &BTreeMap<Source, f64>) -> f64 {
     let scattered = |source: &Source| match source {
         Source::Spots if fit.joint.spot_scale > 1.0 => Some(fit.spot_freedom),
-        Source::Dots | Source::Marks if fit.joint.print_scale > 1.0 => Some(fit.print_freedom),
+        Source::Dots | Source::Ruling | Source::SheetEdges | Source::Marks if fit.joint.print_scale > 1.0 => Some(fit.print_freedom),
         _ => None,
     };
     let contributions: Vec<Contribution> = parts

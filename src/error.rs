@@ -2,8 +2,8 @@
 //! exit code they deserve.
 
 use crate::{
-    bench::BenchError, fit::FitError, lattice::LatticeError, measure::MeasureError, photo::PhotoError, quantity::QuantityError,
-    spots::SpotError, target::TargetError,
+    bench::BenchError, calibration::CalibrationError, fit::FitError, lattice::LatticeError, measure::MeasureError, photo::PhotoError,
+    quantity::QuantityError, spots::SpotError, target::TargetError,
 };
 
 /// Everything that can stop a measurement. The message names the value seen and what to do.
@@ -16,6 +16,9 @@ pub enum Error {
     /// The bench file says something that cannot be used.
     #[error(transparent)]
     Bench(#[from] BenchError),
+    /// A calibration cannot be read, or does not belong to photo and bench file.
+    #[error(transparent)]
+    Calibration(#[from] CalibrationError),
     /// The photo cannot be decoded or is of no use.
     #[error(transparent)]
     Photo(#[from] PhotoError),
@@ -42,7 +45,9 @@ impl Error {
     pub fn code(&self) -> &'static str {
         match self {
             Self::Quantity(_) => "quantity",
+            Self::Bench(BenchError::Calibration(error)) => error.code(),
             Self::Bench(_) => "bench-file",
+            Self::Calibration(error) => error.code(),
             Self::Photo(_) => "photo",
             Self::Spots(_) => "no-spots",
             Self::Lattice(_) => "no-lattice",
@@ -58,6 +63,7 @@ impl Error {
         match self {
             Self::Quantity(_) | Self::Bench(_) | Self::Photo(_) => true,
             Self::Measure(error) => error.is_unusable_input(),
+            Self::Calibration(error) => error.is_unusable_input(),
             Self::Spots(_) | Self::Lattice(_) | Self::Target(_) | Self::Fit(_) => false,
         }
     }

@@ -9,11 +9,16 @@
 
 pub mod bench;
 pub mod budget;
+pub mod calibration;
 pub mod cli;
+pub mod control;
+pub mod digest;
 pub mod error;
 pub mod fit;
 pub mod frames;
 pub mod lattice;
+pub mod limits;
+pub mod log;
 pub mod math;
 pub mod measure;
 pub mod note;

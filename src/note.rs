@@ -95,6 +95,15 @@ pub enum Note {
         belongs_to: crate::bench::Medium,
     },
     // fit
+    /// The linear propagation of uncertainty is not good enough here.
+    NotLinear {
+        /// Which value.
+        what: String,
+        /// Interval of the linear result, with unit.
+        linear: String,
+        /// Interval by Monte Carlo, with unit.
+        trials: String,
+    },
     /// The photo and a statement of the bench file do not go together.
     StatementStrained {
         /// What was stated.
@@ -105,6 +114,25 @@ pub enum Note {
         found: String,
         /// Distance in stated standard uncertainties.
         pull: f64,
+    },
+    // calibration
+    /// The photo has no EXIF data to check against the calibration's.
+    CalibrationUnchecked,
+    /// Photo and calibration do not go together.
+    CalibrationStrained {
+        /// Parameter that is pulled most.
+        what: String,
+        /// How far, in the calibration's standard uncertainties.
+        pull: f64,
+        /// Squared residuals of the calibration.
+        chi2: f64,
+        /// Expected value of `chi2` on a bench that was left alone.
+        redundancy: f64,
+    },
+    /// All spots lie beside their places by the same amount.
+    CalibrationShifted {
+        /// Mean offset of the spots, px.
+        shift_px: [f64; 2],
     },
 }
 
@@ -127,6 +155,10 @@ impl Note {
             Self::Ghosts { .. } => "ghosts",
             Self::ShapeUncertain { .. } => "line-or-plane-uncertain",
             Self::StatementStrained { .. } => "statement-strained",
+            Self::CalibrationUnchecked => "calibration-unchecked",
+            Self::CalibrationStrained { .. } => "calibration-strained",
+            Self::CalibrationShifted { .. } => "calibration-shifted",
+            Self::NotLinear { .. } => "not-linear",
             Self::StandardAirAssumed => "standard-air-assumed",
             Self::AirNotUsed => "air-not-used",
             Self::WavelengthInOtherMedium { .. } => "wavelength-in-other-medium",
@@ -187,6 +219,22 @@ impl std::fmt::Display for Note {
                 f,
                 "{what}: stated {stated}, but the photo wants {found}, {:.1} standard uncertainties away: measure it again, or state it with an honest uncertainty",
                 pull.abs()
+            ),
+            Self::CalibrationUnchecked => f.write_str(
+                "the photo lacks EXIF data that the calibration's photos have, so only its size was checked: make sure that camera, zoom and focus are the same",
+            ),
+            Self::CalibrationStrained { what, pull, chi2, redundancy } => write!(
+                f,
+                "the photo does not go with the calibration (chi-square {chi2:.1} where {redundancy:.1} is expected; {what} is pulled by {:.1} standard uncertainties): something was moved since; calibrate again",
+                pull.abs()
+            ),
+            Self::CalibrationShifted { shift_px: [x, y] } => write!(
+                f,
+                "all spots lie beside the places that the calibration gives them, by ({x:.2}, {y:.2}) px on average: camera, screen or laser was moved since; calibrate again"
+            ),
+            Self::NotLinear { what, linear, trials } => write!(
+                f,
+                "{what}: the interval {linear} takes the model for straight; with every input redrawn it is {trials}: quote the latter"
             ),
             Self::StandardAirAssumed => f.write_str(
                 "wavelength stated in vacuum, air not fully stated: 20(3) degC, 1013(30) hPa, 50(20) % humidity assumed for what is missing; state [air], above all the pressure at more than 300 m above the sea",

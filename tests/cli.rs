@@ -51,6 +51,27 @@ fn json_on_standard_output_stands_alone() {
     assert!((shares - 1.0).abs() < 1e-6, "{shares}");
 }
 
+/// The pitch of this scene is 12.05 µm with U = 0.02 µm; the verdict decides the exit code, text and JSON agree with it.
+#[test]
+fn limits_decide_the_exit_code() {
+    let folder = bench_folder("embossed-film");
+    let cases = [
+        ("12.0 ± 0.4 um", "guarded", 0, "inside"),
+        ("<= 11.9 um", "guarded", 3, "outside"),
+        ("12.053 ± 0.010 um", "guarded", 4, "undecided"),
+        ("12.053 ± 0.030 um", "shared", 4, "undecided"),
+        ("pitch 1: 12.0 ± 0.4 um; pitch 2: >= 3 um; angle: 120 ± 5 deg", "simple", 0, "inside"),
+    ];
+    for (limits, rule, code, outcome) in cases {
+        let done = spotrule(folder.path(), &["measure", "pattern.jpg", "--limits", limits, "--rule", rule, "--json", "result.json"]);
+        assert_eq!(done.status.code(), Some(code), "{limits}: {}{}", text(&done.stdout), text(&done.stderr));
+        assert!(text(&done.stdout).contains(&format!("{} ({rule} rule)", outcome.to_uppercase())), "{}", text(&done.stdout));
+        let result: serde_json::Value = serde_json::from_slice(&fs::read(folder.path().join("result.json")).unwrap()).unwrap();
+        assert_eq!((result["limits"]["outcome"].as_str(), result["limits"]["rule"].as_str()), (Some(outcome), Some(rule)));
+        assert_eq!(result["limits"]["text"].as_str(), Some(limits));
+    }
+}
+
 #[test]
 fn a_refusal_has_code_1_a_reason_and_json() {
     let folder = bench_folder("embossed-film");
@@ -66,7 +87,10 @@ fn a_refusal_has_code_1_a_reason_and_json() {
 #[test]
 fn wrong_use_has_code_2_and_says_what_to_do() {
     let folder = bench_folder("embossed-film");
-    let cases: [(&[&str], &str); 8] = [
+    let cases: [(&[&str], &str); 11] = [
+        (&["measure", "pattern.jpg", "--limits", "20.00(5) um"], "without brackets"),
+        (&["measure", "pattern.jpg", "--limits", "20 ± 1 um", "--rule", "strict"], "guarded, simple, shared"),
+        (&["measure", "pattern.jpg", "--rule", "strict"], "no decision rule"),
         (&["measure", "missing.jpg"], "missing.jpg"),
         (&["measure", "bench.toml"], "bench.toml"),
         (&["measure", "."], "folder"),
@@ -118,7 +142,7 @@ fn a_new_bench_file_reads_as_it_is() {
 #[test]
 fn every_command_explains_itself_with_an_example() {
     let folder = tempfile::tempdir().unwrap();
-    for command in ["measure", "new", "target", "render", "completions", "manual"] {
+    for command in ["measure", "calibrate", "new", "target", "render", "completions", "manual", "log"] {
         let done = spotrule(folder.path(), &[command, "--help"]);
         assert_eq!(done.status.code(), Some(0));
         assert!(text(&done.stdout).contains("Example"), "{command}");

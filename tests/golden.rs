@@ -6,38 +6,38 @@ use spotrule::{
     bench::Mode,
     frames::{PixelCovariance, PixelPoint},
     measure::{
-        BudgetLine, FitSummary, KindStatement, LatticeKind, Measurement, OrderRow, ParameterRow, ParameterUnit, PhotoSummary, RejectedSpot,
-        SampleResult, Value, ZeroOrder,
+        BudgetLine, FitSummary, KindStatement, LatticeKind, Measurement, OrderRow, ParameterRow, ParameterUnit, PhotoSummary,
+        ReciprocalView, RejectedSpot, SampleResult, Value, ZeroOrder,
     },
     photo::Exif,
-    report::{Program, json, refusal_text, refused_json, text},
+    report::{Context, Program, json, refusal_text, refused_json, text},
 };
 
 #[test]
 fn plane_lattice_as_text() {
-    compare("plane.txt", &text(&plane()));
+    compare("plane.txt", &text(&plane(), &Context::default()));
 }
 
 #[test]
 fn plane_lattice_as_json() {
-    compare("plane.json", &json(&plane(), &program()));
+    compare("plane.json", &json(&plane(), &Context::default(), &program()));
 }
 
 #[test]
 fn line_grating_of_a_series_as_text() {
-    compare("line.txt", &text(&line()));
+    compare("line.txt", &text(&line(), &Context::default()));
 }
 
 #[test]
 fn line_grating_of_a_series_as_json() {
-    compare("line.json", &json(&line(), &program()));
+    compare("line.json", &json(&line(), &Context::default(), &program()));
 }
 
 #[test]
 fn refusal_as_text_and_json() {
     let why = "7 spots carry an order, the fit needs 9; include more of the pattern or state the throw";
     compare("refused.txt", &refusal_text("too-few-spots", why));
-    compare("refused.json", &refused_json("too-few-spots", why, &program()));
+    compare("refused.json", &refused_json("too-few-spots", why, &Context::default(), &program()));
 }
 
 /// Versions and commits change without the format changing.
@@ -107,6 +107,12 @@ fn plane() -> Measurement {
             axes_px: vec![at(2210.01, 1500.15), at(2009.1, 1299.03)],
         }],
         mode: Mode::Reflection,
+        trials: None,
+        reciprocal: ReciprocalView {
+            wavelength_m: 632.82e-9,
+            zero_order: [0.0, 0.5],
+            vectors_per_m: vec![[15_868.0, 0.0], [0.0, 15_847.0]],
+        },
         notes: vec![Note::ToneCurveAssumed],
     }
 }
@@ -132,6 +138,7 @@ fn line() -> Measurement {
         rejected: vec![],
         fit: FitSummary { chi2_reduced: 0.81, degrees_of_freedom: 4.0, rms_px: 0.05, birge_factor: 1.0, spots_used: 2, dots_used: 0 },
         mode: Mode::Transmission,
+        trials: None,
         notes: vec![],
         ..plane()
     }

@@ -7,7 +7,7 @@ use rand_chacha::ChaCha8Rng;
 use rand_distr::{Distribution, Normal, StandardNormal, StudentT, Uniform};
 use spotrule::math::monte_carlo::{MonteCarlo, MonteCarloOptions, propagate};
 
-fn run(draw: impl FnMut(&mut ChaCha8Rng) -> Option<f64>) -> MonteCarlo {
+fn run(draw: impl Fn(&mut ChaCha8Rng) -> Option<f64> + Sync) -> MonteCarlo {
     let got = propagate(draw, &MonteCarloOptions { digits: 3, ..MonteCarloOptions::default() }).unwrap();
     assert_eq!(got.failed, 0);
     got

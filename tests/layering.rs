@@ -16,18 +16,23 @@ const MAY_USE: &[(&str, &[&str])] = &[
     ("photo", &["math"]),
     ("spots", &["photo", "math"]),
     ("target", &["lattice", "optics", "spots"]),
-    ("bench", &["quantity"]),
+    ("calibration", &["quantity"]),
+    ("bench", &["quantity", "calibration"]),
     ("fit", &["math", "lattice", "optics", "spots", "target", "bench"]),
     ("budget", &["fit"]),
     ("measure", &["budget"]),
     // a made-up scene speaks the language of the bench file that it writes beside its photo
     ("synth", &["lattice", "optics", "photo", "target", "bench"]),
-    ("report", &["measure"]),
-    ("cli", &["report", "synth"]),
+    ("limits", &["measure"]),
+    ("control", &[]),
+    ("report", &["measure", "limits", "control"]),
+    // knows results by their JSON alone
+    ("log", &[]),
+    ("cli", &["report", "log", "synth"]),
 ];
 
 /// Rooms that everyone may use.
-const OPEN: &[&str] = &["frames", "note", "error", "Error", "Note"];
+const OPEN: &[&str] = &["frames", "note", "error", "digest", "Error", "Note"];
 
 /// These gather words from every room: the error enum, the notes with their numbers, the front door, the programs.
 const GATHERERS: &[&str] = &["error", "note", "lib", "main", "bin"];
@@ -52,7 +57,7 @@ const OUTER_WORLD: &[&str] = &[
 ];
 
 /// Rooms that may serialise, through structs of their own: bench files, results, scenes and their truth.
-const MAY_SERIALISE: &[&str] = &["bench", "report", "synth", "cli"];
+const MAY_SERIALISE: &[&str] = &["bench", "calibration", "report", "log", "synth", "cli"];
 
 fn root(path: &str) -> PathBuf {
     Path::new(env!("CARGO_MANIFEST_DIR")).join(path)

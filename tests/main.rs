@@ -16,6 +16,7 @@ mod live;
 mod nist;
 // OpenCV beside our rotations, camera and solver
 mod opencv;
+mod paper;
 // worked examples and tables from the GUM, its supplement and textbooks
 mod published;
 // photos drawn from known truth, for the tests above and below
@@ -24,6 +25,12 @@ mod scenes;
 mod spots_on_known_photos;
 // a planted truth comes back, as often inside its uncertainty as stated
 mod truth;
+// a bench or a camera calibrated, saved, read back and used
+mod calibration;
+// the log under killed writers, full disks and closed folders
+mod log;
+// the published schemas against the types and against what is written
+mod schema;
 // the program as a user and a script meet it
 mod cli;
 // what must not matter: turned photos, units of length

@@ -17,13 +17,18 @@ const LEAST_DISTANCE_PX: f64 = 10.0;
 /// The camera; what is not stated is not known.
 pub(super) fn read_camera(root: &Table) -> Result<Camera, BenchError> {
     let section = Section::at(root, "camera")?;
-    section.allow_only(&["square_on", "focal_length", "scale"])?;
+    section.allow_only(&["square_on", "focal_length", "scale", "calibration"])?;
+    let calibration = section.text("calibration", "a file name in quotes, such as \"camera.toml\"")?.map(str::to_owned);
+    if calibration.is_some() && section.node("focal_length").is_some() {
+        let conflict = "the camera's calibration holds the focal length; take focal_length out";
+        return Err(BenchError::Conflict { place: section.place("focal_length"), conflict });
+    }
     let square_on_rad = section
         .pair("square_on", Dimension::Angle)?
         .map(|pair| tilt_pair(pair, "lean of the camera from the screen's normal"))
         .transpose()?;
     let scale = section.table("scale", SCALE_TABLE)?.map(|scale| read_scale(&scale)).transpose()?;
-    Ok(Camera { square_on_rad, focal_length: focal_length(&section)?, scale })
+    Ok(Camera { square_on_rad, focal_length: focal_length(&section)?, scale, calibration, lens: None })
 }
 
 /// `"3400(50) px"` or `{ focal = "4.20(5) mm", pixel = "1.40(1) um" }`.

@@ -1,6 +1,6 @@
 //! Why a bench file cannot be used: each reason names the place, the value seen, and what to do.
 
-use crate::quantity::QuantityError;
+use crate::{calibration::CalibrationError, quantity::QuantityError};
 
 /// Where something stands: a key of the bench file with its line, or a flag of the command line.
 #[derive(Debug, Clone, PartialEq, Eq)]
@@ -276,6 +276,9 @@ pub enum BenchError {
     /// Every sample's pitch is known.
     #[error("the pitch of every sample is given, so nothing is left to measure; leave out the pitch of the sample to be measured")]
     NothingToMeasure,
+    /// The file holds a calibration that cannot be used.
+    #[error(transparent)]
+    Calibration(#[from] CalibrationError),
     /// No photo shows the sample to be measured.
     #[error("no [[photo]] shows sample \"{name}\", the one to be measured (the first without a known pitch)")]
     NoPhotoOfSample {

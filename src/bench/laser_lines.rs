@@ -39,7 +39,7 @@ pub fn laser_lines() -> Result<Vec<LaserLine>, BenchError> {
 }
 
 fn read_line(line: &Section<'_>) -> Result<LaserLine, BenchError> {
-    let text = |key: &str| Ok(line.text(key, "a text")?.unwrap_or_default().to_owned());
+    let text = |key: &str| line.text(key, "a text").map(|text| text.unwrap_or_default().to_owned());
     let missing = || BenchError::Missing { key: line.path_of("wavelength"), advice: "every line has one".to_owned() };
     let from_memory = line.node("from_memory").is_some_and(|node| matches!(&node.content, tree::Content::Other(word) if word == "true"));
     let wavelength_m = line.quantity("wavelength", Dimension::Length)?.ok_or_else(missing)?.quantity;

@@ -1,7 +1,8 @@
-//! In: the text of a bench file (TOML). Out: [`Bench`]: what the operator knows, checked, in SI units.
+//! In: the text of a bench file (TOML). Out: [`Bench`]: what the operator knows, checked, in SI units; what a calibration knows, as it was saved.
 //! Must never know: photos as pixels, the fit, files (a photo is a name here).
 //! Start reading at [`Bench`].
 
+mod calibrated;
 mod camera;
 mod error;
 mod laser;
@@ -18,14 +19,17 @@ mod tree;
 
 use crate::{
     Note,
+    calibration::{Calibration, CalibrationError},
     frames::{PixelPoint, Side, TargetPoint},
     quantity::Quantity,
 };
 
+pub use calibrated::sections;
 pub use error::{BenchError, Place};
 pub use laser_lines::{LaserLine, laser_lines};
 pub use overrides::Overrides;
 pub use sheet::SheetFormat;
+pub use target::target_pitch;
 pub use template::{template, template_with};
 
 /// Everything the operator knows. `None` means: not known at all.
@@ -45,6 +49,8 @@ pub struct Bench {
     pub camera: Camera,
     /// The photos of the pattern, in order; empty when the command line names the one photo.
     pub photos: Vec<PatternPhoto>,
+    /// A saved posterior that takes the place of what is stated of laser, screen, target and camera.
+    pub calibration: Option<Calibration>,
 }
 
 /// A laser.
@@ -177,6 +183,10 @@ pub struct Camera {
     pub focal_length: Option<FocalLength>,
     /// Two points and their distance.
     pub scale: Option<Scale>,
+    /// File with the calibration of the lens, as written.
+    pub calibration: Option<String>,
+    /// That calibration, once somebody has read the file: see [`Bench::with_lens`].
+    pub lens: Option<Calibration>,
 }
 
 /// A focal length as the operator states it.
@@ -235,12 +245,29 @@ impl Bench {
     pub fn with_overrides(text: Option<&str>, overrides: &Overrides) -> Result<(Self, Vec<Note>), BenchError> {
         let mut root = text.map(tree::Table::from_toml).transpose()?.unwrap_or_default();
         overrides.apply(&mut root)?;
+        let (mut bench, notes) = Self::read(&root)?;
+        if let (Some(text), true) = (text, root.get("calibration").is_some()) {
+            bench.calibrate_by(text, &root)?;
+        }
+        bench.check_measured_sample()?;
+        Ok((bench, notes))
+    }
+
+    /// Reads a bench file that is to be calibrated: the pitch of every sample may be known.
+    ///
+    /// # Errors
+    /// As [`Self::parse`]; also when the bench is calibrated already.
+    pub fn to_calibrate(text: &str) -> Result<(Self, Vec<Note>), BenchError> {
+        let root = tree::Table::from_toml(text)?;
+        if root.get("calibration").is_some() {
+            return Err(CalibrationError::Already.into());
+        }
         Self::read(&root)
     }
 
     /// Reads every section, then what binds them.
     fn read(root: &tree::Table) -> Result<(Self, Vec<Note>), BenchError> {
-        const SECTIONS: &[&str] = &["laser", "air", "sample", "screen", "target", "camera", "photo"];
+        const SECTIONS: &[&str] = &["laser", "air", "sample", "screen", "target", "camera", "photo", "calibration"];
         section::Section::of(String::new(), root).allow_only(SECTIONS)?;
         let mut notes = Vec::new();
         let lasers = laser::read_lasers(root)?;
@@ -251,9 +278,7 @@ impl Bench {
         let target = target::read_target(root, screen.seen_from)?;
         let camera = camera::read_camera(root)?;
         let photos = photos::read_photos(root, &lasers, &samples)?;
-        let bench = Self { lasers, air, samples, screen, target, camera, photos };
-        bench.check_measured_sample()?;
-        Ok((bench, notes))
+        Ok((Self { lasers, air, samples, screen, target, camera, photos, calibration: None }, notes))
     }
 
     /// Index of the sample to be measured: the first without a known pitch.

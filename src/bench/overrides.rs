@@ -69,6 +69,12 @@ impl Overrides {
         Bench::with_overrides(None, &filled).map(|_| ())
     }
 
+    /// What is stated, as flag and text, in the order of the sections; for the record of a measurement.
+    #[must_use]
+    pub fn stated(&self) -> Vec<(&'static str, &str)> {
+        self.flags().into_iter().filter_map(|(_, _, flag, text)| Some((flag, text.as_deref()?))).collect()
+    }
+
     /// Puts the flags into the tree of the bench file.
     pub(super) fn apply(&self, root: &mut Table) -> Result<(), BenchError> {
         for (section, key, flag, text) in self.flags() {

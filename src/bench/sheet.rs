@@ -1,5 +1,8 @@
 //! Sizes of sheets of paper.
 
+/// Cut of the inch formats, ± m.
+const INCH_TOLERANCE_M: f64 = 0.8e-3;
+
 /// A format of paper.
 #[derive(Debug, Clone, Copy, PartialEq, Eq)]
 pub enum SheetFormat {
@@ -39,6 +42,18 @@ impl SheetFormat {
             Self::Letter => [0.2159, 0.2794],
             Self::Legal => [0.2159, 0.3556],
             Self::Tabloid => [0.2794, 0.4318],
+        }
+    }
+
+    /// Largest deviation of each side from [`Self::sides_m`], m.
+    ///
+    /// ISO 216:2007: ±1.5 mm up to 150 mm, ±2 mm up to 600 mm (from memory). Inch formats: ±0.8 mm, 1/32 in (common practice).
+    #[must_use]
+    pub fn tolerance_m(self) -> [f64; 2] {
+        const SHORT_M: f64 = 0.150;
+        match self {
+            Self::A3 | Self::A4 | Self::A5 => self.sides_m().map(|side| if side <= SHORT_M { 1.5e-3 } else { 2.0e-3 }),
+            Self::Letter | Self::Legal | Self::Tabloid => [INCH_TOLERANCE_M; 2],
         }
     }
 }

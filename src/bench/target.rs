@@ -3,12 +3,12 @@
 use super::{
     BenchError, SheetFormat, Side, Target, TargetKind,
     screen::turn,
-    section::{Section, Sense, point},
+    section::{Section, Sense, point, stated},
     tree::{Content, Node, Table},
 };
 use crate::{
     frames::{PixelPoint, TargetPoint},
-    quantity::Dimension,
+    quantity::{Dimension, Quantity},
 };
 
 const KINDS: [&str; 4] = ["pitch", "marks", "sheet", "ruling"];
@@ -51,8 +51,17 @@ fn refuse_stray_marks_u(section: &Section<'_>, kind: &str) -> Result<(), BenchEr
     Err(BenchError::Conflict { place: section.place("marks_u"), conflict: "this is the uncertainty of marks, but there are none" })
 }
 
+const DOTS: Sense = Sense { what: "distance of printed dots", range: 0.2e-3..=1.0, range_in_words: "0.2 mm to 1 m" };
+
+/// The pitch of a dot target as a flag states it, m.
+///
+/// # Errors
+/// A [`BenchError`] that names the flag, the value seen and what to do.
+pub fn target_pitch(flag: &'static str, text: &str) -> Result<Quantity, BenchError> {
+    stated(&Node::text(flag, text), flag, Dimension::Length)?.sensible_and_known(&DOTS)
+}
+
 fn read_kind(section: &Section<'_>, kind: &str, seen_from: Side) -> Result<TargetKind, BenchError> {
-    const DOTS: Sense = Sense { what: "distance of printed dots", range: 0.2e-3..=1.0, range_in_words: "0.2 mm to 1 m" };
     const LINES: Sense = Sense { what: "distance of ruled lines", range: 0.2e-3..=1.0, range_in_words: "0.2 mm to 1 m" };
     let photo = section.text("photo", "a file name in quotes, such as \"target.jpg\"")?.map(str::to_owned);
     let pitch = |sense: &Sense| match section.quantity(kind, Dimension::Length)? {

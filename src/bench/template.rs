@@ -111,6 +111,7 @@ seen_from = "front"  # or "behind", when the camera looks through a translucent 
 # [camera]
 # square_on = ["0(2) deg", "0(2) deg"]  # how far the line from screen to camera leans from the screen's normal: to the right, up
 # focal_length = "3400(50) px"  # or { focal = "4.20(5) mm", pixel = "1.40(1) um" }; otherwise from the photo's own data, or free
+# calibration = "camera.toml"  # instead of focal_length: the lens, from spotrule calibrate camera
 # scale = { points = [[412.0, 880.0], [1630.0, 902.0]], distance = "100.0(2) mm" }  # two points of the pattern photo, their distance on the screen
 
 # One photo can be named on the command line. For a series, list every photo:
@@ -141,7 +142,8 @@ mod tests {
         let is_key = |rest: &str| {
             rest.starts_with('[') || rest.split_once(" = ").is_some_and(|(key, _)| key.chars().all(|c| c == '_' || c.is_ascii_lowercase()))
         };
-        let skip = ["sheet", "ruling", "laser =", "sample =", "pitch = \"2.0"];
+        // One kind of target, and a lens either measured or stated: each of these stands in place of another example.
+        let skip = ["sheet", "ruling", "calibration", "laser =", "sample =", "pitch = \"2.0"];
         let uncommented = |line: &str| match line.strip_prefix("# ") {
             Some(rest) if is_key(rest) && !skip.iter().any(|start| rest.starts_with(start)) => rest.to_owned(),
             _ => line.to_owned(),

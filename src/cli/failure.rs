@@ -7,6 +7,10 @@ use std::{io::Write, path::PathBuf, process::ExitCode};
 pub(super) const REFUSED: u8 = 1;
 /// Wrong use or unreadable input.
 pub(super) const WRONG_USE: u8 = 2;
+/// Measured, outside the limits.
+pub(super) const OUTSIDE: u8 = 3;
+/// Measured, undecided.
+pub(super) const UNDECIDED: u8 = 4;
 
 /// Why a command gives up.
 #[derive(Debug, thiserror::Error)]
@@ -50,6 +54,12 @@ pub enum Failure {
         /// Why.
         error: Box<Error>,
     },
+    /// The limits cannot be read, or limit what is not there.
+    #[error("{0}")]
+    Limits(#[from] crate::limits::LimitsError),
+    /// The log cannot be written or read.
+    #[error("{0}")]
+    Log(#[from] crate::log::LogError),
     /// The command line does not make sense.
     #[error("{0}")]
     Usage(String),
@@ -76,6 +86,8 @@ impl Failure {
             Self::Unreadable { .. } => "file-unreadable",
             Self::Unwritable { .. } | Self::Output(_) => "file-unwritable",
             Self::Exists { .. } => "file-exists",
+            Self::Limits(_) => "limits",
+            Self::Log(_) => "log",
             Self::UnknownEnding { .. } | Self::Usage(_) => "wrong-use",
         }
     }

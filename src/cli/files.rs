@@ -42,12 +42,21 @@ pub(super) enum Existing {
 /// Writes a file whole: into a temporary neighbour first, then renamed, so that no half file is ever left under the name.
 pub(super) fn write(path: &Path, bytes: &[u8], existing: Existing) -> Result<(), Failure> {
     let unwritable = |cause| Failure::Unwritable { path: path.to_owned(), cause };
+    write_with(path, existing, |out| out.write_all(bytes).map_err(unwritable))
+}
+
+/// As [`write()`], for what is too long to be held in memory.
+pub(super) fn write_with(path: &Path, existing: Existing, fill: impl FnOnce(&mut dyn Write) -> Result<(), Failure>) -> Result<(), Failure> {
+    let unwritable = |cause| Failure::Unwritable { path: path.to_owned(), cause };
     if path.is_dir() {
         return Err(unwritable(std::io::Error::other("it is a folder")));
     }
     let folder = path.parent().filter(|parent| !parent.as_os_str().is_empty()).map_or_else(|| PathBuf::from("."), Path::to_owned);
-    let mut file = tempfile::NamedTempFile::new_in(folder).map_err(unwritable)?;
-    file.write_all(bytes).and_then(|()| readable_by_others(file.as_file())).and_then(|()| file.as_file().sync_all()).map_err(unwritable)?;
+    let file = tempfile::NamedTempFile::new_in(folder).map_err(unwritable)?;
+    let mut out = std::io::BufWriter::new(file);
+    fill(&mut out)?;
+    let file = out.into_inner().map_err(|error| unwritable(error.into_error()))?;
+    readable_by_others(file.as_file()).and_then(|()| file.as_file().sync_all()).map_err(unwritable)?;
     match existing {
         Existing::Replaced => file.persist(path).map(drop).map_err(|error| unwritable(error.error)),
         Existing::Kept => file.persist_noclobber(path).map(drop).map_err(|error| match error.error.kind() {

@@ -3,11 +3,17 @@
 //! Start reading at [`run`].
 
 mod arguments;
+mod calibrate;
+mod calibrate_camera;
 mod completions;
 mod failure;
 mod files;
+mod log;
 mod measure;
 mod new;
+mod progress;
+mod provenance;
+mod record;
 mod render;
 mod target;
 
@@ -27,8 +33,10 @@ pub fn run() -> ExitCode {
     };
     let outcome = match arguments.command {
         Command::Measure(arguments) => measure::run(&arguments),
+        Command::Calibrate(arguments) => calibrate::run(&arguments),
         Command::New(arguments) => new::run(&arguments),
         Command::Target(arguments) => target::run(&arguments),
+        Command::Log(arguments) => log::run(&arguments),
         Command::Render(arguments) => render::run(&arguments),
         Command::Completions(arguments) => completions::shell(&arguments),
         Command::Manual(arguments) => completions::manual(&arguments),

@@ -33,6 +33,8 @@ pub struct Cell {
     pub area_m2: Option<Derived>,
     /// The two vectors along x_s, y_s, m; one for a line grating (along its grating vector).
     pub vectors_m: Vec<[f64; 2]>,
+    /// The two vectors in terms of the direct basis of the lattice parameters.
+    pub(super) combinations: [[i64; 2]; 2],
 }
 
 type D5 = DualSVec64<5>;
@@ -40,6 +42,18 @@ type D5 = DualSVec64<5>;
 /// Reduced cell of a sample at the given parameter values; `None` for a degenerate lattice.
 #[must_use]
 pub fn cell(layout: &Layout, shape: &Shape, values: &[f64], sample: usize) -> Option<Cell> {
+    cell_along(layout, shape, values, sample, None)
+}
+
+/// [`cell`] with given combinations of the basis in place of the reduced ones: near a hexagonal or square lattice the shortest vectors
+/// swap at the slightest change of the parameters, and a distribution must follow one pair.
+pub(super) fn cell_along(
+    layout: &Layout,
+    shape: &Shape,
+    values: &[f64],
+    sample: usize,
+    combinations: Option<[[i64; 2]; 2]>,
+) -> Option<Cell> {
     let lattice = |vector, axis| layout.place(Parameter::Lattice { sample, vector, axis });
     let places = [lattice(0, 0), lattice(0, 1), lattice(1, 0), lattice(1, 1), layout.place(Parameter::PrintTurn)];
     let v: [D5; 5] = std::array::from_fn(|i| {
@@ -69,9 +83,13 @@ pub fn cell(layout: &Layout, shape: &Shape, values: &[f64], sample: usize) -> Op
             row_spacing_m: vec![derived(pitch)],
             area_m2: None,
             vectors_m: vec![vector],
+            combinations: [[1, 0], [0, 1]],
         });
     }
-    let [a, b] = reduced(direct([v[0], v[1]], [v[2], v[3]])?)?;
+    let basis = direct([v[0], v[1]], [v[2], v[3]])?;
+    let combinations = combinations.or_else(|| reduced(basis))?;
+    #[expect(clippy::cast_precision_loss, reason = "reduction integers are far below 2^53")]
+    let [a, b]: [[D5; 2]; 2] = combinations.map(|[m, n]| std::array::from_fn(|axis| basis[0][axis] * m as f64 + basis[1][axis] * n as f64));
     let length = |vector: [D5; 2]| (vector[0] * vector[0] + vector[1] * vector[1]).sqrt();
     let signed_area = a[0] * b[1] - a[1] * b[0];
     let area = if signed_area.re < 0.0 { -signed_area } else { signed_area };
@@ -83,6 +101,7 @@ pub fn cell(layout: &Layout, shape: &Shape, values: &[f64], sample: usize) -> Op
         angle_rad: Some(derived(angle)),
         orientation_rad: orientation(a),
         vectors_m: vec![a.map(|c| c.re), b.map(|c| c.re)],
+        combinations,
     })
 }
 
@@ -95,13 +114,10 @@ fn direct<D: DualNum<f64> + Copy>(g1: [D; 2], g2: [D; 2]) -> Option<[[D; 2]; 2]>
     Some([[g2[1] / area, -g2[0] / area], [-g1[1] / area, g1[0] / area]])
 }
 
-/// Lagrange-Gauss reduced basis: the two shortest vectors, shortest first, 90° or more apart.
-fn reduced(basis: [[D5; 2]; 2]) -> Option<[[D5; 2]; 2]> {
-    let plain = basis.map(|vector| vector.map(|component| component.re));
-    let rows = lattice::reduce(&lattice::Cell { a: plain[0], b: plain[1] }).ok()?.transform.rows;
-    #[expect(clippy::cast_precision_loss, reason = "reduction integers are far below 2^53")]
-    let combined = |[m, n]: [i64; 2]| -> [D5; 2] { std::array::from_fn(|axis| basis[0][axis] * m as f64 + basis[1][axis] * n as f64) };
-    Some([combined(rows[0]), combined(rows[1])])
+/// Lagrange-Gauss reduction: the combinations that give the two shortest vectors, shortest first, 90° or more apart.
+fn reduced(basis: [[D5; 2]; 2]) -> Option<[[i64; 2]; 2]> {
+    let [a, b] = basis.map(|vector| vector.map(|component| component.re));
+    Some(lattice::reduce(&lattice::Cell { a, b }).ok()?.transform.rows)
 }
 
 fn gather<const N: usize>(number: DualSVec64<N>, places: &[Option<usize>; N]) -> Derived {

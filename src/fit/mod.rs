@@ -3,6 +3,7 @@
 //! Start reading at [`Joint`], then [`solve()`].
 
 mod cell;
+mod correlated;
 mod joint;
 mod model;
 mod observation;
@@ -10,14 +11,17 @@ mod parameter;
 pub mod setup;
 mod solve;
 mod source;
+mod trials;
 
 pub use cell::{Cell, Derived, cell};
+pub use correlated::{CorrelatedPrior, Marginal};
 pub use joint::Joint;
-pub use model::{PhotoShape, Shape};
-pub use observation::{Knowledge, PrintObservation, PrintPlace, SpotObservation};
+pub use model::{PhotoShape, Shape, camera_at};
+pub use observation::{Knowledge, PrintObservation, PrintPlace, Sharpness, SheetEdge, SpotObservation};
 pub use parameter::{Entry, Layout, Parameter, Prior};
 pub use solve::{Fit, Outliers, approach, solve};
 pub use source::Source;
+pub use trials::trials;
 
 /// Why the joint fit gives no pitch.
 #[derive(Debug, thiserror::Error)]

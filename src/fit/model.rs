@@ -59,7 +59,7 @@ pub(super) fn print_places(layout: &Layout, view: usize, first: [Option<Paramete
     std::array::from_fn(|i| if i < 3 { first[i].and_then(|p| layout.place(p)) } else { layout.place(camera[i - 3]) })
 }
 
-fn camera_parameters(view: usize) -> [Parameter; 13] {
+pub(super) fn camera_parameters(view: usize) -> [Parameter; 13] {
     [
         Parameter::LogFocalLength,
         Parameter::PrincipalPoint { axis: 0 },
@@ -102,6 +102,13 @@ pub(super) fn camera<D: DualNum<f64> + Copy>(v: &[D], reference: Matrix3<f64>) -
         place_m: [v[10], v[11], v[12]],
         reference,
     }
+}
+
+/// The camera of a view at the values of a layout.
+#[must_use]
+pub fn camera_at(layout: &Layout, view: usize, reference: Matrix3<f64>) -> Camera<f64> {
+    let values = camera_parameters(view).map(|parameter| layout.value(parameter).unwrap_or(0.0));
+    camera(&values, reference)
 }
 
 /// Everything that the spots of one photo share, worked out once.

@@ -1,6 +1,6 @@
 //! The unknowns of the joint problem: what each is, what is known of it beforehand, and where it stands in the solver's vector.
 
-use super::source::Source;
+use super::{observation::SheetEdge, source::Source};
 
 /// One scalar unknown. Blocks that several photos share simply name the same parameter.
 #[derive(Debug, Clone, Copy, PartialEq, Eq, Hash)]
@@ -45,8 +45,18 @@ pub enum Parameter {
     },
     /// Turn of the print against the bench's horizontal, rad.
     PrintTurn,
-    /// Distance of neighbouring dots of the target, m.
+    /// Distance of neighbouring dots or lines of the target, m.
     TargetPitch,
+    /// Width (`axis` 0, along X) or height (1, along Y) of a sheet of paper, m.
+    SheetSide {
+        /// X or Y.
+        axis: usize,
+    },
+    /// How far the middle of a sheet's edge stands out of the straight line between its ends, m.
+    SheetBow {
+        /// Which edge.
+        edge: SheetEdge,
+    },
     /// Natural logarithm of the focal length in px: a factor is what is known of it, and it can never reach zero.
     LogFocalLength,
     /// Principal point, px.
@@ -94,6 +104,14 @@ pub enum Prior {
     Free,
     /// Normal with this mean and standard uncertainty.
     Normal {
+        /// Mean.
+        mean: f64,
+        /// Standard uncertainty.
+        u: f64,
+    },
+    /// Normal with this mean and standard uncertainty, together with others: its rows are those of a
+    /// [`CorrelatedPrior`](super::CorrelatedPrior).
+    Correlated {
         /// Mean.
         mean: f64,
         /// Standard uncertainty.

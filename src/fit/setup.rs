@@ -2,6 +2,7 @@
 //! and cameras where it is silent.
 
 use super::{
+    observation::SheetEdge,
     parameter::{Entry, Layout, Parameter, Prior},
     source::Source,
 };
@@ -21,6 +22,8 @@ const TANGENTIAL_U: f64 = 0.005;
 const ATTITUDE_BY_EYE_RAD: f64 = 5.0 * std::f64::consts::PI / 180.0;
 /// A camera that stands square-on by eye.
 pub const SQUARE_ON_BY_EYE_RAD: f64 = 5.0 * std::f64::consts::PI / 180.0;
+/// A sheet that is pinned up waves a little: its edges are straight within a millimetre (common practice), u = 1 mm / √3.
+const SHEET_BOW_U_M: f64 = 0.58e-3;
 /// A print that nobody levelled.
 const PRINT_TURN_BY_EYE_RAD: f64 = 5.0 * std::f64::consts::PI / 180.0;
 
@@ -74,6 +77,25 @@ fn by_eye(parameter: Parameter, u: f64, source: Source) -> Entry {
 
 /// Adds the camera: intrinsics shared by all views, and the pose of each view.
 pub fn add_camera(layout: &mut Layout, lens: &LensKnowledge, views: &[ViewStart]) {
+    add_ordinary_lens(layout, lens);
+    add_views(layout, views);
+}
+
+/// Adds a lens of which nothing is known beforehand, with start values for focal length and principal point, px.
+pub fn add_unknown_lens(layout: &mut Layout, focal_px: f64, principal_px: [f64; 2]) {
+    let mut free = |parameter, value, scale| layout.add(entry(parameter, value, Prior::Free, Source::Lens, scale));
+    free(Parameter::LogFocalLength, focal_px.ln(), 0.01);
+    for (axis, place_px) in principal_px.into_iter().enumerate() {
+        free(Parameter::PrincipalPoint { axis }, place_px, 1.0);
+    }
+    for term in 0..2 {
+        free(Parameter::RadialDistortion { term }, 0.0, 0.01);
+        free(Parameter::TangentialDistortion { term }, 0.0, 0.001);
+    }
+}
+
+/// An ordinary lens, as far as EXIF data or the operator know it.
+fn add_ordinary_lens(layout: &mut Layout, lens: &LensKnowledge) {
     let [width, height] = lens.size_px;
     let u_principal = PRINCIPAL_POINT_U_WIDTHS * width.max(height);
     let normal = |mean, u| Prior::Normal { mean, u };
@@ -89,6 +111,10 @@ pub fn add_camera(layout: &mut Layout, lens: &LensKnowledge, views: &[ViewStart]
     for term in 0..2 {
         layout.add(entry(Parameter::TangentialDistortion { term }, 0.0, normal(0.0, TANGENTIAL_U), Source::Lens, 0.001));
     }
+}
+
+/// Adds the pose of each view.
+pub fn add_views(layout: &mut Layout, views: &[ViewStart]) {
     for (view, start) in views.iter().enumerate() {
         for axis in 0..3 {
             let prior = if axis == 2 && start.roll == Roll::Defined { Prior::Exact } else { Prior::Free };
@@ -101,9 +127,19 @@ pub fn add_camera(layout: &mut Layout, lens: &LensKnowledge, views: &[ViewStart]
     }
 }
 
-/// Adds the pitch of the printed target.
+/// Adds the distance of the dots or lines of the target.
 pub fn add_target_pitch(layout: &mut Layout, pitch_m: Quantity) {
     layout.add(stated(Parameter::TargetPitch, pitch_m, Source::TargetPitch));
+}
+
+/// Adds width and height of a sheet of paper, and the bows of its edges.
+pub fn add_sheet(layout: &mut Layout, sides_m: [Quantity; 2]) {
+    for (axis, side_m) in sides_m.into_iter().enumerate() {
+        layout.add(stated(Parameter::SheetSide { axis }, side_m, Source::SheetShape));
+    }
+    for edge in SheetEdge::ALL {
+        layout.add(by_eye(Parameter::SheetBow { edge }, SHEET_BOW_U_M, Source::SheetShape));
+    }
 }
 
 /// Where the zero order falls on the print, as a start value.

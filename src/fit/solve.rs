@@ -101,7 +101,9 @@ fn scaled_by_birge(mut joint: Joint, mut evaluations: usize) -> Result<Fit, FitE
         let solution = solve_once(&mut joint, &fine(), &mut evaluations)?;
         freedom = freedoms(&joint, &solution);
         let next = [freedom.spots.birge(), freedom.prints.birge()];
-        if next == [joint.spot_scale, joint.print_scale] {
+        #[expect(clippy::float_cmp, reason = "the very factors that it was weighed with, usually 1")]
+        let weighed_with_them = next == [joint.spot_scale, joint.print_scale];
+        if weighed_with_them {
             return Ok(finished(joint, &solution, &freedom, evaluations));
         }
         let settled = (next[0] / joint.spot_scale).ln().abs() < BIRGE_SETTLED && (next[1] / joint.print_scale).ln().abs() < BIRGE_SETTLED;
@@ -122,7 +124,7 @@ const BIRGE_SETTLED: f64 = 0.01;
 /// the operator knows.
 fn calm(joint: &mut Joint) {
     joint.spot_scale = spread(&joint.spot_lengths()).max(1.0);
-    joint.print_scale = spread(&dot_lengths(joint)).max(1.0);
+    joint.print_scale = spread(&lengths_of_many(joint)).max(1.0);
 }
 
 /// Passes whose result is only a start need no digits.
@@ -143,8 +145,8 @@ fn solve_once(joint: &mut Joint, options: &math::Options, evaluations: &mut usiz
     Ok(solution)
 }
 
-fn dot_lengths(joint: &Joint) -> Vec<Option<f64>> {
-    joint.prints.iter().zip(joint.print_lengths()).filter(|(print, _)| print.is_dot()).map(|(_, length)| length).collect()
+fn lengths_of_many(joint: &Joint) -> Vec<Option<f64>> {
+    joint.prints.iter().zip(joint.print_lengths()).filter(|(print, _)| print.is_one_of_many()).map(|(_, length)| length).collect()
 }
 
 /// Gives every spot and dot a weight from the length of its residual; says whether any weight changed.
@@ -160,10 +162,10 @@ fn reweigh(joint: &mut Joint, weight: impl Fn(f64, f64) -> f64) -> bool {
     for (spot, length) in joint.spots.iter_mut().zip(lengths) {
         apply(&mut spot.weight, length, scale);
     }
-    // Only the many dots of a printed target can spare one; marks and scale ends are stated by the operator and stay.
-    let scale = spread(&dot_lengths(joint));
+    // Only what the program reads by the hundred can spare a point; marks and scale ends are stated by the operator and stay.
+    let scale = spread(&lengths_of_many(joint));
     let lengths = joint.print_lengths();
-    for (print, length) in joint.prints.iter_mut().zip(lengths).filter(|(print, _)| print.is_dot()) {
+    for (print, length) in joint.prints.iter_mut().zip(lengths).filter(|(print, _)| print.is_one_of_many()) {
         apply(&mut print.weight, length, scale);
     }
     changed
@@ -200,15 +202,20 @@ fn freedoms(joint: &Joint, solution: &math::Solution) -> Freedoms {
     let spots = 2 * joint.spots.len();
     let prints = spots + 2 * joint.prints.len();
     let leverage = leverages(&solution.jacobian, &solution.covariance);
-    let group = |range: std::ops::Range<usize>, used: usize, scale: f64| {
-        let degrees = 2.0 * math::count(used) - range.clone().map(|row| leverage[row]).sum::<f64>();
+    let group = |range: std::ops::Range<usize>, coordinates: usize, scale: f64| {
+        let degrees = math::count(coordinates) - range.clone().map(|row| leverage[row]).sum::<f64>();
         let chi2: f64 = range.map(|row| solution.residuals[row].powi(2)).sum::<f64>() * scale * scale;
         Freedom { degrees, chi2_reduced: if degrees > 1e-9 { chi2 / degrees } else { 0.0 } }
     };
     Freedoms {
-        spots: group(0..spots, joint.spots.iter().filter(|spot| spot.weight > 0.5).count(), joint.spot_scale),
-        prints: group(spots..prints, joint.prints.iter().filter(|print| print.weight > 0.5).count(), joint.print_scale),
+        spots: group(0..spots, 2 * joint.spots.iter().filter(|spot| spot.weight > 0.5).count(), joint.spot_scale),
+        prints: group(spots..prints, print_coordinates(joint), joint.print_scale),
     }
+}
+
+/// Coordinates of the used points of the print: two of a point, one of a line.
+fn print_coordinates(joint: &Joint) -> usize {
+    joint.prints.iter().filter(|print| print.weight > 0.5).map(|print| print.sharpness.dimensions()).sum()
 }
 
 /// Diagonal of `J C Jᵀ`.

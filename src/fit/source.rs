@@ -32,6 +32,12 @@ pub enum Source {
     TargetTurn,
     /// Centroids of the dots.
     Dots,
+    /// Places of ruled lines.
+    Ruling,
+    /// Places of a sheet's edges.
+    SheetEdges,
+    /// Width and height of a sheet, and how straight its edges are.
+    SheetShape,
     /// Pixels of the known marks.
     Marks,
     /// Two points of known distance.
@@ -42,6 +48,10 @@ pub enum Source {
     FocalLength,
     /// Principal point and lens distortion of an ordinary camera.
     Lens,
+    /// Saved posterior of the bench.
+    Calibration,
+    /// Saved posterior of the lens alone.
+    CameraCalibration,
     /// Only fixes an overall scale that the pitch does not depend on.
     Gauge,
 }
@@ -61,11 +71,16 @@ impl Source {
             Self::TargetPitch => "target pitch",
             Self::TargetTurn => "target turn",
             Self::Dots => "target dots",
+            Self::Ruling => "ruled lines",
+            Self::SheetEdges => "sheet edges",
+            Self::SheetShape => "sheet shape",
             Self::Marks => "marks",
             Self::Scale => "scale",
             Self::SquareOn => "camera square-on",
             Self::FocalLength => "focal length",
             Self::Lens => "lens",
+            Self::Calibration => "calibration",
+            Self::CameraCalibration => "camera calibration",
             Self::Gauge => "gauge",
         }
     }

@@ -2,6 +2,7 @@
 
 use super::count;
 use rand_chacha::{ChaCha8Rng, rand_core::SeedableRng};
+use rayon::prelude::*;
 
 /// How many trials, how steady, and which interval.
 #[derive(Debug, Clone, PartialEq)]
@@ -63,27 +64,56 @@ pub struct MonteCarlo {
 /// assert!((sum.u - 2.0).abs() < 0.05);
 /// ```
 #[must_use]
-pub fn propagate(mut draw: impl FnMut(&mut ChaCha8Rng) -> Option<f64>, options: &MonteCarloOptions) -> Option<MonteCarlo> {
+pub fn propagate(draw: impl Fn(&mut ChaCha8Rng) -> Option<f64> + Sync, options: &MonteCarloOptions) -> Option<MonteCarlo> {
+    propagate_all(|rng| draw(rng).map(|value| vec![value]), options, &|_| ()).and_then(|mut results| results.pop())
+}
+
+/// [`propagate`] for several results of one trial at once, such as the two pitches of a lattice: goes on until all of them stand still.
+///
+/// - `draw`: one trial; always the same number of values
+/// - `progress`: told after each block how many trials have been made
+#[must_use]
+pub fn propagate_all(
+    draw: impl Fn(&mut ChaCha8Rng) -> Option<Vec<f64>> + Sync,
+    options: &MonteCarloOptions,
+    progress: &dyn Fn(usize),
+) -> Option<Vec<MonteCarlo>> {
     let usable = options.probability > 0.0 && options.probability < 1.0 && options.digits >= 1 && options.block >= 100;
     if !usable || options.most_blocks == 0 {
         return None;
     }
-    let mut rng = ChaCha8Rng::seed_from_u64(options.seed);
-    let mut all = Vec::new();
-    let mut blocks: Vec<[f64; 4]> = Vec::new();
+    // Every trial has a stream of its own, so that the result does not depend on how the trials fall on the cores.
+    let trial = |number: usize| {
+        let mut rng = ChaCha8Rng::seed_from_u64(options.seed);
+        rng.set_stream(number as u64);
+        draw(&mut rng).filter(|values| values.iter().all(|value| value.is_finite()))
+    };
+    let mut all: Vec<Vec<f64>> = Vec::new();
+    let mut blocks: Vec<Vec<[f64; 4]>> = Vec::new();
+    let mut made = 0;
     let mut settled = false;
-    while blocks.len() < options.most_blocks && !settled {
-        let mut block: Vec<f64> = (0..options.block).filter_map(|_| draw(&mut rng)).filter(|value| value.is_finite()).collect();
-        block.sort_unstable_by(f64::total_cmp);
-        blocks.push(summary(&block, options.probability)?);
-        all.extend(block);
-        settled = steady(&blocks, options.digits);
+    while made < options.most_blocks * options.block && !settled {
+        let drawn: Vec<Vec<f64>> = (made..made + options.block).into_par_iter().filter_map(trial).collect();
+        made += options.block;
+        let results = drawn.first()?.len();
+        all.resize(results, Vec::new());
+        blocks.resize(results, Vec::new());
+        for result in 0..results {
+            let mut block: Vec<f64> = drawn.iter().filter_map(|values| values.get(result).copied()).collect();
+            block.sort_unstable_by(f64::total_cmp);
+            blocks[result].push(summary(&block, options.probability)?);
+            all[result].extend(block);
+        }
+        settled = blocks.iter().all(|blocks| steady(blocks, options.digits));
+        progress(made);
     }
-    all.sort_unstable_by(f64::total_cmp);
-    let [mean, u, low, high] = summary(&all, options.probability)?;
-    let failed = blocks.len() * options.block - all.len();
-    let shortest = shortest_interval(&all, options.probability);
-    Some(MonteCarlo { mean, u, symmetric: [low, high], shortest, trials: all.len(), failed, settled })
+    let gathered = |mut values: Vec<f64>| {
+        values.sort_unstable_by(f64::total_cmp);
+        let [mean, u, low, high] = summary(&values, options.probability)?;
+        let shortest = shortest_interval(&values, options.probability);
+        Some(MonteCarlo { mean, u, symmetric: [low, high], shortest, trials: values.len(), failed: made - values.len(), settled })
+    };
+    all.into_iter().map(gathered).collect()
 }
 
 /// Mean, standard deviation and the ends of the symmetric interval of sorted values.

@@ -2,9 +2,9 @@
 
 use super::{GAUGE_THROW_M, MeasureError, cameras::Cameras, look::Seen, orders::Ordered, rough::Rough};
 use crate::{
-    bench::{Air, Bench, Laser, Medium, Pattern, Scale},
+    bench::{Air, Bench, Laser, Medium, Pattern, Scale, TargetKind},
     fit::{
-        Joint, Knowledge, Parameter, PhotoShape, PrintObservation, PrintPlace, Shape, SpotObservation,
+        Joint, Knowledge, Parameter, PhotoShape, PrintObservation, PrintPlace, Shape, Sharpness, SpotObservation,
         setup::{self, ThrowStart, ZeroOrderStart},
     },
     frames::PixelCovariance,
@@ -45,18 +45,21 @@ pub(super) fn assignment(bench: &Bench, photo: usize) -> Assignment {
 pub(super) fn rough(cameras: &Cameras, bench: &Bench, photo: usize, size_px: [usize; 2]) -> Rough {
     let Assignment { sample, step_m, .. } = assignment(bench, photo);
     let mean = |pair: Option<[Quantity; 2]>| pair.map_or([0.0; 2], |pair| pair.map(|q| q.value));
-    let throw_m = bench.screen.throw_m.map_or(GAUGE_THROW_M, |q| q.value) + step_m.map_or(0.0, |q| q.value);
     let joint = bare_joint(cameras, bench);
+    // What a calibration knows goes over what is stated.
+    let known = |parameter, stated: f64| joint.layout.value(parameter).unwrap_or(stated);
+    let throw_m = known(Parameter::Throw, bench.screen.throw_m.map_or(GAUGE_THROW_M, |q| q.value)) + step_m.map_or(0.0, |q| q.value);
+    let tilt_rad = mean(bench.screen.tilt_rad);
+    let turn_rad = bench.target.as_ref().and_then(|target| target.turn_rad).map_or(0.0, |q| q.value);
+    let camera = joint.camera(&joint.values(), cameras.view_of_photo[photo]);
+    let zero_order_m = [0, 1].map(|axis| known(Parameter::ZeroOrderOnPrint { axis }, 0.0));
     #[expect(clippy::cast_precision_loss, reason = "picture sizes are far below 2^53")]
     let size_px = size_px.map(|side| side as f64);
     Rough {
-        camera: joint.camera(&joint.values(), cameras.view_of_photo[photo]),
-        screen: ScreenPose::new(throw_m, mean(bench.screen.tilt_rad)),
-        print: PrintPose {
-            zero_order_m: [0.0; 2],
-            turn_rad: bench.target.as_ref().and_then(|target| target.turn_rad).map_or(0.0, |q| q.value),
-            seen_from: bench.screen.seen_from,
-        },
+        zero_order: bench.calibration.as_ref().and_then(|_| camera.print_projector()(zero_order_m)),
+        camera,
+        screen: ScreenPose::new(throw_m, [0, 1].map(|axis| known(Parameter::ScreenTilt { axis }, tilt_rad[axis]))),
+        print: PrintPose { zero_order_m, turn_rad: known(Parameter::PrintTurn, turn_rad), seen_from: bench.screen.seen_from },
         attitude: Attitude::turned(mean(bench.samples[sample].incidence_rad)),
         size_px,
     }
@@ -91,13 +94,16 @@ pub(super) fn expected(bench: &Bench, photo: usize) -> Expected {
 fn bare_joint(cameras: &Cameras, bench: &Bench) -> Joint {
     let shape = Shape { photos: vec![], references: cameras.references.clone(), seen_from: bench.screen.seen_from };
     let (layout, prints) = (cameras.layout.clone(), cameras.prints.clone());
-    Joint { layout, shape, spots: vec![], prints, knowledge: vec![], spot_scale: 1.0, print_scale: 1.0 }
+    let correlated = cameras.correlated.clone();
+    Joint { layout, shape, spots: vec![], prints, knowledge: vec![], correlated, spot_scale: 1.0, print_scale: 1.0 }
 }
 
 /// The joint problem of all photos.
 pub(super) fn assemble(seen: &Seen, bench: &Bench, cameras: &Cameras, ordered: &[Ordered], wavelengths_m: &[Quantity]) -> Joint {
     let mut joint = bare_joint(cameras, bench);
-    free_the_print(&mut joint, bench);
+    if bench.calibration.is_none() {
+        free_the_print(&mut joint, bench, cameras);
+    }
     let zero_order =
         if cameras.screen_known { ZeroOrderStart::OnPrint(ordered[0].rough.print.zero_order_m) } else { ZeroOrderStart::Origin };
     if !cameras.screen_known {
@@ -118,8 +124,11 @@ pub(super) fn assemble(seen: &Seen, bench: &Bench, cameras: &Cameras, ordered: &
         add_spots(&mut joint, seen, photo, order);
     }
     add_reference_pitches(&mut joint, bench);
-    add_scale(&mut joint, bench);
-    add_square_on(&mut joint, bench, cameras.screen_known);
+    // A calibration was made with them; they must not count twice.
+    if bench.calibration.is_none() {
+        add_scale(&mut joint, bench);
+        add_square_on(&mut joint, bench, cameras.screen_known);
+    }
     joint
 }
 
@@ -135,11 +144,22 @@ fn move_bare_cameras(joint: &mut Joint, ordered: &[Ordered]) {
     }
 }
 
-/// On its own the print had to take its nominal pitch as exact; in the joint problem it is what the bench file says.
-fn free_the_print(joint: &mut Joint, bench: &Bench) {
-    if let Some(crate::bench::Target { kind: crate::bench::TargetKind::Dots { pitch_m, .. }, .. }) = &bench.target {
-        joint.layout = joint.layout.without(Parameter::TargetPitch);
-        setup::add_target_pitch(&mut joint.layout, *pitch_m);
+/// On its own the print had to take its nominal size as exact; in the joint problem it is what the bench file says.
+fn free_the_print(joint: &mut Joint, bench: &Bench, cameras: &Cameras) {
+    match bench.target.as_ref().map(|target| &target.kind) {
+        Some(TargetKind::Dots { pitch_m, .. } | TargetKind::Ruling { pitch_m, .. }) => {
+            joint.layout = joint.layout.without(Parameter::TargetPitch);
+            setup::add_target_pitch(&mut joint.layout, *pitch_m);
+        }
+        Some(TargetKind::Sheet { .. }) => {
+            for axis in 0..2 {
+                joint.layout = joint.layout.without(Parameter::SheetSide { axis });
+            }
+            if let Some(sides_m) = cameras.sheet_sides_m {
+                setup::add_sheet(&mut joint.layout, sides_m);
+            }
+        }
+        Some(TargetKind::Marks { .. }) | None => {}
     }
 }
 
@@ -190,7 +210,7 @@ fn add_scale(joint: &mut Joint, bench: &Bench) {
     joint.prints.extend(points.into_iter().enumerate().map(|(end, at)| PrintObservation {
         view: 0,
         at,
-        covariance: PixelCovariance::isotropic(CLICK_U_PX),
+        sharpness: Sharpness::Point(PixelCovariance::isotropic(CLICK_U_PX)),
         place: PrintPlace::ScaleEnd(end),
         weight: 1.0,
     }));

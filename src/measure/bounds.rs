@@ -1,19 +1,40 @@
-//! How far the screen is known to reach, where only marks tell: not beyond them.
+//! How far the screen is known to reach: not beyond the marks, where only these tell, and not beyond a sheet's edges.
 
+use super::look::{Print, Seen};
 use crate::{
     bench::{Bench, Target, TargetKind},
     frames::PixelPoint,
     spots::Spot,
 };
 
-/// Spots this far outside the outermost marks, as a share of the marks' extent, still count as inside.
+/// Spots this far outside the outermost marks, as a share of the marks' extent, still count as inside; likewise corners of a sheet.
 const MARGIN: f64 = 0.01;
 
-/// Whether a spot lies on the part of the screen that the marks enclose; always so where no marks are stated.
-pub(super) fn on_screen(bench: &Bench, spot: &Spot) -> bool {
-    let Some(Target { kind: TargetKind::Marks { marks, .. }, .. }) = &bench.target else { return true };
-    let hull = convex_hull(marks.iter().map(|(pixel, _)| [pixel.x_px, pixel.y_px]).collect());
-    inside(&widened(&hull), spot.at)
+/// The part of a photo that shows the screen; all of it where nothing tells.
+#[derive(Debug, Clone)]
+pub(super) struct Reach(Option<Vec<[f64; 2]>>);
+
+impl Reach {
+    /// Of a photo of the pattern, from the marks or the sheet of its view.
+    pub(super) fn of(photo: usize, view: usize, seen: &Seen, bench: &Bench) -> Self {
+        let sheet = |print: &Print| match print {
+            Print::Sheet(outline) => Some(outline.corners.map(|corner| [corner.x_px, corner.y_px]).to_vec()),
+            Print::Dots(_) | Print::Ruling(_) => None,
+        };
+        let corners = match &bench.target {
+            Some(Target { kind: TargetKind::Marks { marks, .. }, .. }) => {
+                Some(marks.iter().map(|(pixel, _)| [pixel.x_px, pixel.y_px]).collect())
+            }
+            Some(_) => seen.targets.get(view).map(|target| &target.print).or(seen.patterns[photo].print.as_ref()).and_then(sheet),
+            None => None,
+        };
+        Self(corners.map(|corners| widened(&convex_hull(corners))))
+    }
+
+    /// Whether a spot lies on the screen.
+    pub(super) fn holds(&self, spot: &Spot) -> bool {
+        self.0.as_ref().is_none_or(|hull| inside(hull, spot.at))
+    }
 }
 
 /// Corners of the convex hull, counter-clockwise in a frame with y up (Andrew's monotone chain).

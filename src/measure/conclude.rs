@@ -2,28 +2,26 @@
 
 use super::{
     Inputs, MeasureError,
+    fitted::Fitted,
     look::Seen,
-    measurement::{FitSummary, Measurement, OrderRow, ParameterRow, ParameterUnit, PhotoSummary, RejectedSpot, SampleResult, ZeroOrder},
+    measurement::{
+        FitSummary, Measurement, OrderRow, ParameterRow, ParameterUnit, PhotoSummary, ReciprocalView, RejectedSpot, SampleResult, ZeroOrder,
+    },
+    openness,
     orders::Ordered,
     statement::kind_statement,
 };
 use crate::{
-    Note,
     bench::Bench,
     budget::{self, Value},
-    fit::{Cell, Derived, Fit, Parameter, PrintPlace, Prior, Source, cell},
+    fit::{Cell, Derived, Fit, Parameter, PrintPlace, Prior, SheetEdge, Source, cell},
     frames::{PixelCovariance, PixelPoint},
+    optics::{Attitude, zero_order_in_sample_plane},
 };
 
 /// Gathers the result of a solved problem.
-pub(super) fn conclude(
-    inputs: &Inputs<'_>,
-    bench: &Bench,
-    seen: &Seen,
-    ordered: &[Ordered],
-    fit: &Fit,
-    notes: Vec<Note>,
-) -> Result<Measurement, MeasureError> {
+pub(super) fn conclude(fitted: &Fitted<'_>, bench: &Bench) -> Result<Measurement, MeasureError> {
+    let Fitted { inputs, seen, ordered, fit, notes } = fitted;
     let wanted = wanted_sample(bench, fit);
     let mut samples: Vec<usize> = fit.joint.shape.photos.iter().map(|photo| photo.sample).collect();
     samples.sort_unstable();
@@ -44,7 +42,9 @@ pub(super) fn conclude(
         fit: summary(fit),
         photos: photo_summaries(inputs, seen, fit),
         mode: bench.samples[wanted].mode,
-        notes,
+        trials: None,
+        reciprocal: reciprocal_view(fit, photo),
+        notes: notes.clone(),
     })
 }
 
@@ -65,8 +65,10 @@ fn sample_result(bench: &Bench, fit: &Fit, sample: usize) -> Result<SampleResult
     let found: Cell = cell(&fit.joint.layout, &fit.joint.shape, &values, sample).ok_or(MeasureError::FlatLattice)?;
     let value = |derived: &Derived| budget::value(fit, derived);
     let pitch_m: Vec<Value> = found.pitch_m.iter().map(value).collect();
-    if let Some(open) = pitch_m.iter().find(|pitch| !(pitch.u.is_finite() && pitch.u > 0.0 && pitch.u < 0.5 * pitch.value)) {
-        return Err(MeasureError::PitchNotFixed { pitch_m: open.value, u_m: open.u });
+    let is_open = |(_, pitch): &(&Derived, &Value)| !(pitch.u.is_finite() && pitch.u > 0.0 && pitch.u < 0.5 * pitch.value);
+    if let Some((derived, open)) = found.pitch_m.iter().zip(&pitch_m).find(is_open) {
+        let advice = openness::in_words(bench, fit, derived);
+        return Err(MeasureError::PitchNotFixed { pitch_m: open.value, u_m: open.u, advice });
     }
     Ok(SampleResult {
         name: bench.samples[sample].name.clone(),
@@ -127,6 +129,24 @@ fn zero_order(fit: &Fit, photo: usize, orders: &[OrderRow]) -> Result<ZeroOrder,
     Ok(ZeroOrder { at: PixelPoint { x_px, y_px }, seen })
 }
 
+/// Right is -x for someone who looks along the beam (docs/conventions.md).
+fn reciprocal_view(fit: &Fit, photo: usize) -> ReciprocalView {
+    let layout = &fit.joint.layout;
+    let (sample, laser) = (fit.joint.shape.photos[photo].sample, fit.joint.shape.photos[photo].laser);
+    let value = |parameter| layout.value(parameter).unwrap_or(0.0);
+    let seen = |[x, y]: [f64; 2]| [-x, y];
+    let attitude = Attitude::turned([0, 1].map(|axis| value(Parameter::Incidence { sample, axis })));
+    let vector = |vector: usize| {
+        let component = |axis| layout.value(Parameter::Lattice { sample, vector, axis });
+        Some(seen([component(0)?, component(1)?]))
+    };
+    ReciprocalView {
+        wavelength_m: value(Parameter::Wavelength { laser }),
+        zero_order: seen(zero_order_in_sample_plane(&attitude)),
+        vectors_per_m: [vector(0), vector(1)].into_iter().flatten().collect(),
+    }
+}
+
 fn summary(fit: &Fit) -> FitSummary {
     FitSummary {
         chi2_reduced: fit.spot_chi2_reduced,
@@ -169,7 +189,7 @@ fn parameter_rows(bench: &Bench, fit: &Fit) -> Vec<ParameterRow> {
         let (name, unit) = described(bench, entry.parameter);
         let u = layout.column(place).map_or(0.0, |column| fit.covariance[(column, column)].max(0.0).sqrt());
         let prior = match entry.prior {
-            Prior::Normal { mean, u } => Some((mean, u)),
+            Prior::Normal { mean, u } | Prior::Correlated { mean, u } => Some((mean, u)),
             Prior::Exact => Some((entry.value, 0.0)),
             Prior::Free => None,
         };
@@ -204,12 +224,33 @@ pub(super) fn described(bench: &Bench, parameter: Parameter) -> (String, Paramet
         Parameter::ZeroOrderOnPrint { axis } => (format!("zero order on target {}", ["X", "Y"][axis.min(1)]), ParameterUnit::Length),
         Parameter::PrintTurn => ("target turn".to_owned(), ParameterUnit::Angle),
         Parameter::TargetPitch => ("target pitch".to_owned(), ParameterUnit::Length),
-        Parameter::LogFocalLength => ("focal length".to_owned(), ParameterUnit::Pixel),
-        Parameter::PrincipalPoint { axis } => (format!("principal point {}", axis_name(axis)), ParameterUnit::Pixel),
-        Parameter::RadialDistortion { term } => (format!("distortion k{}", term + 1), ParameterUnit::Number),
-        Parameter::TangentialDistortion { term } => (format!("distortion p{}", term + 1), ParameterUnit::Number),
+        Parameter::SheetSide { axis } => (["sheet width", "sheet height"][axis.min(1)].to_owned(), ParameterUnit::Length),
+        Parameter::SheetBow { edge } => {
+            let name = match edge {
+                SheetEdge::Left => "left",
+                SheetEdge::Right => "right",
+                SheetEdge::Bottom => "lower",
+                SheetEdge::Top => "upper",
+            };
+            (format!("bow of the sheet's {name} edge"), ParameterUnit::Length)
+        }
+        Parameter::LogFocalLength
+        | Parameter::PrincipalPoint { .. }
+        | Parameter::RadialDistortion { .. }
+        | Parameter::TangentialDistortion { .. } => described_lens(parameter),
         Parameter::CameraTurn { view, axis } => (format!("camera turn {} (view {})", axis_name(axis), view + 1), ParameterUnit::Angle),
         Parameter::CameraPlace { view, axis } => (format!("camera place {} (view {})", axis_name(axis), view + 1), ParameterUnit::Length),
         Parameter::ScaleEnd { end, axis } => (format!("scale end {} {}", end + 1, ["X", "Y"][axis.min(1)]), ParameterUnit::Length),
+    }
+}
+
+/// Name and unit of a parameter of the lens; nothing else has a name here.
+pub(super) fn described_lens(parameter: Parameter) -> (String, ParameterUnit) {
+    match parameter {
+        Parameter::LogFocalLength => ("focal length".to_owned(), ParameterUnit::Pixel),
+        Parameter::PrincipalPoint { axis } => (format!("principal point {}", ["x", "y"][axis.min(1)]), ParameterUnit::Pixel),
+        Parameter::RadialDistortion { term } => (format!("distortion k{}", term + 1), ParameterUnit::Number),
+        Parameter::TangentialDistortion { term } => (format!("distortion p{}", term + 1), ParameterUnit::Number),
+        _ => (String::new(), ParameterUnit::Number),
     }
 }

@@ -36,11 +36,12 @@ pub enum MeasureError {
         /// Width and height of the odd one.
         other: [usize; 2],
     },
-    /// The target kind needs a reader that does not exist yet.
+    /// The sheet may lie lengthwise or upright.
     #[error(
-        "[target] sheet and ruling cannot be read from a photo; use the printed dot target, or state the sheet's corners as [target] marks"
+        "the sheet looks as if it lay lengthwise or upright alike, so oblique is the camera to it; photograph it more square-on, \
+         state [camera] focal_length, or state its corners as [target] marks"
     )]
-    TargetKindNotRead,
+    SheetEitherWay,
     /// No camera sees the print as it appears.
     #[error(
         "no camera can see the target's points as they lie in the photo; check that marks and pixels belong together, in the order right, up"
@@ -62,7 +63,7 @@ pub enum MeasureError {
     },
     /// Nothing in photo and bench file fixes the pitch.
     #[error(
-        "photo and bench file do not fix the pitch (best {:.4} um, standard uncertainty {:.4} um): give the throw and a target or scale, or photograph wider orders",
+        "photo and bench file do not fix the pitch (best {:.4} um, standard uncertainty {:.4} um): {advice}",
         pitch_m * 1e6, u_m * 1e6
     )]
     PitchNotFixed {
@@ -70,6 +71,8 @@ pub enum MeasureError {
         pitch_m: f64,
         /// Standard uncertainty, m.
         u_m: f64,
+        /// What it is tied to, and what to measure.
+        advice: String,
     },
     /// The stated wavelength is not the colour of the spots.
     #[error(
@@ -85,6 +88,14 @@ pub enum MeasureError {
         seen: &'static str,
         /// Shares of red, green, blue.
         shares: [f64; 3],
+    },
+    /// Hardly any trial of the Monte Carlo gave a lattice.
+    #[error(
+        "the Monte Carlo of {most} trials gave no distribution: the fit fails on most redrawn inputs; state throw, tilt and target more closely"
+    )]
+    TrialsFailed {
+        /// Trials asked for.
+        most: usize,
     },
     /// The air stated in the bench file is outside the formula.
     #[error("the index of air is not defined for {temperature_celsius:.1} degC, {:.0} hPa, {:.0} % humidity; check [air]", pressure_pa / 100.0, humidity * 100.0)]
@@ -105,12 +116,13 @@ impl MeasureError {
         match self {
             Self::NoPhoto => "no-photo",
             Self::SizesDiffer { .. } => "photo-sizes-differ",
-            Self::TargetKindNotRead => "target-kind",
+            Self::SheetEitherWay => "sheet-either-way",
             Self::NoPose => "no-camera-pose",
             Self::FlatLattice => "flat-lattice",
             Self::Irregular { .. } => "irregular",
             Self::PitchNotFixed { .. } => "pitch-not-fixed",
             Self::ColourMismatch { .. } => "colour-mismatch",
+            Self::TrialsFailed { .. } => "trials-failed",
             Self::AirOutOfRange { .. } => "air-out-of-range",
         }
     }
@@ -118,6 +130,6 @@ impl MeasureError {
     /// Whether the input could not be used at all.
     #[must_use]
     pub fn is_unusable_input(&self) -> bool {
-        matches!(self, Self::NoPhoto | Self::SizesDiffer { .. } | Self::TargetKindNotRead | Self::AirOutOfRange { .. })
+        matches!(self, Self::NoPhoto | Self::SizesDiffer { .. } | Self::SheetEitherWay | Self::AirOutOfRange { .. })
     }
 }

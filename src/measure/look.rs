@@ -6,7 +6,7 @@ use crate::{
     bench::{Bench, TargetKind},
     photo::{self, Exif, Photo},
     spots::{self, Spots},
-    target::{self, Reading},
+    target::{self, Outline, Reading, Ruling},
 };
 use rayon::prelude::*;
 
@@ -28,14 +28,33 @@ pub struct Inputs<'a> {
     pub targets: Vec<PhotoFile<'a>>,
 }
 
+/// What gives the plane of the screen its scale, as read from a photo.
+#[derive(Debug, Clone)]
+pub(super) enum Print {
+    /// The printed dot target.
+    Dots(Reading),
+    /// A sheet of paper.
+    Sheet(Outline),
+    /// Ruled paper.
+    Ruling(Ruling),
+}
+
+/// What is looked for in a photo.
+#[derive(Debug, Clone, Copy)]
+enum PrintKind {
+    Dots,
+    Sheet,
+    Ruling,
+}
+
 /// A photo of the pattern, looked at.
 #[derive(Debug, Clone)]
 pub(super) struct SeenPattern {
     pub(super) size_px: [usize; 2],
     pub(super) exif: Exif,
     pub(super) spots: Spots,
-    /// Dots in the same photo, when the bench file says that they are there.
-    pub(super) dots: Option<Reading>,
+    /// The target in the same photo, when the bench file says that it is there.
+    pub(super) print: Option<Print>,
 }
 
 /// A photo of the target, looked at.
@@ -43,7 +62,7 @@ pub(super) struct SeenPattern {
 pub(super) struct SeenTarget {
     pub(super) size_px: [usize; 2],
     pub(super) exif: Exif,
-    pub(super) reading: Reading,
+    pub(super) print: Print,
 }
 
 /// Everything seen.
@@ -55,20 +74,32 @@ pub(super) struct Seen {
 
 /// Decodes and reads all photos.
 pub(super) fn look(inputs: &Inputs<'_>, bench: &Bench) -> Result<Seen, Refusal> {
-    let dots_in_pattern = matches!(bench.target.as_ref().map(|target| &target.kind), Some(TargetKind::Dots { photo: None, .. }));
+    let target = bench.target.as_ref().map(|target| &target.kind);
+    // A calibration knows the view already.
+    let in_pattern = match target.filter(|_| bench.calibration.is_none()) {
+        Some(TargetKind::Dots { photo: None, .. }) => Some(PrintKind::Dots),
+        Some(TargetKind::Sheet { photo: None, .. }) => Some(PrintKind::Sheet),
+        Some(TargetKind::Ruling { photo: None, .. }) => Some(PrintKind::Ruling),
+        _ => None,
+    };
+    let in_target = match target {
+        Some(TargetKind::Sheet { .. }) => PrintKind::Sheet,
+        Some(TargetKind::Ruling { .. }) => PrintKind::Ruling,
+        _ => PrintKind::Dots,
+    };
     let (patterns, targets) = rayon::join(
         || {
             inputs
                 .patterns
                 .par_iter()
-                .map(|file| look_at_pattern(file, dots_in_pattern).map_err(|error| blaming(file, error)))
+                .map(|file| look_at_pattern(file, in_pattern).map_err(|error| blaming(file, error)))
                 .collect::<Result<Vec<_>, Refusal>>()
         },
         || {
             inputs
                 .targets
                 .par_iter()
-                .map(|file| look_at_target(file).map_err(|error| blaming(file, error)))
+                .map(|file| look_at_target(file, in_target).map_err(|error| blaming(file, error)))
                 .collect::<Result<Vec<_>, Refusal>>()
         },
     );
@@ -79,14 +110,14 @@ fn blaming(file: &PhotoFile<'_>, error: Error) -> Refusal {
     Refusal { file: Some(file.name.to_owned()), error: Box::new(error) }
 }
 
-fn look_at_pattern(file: &PhotoFile<'_>, dots_in_pattern: bool) -> Result<SeenPattern, Error> {
+fn look_at_pattern(file: &PhotoFile<'_>, in_pattern: Option<PrintKind>) -> Result<SeenPattern, Error> {
     let photo = photo::decode(file.bytes)?;
     let spots = spots::find(&photo, &spots::SpotOptions::default())?;
-    let dots = if dots_in_pattern { Some(target::read(&without_laser(&photo, &spots), &target::ReadOptions::default())?) } else { None };
-    Ok(SeenPattern { size_px: [photo.width, photo.height], exif: photo.exif, spots, dots })
+    let print = in_pattern.map(|kind| read_print(&without_laser(&photo, &spots), kind)).transpose()?;
+    Ok(SeenPattern { size_px: [photo.width, photo.height], exif: photo.exif, spots, print })
 }
 
-/// Luminance without the laser's own channel, for reading dots that lie under the pattern.
+/// Luminance without the laser's own channel, for reading a target that lies under the pattern.
 fn without_laser(photo: &Photo, spots: &Spots) -> photo::Light {
     let own = (0..3).max_by(|&a, &b| spots.colour[a].total_cmp(&spots.colour[b])).unwrap_or(0);
     let mut weights = photo::LUMINANCE;
@@ -95,8 +126,29 @@ fn without_laser(photo: &Photo, spots: &Spots) -> photo::Light {
     photo.light(weights.map(|weight| weight / sum))
 }
 
-fn look_at_target(file: &PhotoFile<'_>) -> Result<SeenTarget, Error> {
+/// A photo of the printed dot target.
+pub(super) struct SeenDots {
+    pub(super) size_px: [usize; 2],
+    pub(super) exif: Exif,
+    pub(super) reading: Reading,
+}
+
+pub(super) fn look_at_dots(file: &PhotoFile<'_>) -> Result<SeenDots, Error> {
     let photo = photo::decode(file.bytes)?;
     let reading = target::read(&photo.grey(), &target::ReadOptions::default())?;
-    Ok(SeenTarget { size_px: [photo.width, photo.height], exif: photo.exif, reading })
+    Ok(SeenDots { size_px: [photo.width, photo.height], exif: photo.exif, reading })
+}
+
+fn look_at_target(file: &PhotoFile<'_>, kind: PrintKind) -> Result<SeenTarget, Error> {
+    let photo = photo::decode(file.bytes)?;
+    let print = read_print(&photo.grey(), kind)?;
+    Ok(SeenTarget { size_px: [photo.width, photo.height], exif: photo.exif, print })
+}
+
+fn read_print(light: &photo::Light, kind: PrintKind) -> Result<Print, Error> {
+    Ok(match kind {
+        PrintKind::Dots => Print::Dots(target::read(light, &target::ReadOptions::default())?),
+        PrintKind::Ruling => Print::Ruling(target::read_ruling(light)?),
+        PrintKind::Sheet => Print::Sheet(target::read_outline(light)?),
+    })
 }

@@ -1,5 +1,6 @@
 //! The result as plain data: what the reports format and the record keeps. SI units throughout.
 
+use super::trials::Trials;
 use crate::{
     Note,
     bench::Mode,
@@ -30,8 +31,26 @@ pub struct Measurement {
     pub photos: Vec<PhotoSummary>,
     /// Transmission or reflection.
     pub mode: Mode,
+    /// The same by Monte Carlo, where it was asked for.
+    pub trials: Option<Trials>,
+    /// The diffraction of the sample in reciprocal space.
+    pub reciprocal: ReciprocalView,
     /// What a reader of the result must know.
     pub notes: Vec<Note>,
+}
+
+/// The sample's reciprocal lattice and what of it can reach the screen, in the plane of the sample as seen by someone who looks along the beam
+/// (first component to the right, second up).
+///
+/// The order with reciprocal-lattice vector g propagates where `|z_t + λ g| < 1`: inside a circle of radius 1/λ about `-z_t/λ`, the Ewald limit.
+#[derive(Debug, Clone, PartialEq)]
+pub struct ReciprocalView {
+    /// Wavelength at the sample in the first photo of the sample, m.
+    pub wavelength_m: f64,
+    /// z_t: part of the zero order in the plane of the sample, direction cosines.
+    pub zero_order: [f64; 2],
+    /// The vectors that belong to the orders (1,0) and (0,1) (line: only the first), cycles per metre.
+    pub vectors_per_m: Vec<[f64; 2]>,
 }
 
 /// What was found of one sample.

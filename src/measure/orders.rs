@@ -59,10 +59,10 @@ pub(super) fn order_spots(
         if agrees && proposed.is_some_and(|(_, e)| e.zero_lead > SURE_ZERO && e.log_evidence > SURE_EVIDENCE) {
             return free;
         }
-        if let Some((place, _)) = proposed.filter(|_| hypotheses.len() < MOST_HYPOTHESES) {
-            if hypotheses.iter().all(|known| known.distance_px(place) >= SAME_PLACE_PX) {
-                hypotheses.insert(next, place);
-            }
+        if let Some((place, _)) = proposed.filter(|_| hypotheses.len() < MOST_HYPOTHESES)
+            && hypotheses.iter().all(|known| known.distance_px(place) >= SAME_PLACE_PX)
+        {
+            hypotheses.insert(next, place);
         }
         match if agrees { free } else { order_about(spots, rough, zero, Zero::Here, roughness, on_screen) } {
             Ok(ordered) => {
@@ -113,7 +113,7 @@ const BRIGHT_HYPOTHESES: usize = 4;
 /// Spots in the middle of the pattern tried as the zero order.
 const CENTRAL_HYPOTHESES: usize = 2;
 
-/// The brightest spots, then those nearest the middle of the pattern: clipping and halo make light a poor witness, symmetry a fair one.
+/// Where a calibration knows the zero order, that place; then the brightest spots, then those nearest the middle of the pattern: clipping and halo make light a poor witness, symmetry a fair one.
 fn likely_zero_orders(spots: &[Spot], rough: &Rough) -> Vec<PixelPoint> {
     let mut bright: Vec<&Spot> = spots.iter().collect();
     bright.sort_by(|a, b| light_of(b).total_cmp(&light_of(a)));
@@ -125,7 +125,7 @@ fn likely_zero_orders(spots: &[Spot], rough: &Rough) -> Vec<PixelPoint> {
     };
     let mut central = bright.clone();
     central.sort_by(|a, b| a.at.distance_px(middle).total_cmp(&b.at.distance_px(middle)));
-    let mut places: Vec<PixelPoint> = Vec::new();
+    let mut places: Vec<PixelPoint> = rough.zero_order.iter().map(|&[x_px, y_px]| PixelPoint { x_px, y_px }).collect();
     for spot in bright.iter().take(BRIGHT_HYPOTHESES).chain(central.iter().take(CENTRAL_HYPOTHESES)) {
         if !places.contains(&spot.at) {
             places.push(spot.at);
@@ -172,7 +172,7 @@ pub(super) fn light_of(spot: &Spot) -> f64 {
 fn left_out(spots: &[Spot], on_screen: &dyn Fn(&Spot) -> bool) -> BTreeMap<usize, &'static str> {
     let common = CommonSize::of(spots);
     let reason = |spot: &Spot| match () {
-        () if !on_screen(spot) => Some("beyond the marks"),
+        () if !on_screen(spot) => Some("beyond the marks or the sheet"),
         () if !common.fits(spot) => Some("far from the common size of the spots"),
         () => None,
     };

@@ -13,6 +13,8 @@ pub(super) struct Rough {
     pub(super) print: PrintPose<f64>,
     pub(super) attitude: Attitude<f64>,
     pub(super) size_px: [f64; 2],
+    /// Pixel of the zero order, where a calibration knows it.
+    pub(super) zero_order: Option<[f64; 2]>,
 }
 
 impl Rough {

@@ -3,7 +3,7 @@
 use super::{
     GAUGE_THROW_M, MeasureError, align,
     assemble::{expected, rough},
-    bounds::on_screen,
+    bounds::Reach,
     cameras::Cameras,
     look::Seen,
     orders::{Ordered, Roughness, order_spots},
@@ -36,7 +36,8 @@ fn order_at(seen: &Seen, bench: &Bench, cameras: &Cameras) -> Result<Vec<Ordered
     let bend = if cameras.screen_known { BEND_WITH_PRINT } else { BEND_WITHOUT_PRINT };
     let order = |(photo, pattern): (usize, &super::look::SeenPattern)| {
         let roughness = Roughness { expected: expected(bench, photo), bend };
-        order_spots(&pattern.spots.spots, &rough(cameras, bench, photo, pattern.size_px), roughness, &|spot| on_screen(bench, spot))
+        let reach = Reach::of(photo, cameras.view_of_photo[photo], seen, bench);
+        order_spots(&pattern.spots.spots, &rough(cameras, bench, photo, pattern.size_px), roughness, &|spot| reach.holds(spot))
     };
     seen.patterns.par_iter().enumerate().map(order).collect()
 }

@@ -1,6 +1,11 @@
 //! What can be said beside the numbers: colour of the laser, kind of lattice, doubts about the numbering.
 
-use super::{MeasureError, look::Seen, measurement::KindStatement, orders::Ordered};
+use super::{
+    MeasureError,
+    look::{Print, Seen},
+    measurement::KindStatement,
+    orders::Ordered,
+};
 use crate::{
     Note,
     bench::Bench,
@@ -18,7 +23,9 @@ pub(super) fn capture_notes(seen: &Seen, bench: &Bench, wavelengths_m: &[Quantit
         colour_agrees(wavelength_m, pattern.spots.colour)?;
     }
     for target in &seen.targets {
-        notes.extend(target.reading.notes.iter().cloned());
+        if let Print::Dots(reading) = &target.print {
+            notes.extend(reading.notes.iter().cloned());
+        }
     }
     Ok(notes)
 }

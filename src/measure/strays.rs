@@ -1,6 +1,6 @@
 //! After the fit the model predicts every order to a fraction of a pixel: spots that indexing left aside are taken in where it says so.
 
-use super::{bounds::on_screen, look::Seen, orders::CommonSize};
+use super::{bounds::Reach, look::Seen, orders::CommonSize};
 use crate::{
     bench::Bench,
     fit::{Fit, FitError, Outliers, SpotObservation, solve},
@@ -37,9 +37,10 @@ fn strays(seen: &Seen, bench: &Bench, fit: &Fit) -> Vec<SpotObservation> {
         let mut taken: BTreeSet<(i32, i32)> = of_photo.iter().filter(|spot| spot.weight > 0.5).map(|spot| spot.order).collect();
         let orders = vacant(&of_photo, &taken);
         let predicted = fit.joint.predict(&values, photo, &orders);
+        let reach = Reach::of(photo, fit.joint.shape.photos[photo].view, seen, bench);
         let common = CommonSize::of(&pattern.spots.spots);
         for (number, spot) in pattern.spots.spots.iter().enumerate() {
-            if of_photo.iter().any(|used| used.spot == number) || !on_screen(bench, spot) || !common.fits(spot) {
+            if of_photo.iter().any(|used| used.spot == number) || !reach.holds(spot) || !common.fits(spot) {
                 continue;
             }
             let nearest = orders.iter().zip(&predicted).filter_map(|(&order, place)| {

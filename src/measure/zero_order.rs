@@ -50,7 +50,9 @@ pub(super) fn best_zero_order(
 /// Chi-square of what is known of throw, tilt, incidence and the print's turn.
 fn strain(fit: &Fit) -> f64 {
     let rows = fit.joint.row_sources();
-    let geometry = |source: &Source| matches!(source, Source::Throw | Source::ScreenTilt | Source::Incidence { .. } | Source::TargetTurn);
+    let geometry = |source: &Source| {
+        matches!(source, Source::Throw | Source::ScreenTilt | Source::Incidence { .. } | Source::TargetTurn | Source::Calibration)
+    };
     rows.iter().zip(fit.residuals.iter()).filter(|(source, _)| geometry(source)).map(|(_, residual)| residual * residual).sum()
 }
 
@@ -60,7 +62,7 @@ fn score(seen: &Seen, fit: &Fit, zero: (i32, i32)) -> f64 {
     let sources = fit.joint.row_sources();
     let scale = |source: &Source| match source {
         Source::Spots => fit.joint.spot_scale.powi(2),
-        Source::Dots | Source::Marks | Source::Scale => fit.joint.print_scale.powi(2),
+        Source::Dots | Source::Ruling | Source::SheetEdges | Source::Marks | Source::Scale => fit.joint.print_scale.powi(2),
         _ => 1.0,
     };
     let chi2: f64 = sources.iter().zip(fit.residuals.iter()).map(|(source, r)| r * r * scale(source)).sum();

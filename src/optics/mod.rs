@@ -8,5 +8,5 @@ mod order;
 mod screen;
 
 pub use camera::{Camera, Distortion};
-pub use order::{Attitude, in_sample_plane, order_direction};
+pub use order::{Attitude, in_sample_plane, order_direction, zero_order_in_sample_plane};
 pub use screen::{PrintPose, ScreenPose, direction_to, screen_hit};

@@ -57,6 +57,12 @@ pub fn order_direction<D: DualNum<f64> + Copy>(attitude: &Attitude<D>, wavelengt
     Some(axes.column(0) * along_x + axes.column(1) * along_y + axes.column(2) * along_n)
 }
 
+/// Part of the zero order in the sample plane: direction cosines along x_s and y_s.
+pub fn zero_order_in_sample_plane(attitude: &Attitude<f64>) -> [f64; 2] {
+    let components = attitude.components(&Vector3::z());
+    [components.x, components.y]
+}
+
 /// Inverse of [`order_direction`]: the part of `direction - z` in the sample plane, i.e. `λ g`, dimensionless.
 ///
 /// In these coordinates the orders form a regular lattice around the zero order at any angle.

@@ -11,7 +11,10 @@ mod spelling;
 mod unit;
 
 pub use error::QuantityError;
-pub use print::{format_angle_deg, format_concise, format_concise_digits, format_length, format_ratio_percent};
+pub use print::{
+    format_angle_deg, format_angle_deg_interval, format_concise, format_concise_digits, format_length, format_length_interval,
+    format_ratio_percent,
+};
 pub(crate) use spelling::nearest;
 pub use unit::{LengthUnit, Unit, units_of};
 

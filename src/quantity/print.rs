@@ -59,6 +59,27 @@ pub fn format_angle_deg(angle_rad: f64, u_rad: f64) -> String {
     format_concise(angle_rad.to_degrees(), u_rad.to_degrees(), "deg")
 }
 
+/// Both ends of an interval of length, rounded to the second digit of the standard uncertainty: `12.0286 to 12.0554 um`.
+#[must_use]
+pub fn format_length_interval(ends_m: [f64; 2], u_m: f64) -> String {
+    let unit = LengthUnit::for_length_m(0.5 * (ends_m[0] + ends_m[1])).unit();
+    format_interval(ends_m.map(|end| unit.value_from_si(end)), unit.difference_from_si(u_m), unit.symbol)
+}
+
+/// The same for angles in radians, in degrees.
+#[must_use]
+pub fn format_angle_deg_interval(ends_rad: [f64; 2], u_rad: f64) -> String {
+    format_interval(ends_rad.map(f64::to_degrees), u_rad.to_degrees(), "deg")
+}
+
+fn format_interval([low, high]: [f64; 2], u: f64, unit: &str) -> String {
+    if !(low.is_finite() && high.is_finite() && u.is_finite() && u > 0.0) {
+        return "not known".to_owned();
+    }
+    let last_place = rounded_digits(u, DIGITS).1;
+    format!("{} to {} {unit}", fixed(low, last_place), fixed(high, last_place))
+}
+
 /// A fraction as a percentage with `digits` significant digits: `42 %`; below a hundredth of a percent `< 0.01 %`.
 #[must_use]
 pub fn format_ratio_percent(ratio: f64, digits: u32) -> String {

@@ -69,11 +69,7 @@ fn row(sample: &SampleResult, line: &BudgetLine, pitches: usize) -> Vec<String> 
 /// One unit for the whole column, one step below that of the pitch where u is small.
 fn u_unit(sample: &SampleResult, pitch: usize) -> Unit {
     let largest_m = sample.budget.iter().filter_map(|line| line.u_pitch_m.get(pitch)).copied().fold(0.0, f64::max);
-    match largest_m {
-        u if u < 0.5e-6 => units::NANOMETRE,
-        u if u < 0.5e-3 => units::MICROMETRE,
-        _ => units::MILLIMETRE,
-    }
+    units::for_small_length(largest_m)
 }
 
 fn is_small(line: &BudgetLine) -> bool {

@@ -5,8 +5,8 @@ use crate::{
     bench::Mode,
     frames::{PixelCovariance, PixelPoint},
     measure::{
-        BudgetLine, FitSummary, KindStatement, LatticeKind, Measurement, OrderRow, ParameterRow, ParameterUnit, PhotoSummary, RejectedSpot,
-        SampleResult, Value, ZeroOrder,
+        BudgetLine, FitSummary, KindStatement, LatticeKind, Measurement, OrderRow, ParameterRow, ParameterUnit, PhotoSummary,
+        ReciprocalView, RejectedSpot, SampleResult, Value, ZeroOrder,
     },
     photo::Exif,
 };
@@ -31,6 +31,12 @@ pub(super) fn plane() -> Measurement {
         fit: FitSummary { chi2_reduced: 1.32, degrees_of_freedom: 31.0, rms_px: 0.071, birge_factor: 1.149, spots_used: 17, dots_used: 96 },
         photos: vec![photo()],
         mode: Mode::Transmission,
+        trials: None,
+        reciprocal: ReciprocalView {
+            wavelength_m: 632.82e-9,
+            zero_order: [0.02, -0.01],
+            vectors_per_m: vec![[281_958.0, -61_690.0], [193_840.0, 213_880.0]],
+        },
         notes: vec![Note::ToneCurveAssumed],
     }
 }
@@ -46,6 +52,8 @@ pub(super) fn line() -> Measurement {
         fit: FitSummary { chi2_reduced: 0.9, degrees_of_freedom: 8.0, rms_px: 0.05, birge_factor: 1.0, spots_used: 7, dots_used: 0 },
         notes: vec![],
         mode: Mode::Reflection,
+        trials: None,
+        reciprocal: ReciprocalView { wavelength_m: 632.82e-9, zero_order: [0.5, 0.0], vectors_per_m: vec![[599_984.0, 0.0]] },
         ..plane()
     }
 }

@@ -2,10 +2,15 @@
 
 use std::collections::BTreeMap;
 
+use schemars::{JsonSchema, generate::SchemaSettings};
 use serde::Serialize;
 
 use super::{
+    context::Context,
+    limits_json::{LimitsJson, limits_json},
+    provenance_json::{InputsJson, LogEntryJson, entry_json, inputs_json},
     sample_json::{SampleJson, measured, number, sample_json},
+    trials::{TrialsJson, trials_json},
     units,
     words::{NO_CERTIFICATE, mode_name},
 };
@@ -18,7 +23,7 @@ use crate::{
 const SCHEMA: &str = "spotrule.measurement/1";
 
 /// Which program made a result.
-#[derive(Debug, Clone, PartialEq, Eq, Serialize)]
+#[derive(Debug, Clone, PartialEq, Eq, Serialize, JsonSchema)]
 pub struct Program {
     /// Version of the crate.
     pub version: String,
@@ -39,10 +44,10 @@ impl Program {
 
 /// The measurement as pretty-printed JSON, ending with a line break; every number in it is finite.
 #[must_use]
-pub fn json(measurement: &Measurement, program: &Program) -> String {
+pub fn json(measurement: &Measurement, context: &Context, program: &Program) -> String {
     let several = !measurement.other_samples.is_empty();
     let all = measurement.other_samples.iter().chain([&measurement.sample]);
-    pretty(&Measured {
+    pretty(&ResultJson::Measured(Box::new(Measured {
         schema: SCHEMA,
         program,
         status: "measured",
@@ -56,25 +61,67 @@ pub fn json(measurement: &Measurement, program: &Program) -> String {
         rejected: measurement.rejected.iter().filter_map(rejected_json).collect(),
         parameters: measurement.parameters.iter().filter_map(parameter_json).collect(),
         fit: fit_json(&measurement.fit),
+        monte_carlo: trials_json(measurement),
         photos: measurement.photos.iter().map(photo_json).collect(),
         warnings: measurement.notes.iter().map(warning_json).collect(),
+        limits: context.verdict.as_ref().map(limits_json),
+        around: around(context),
         remark: NO_CERTIFICATE,
-    })
+    })))
 }
 
 /// A refusal as JSON: nothing can honestly be said, and why.
 #[must_use]
-pub fn refused_json(code: &str, text: &str, program: &Program) -> String {
-    pretty(&Refused { schema: SCHEMA, program, status: "refused", reason: Remark { code, text: text.to_owned() }, warnings: vec![] })
+pub fn refused_json(code: &str, text: &str, context: &Context, program: &Program) -> String {
+    pretty(&ResultJson::Refused(Box::new(Refused {
+        schema: SCHEMA,
+        program,
+        status: "refused",
+        sample_name: context.provenance.as_ref().and_then(|provenance| provenance.sample_name.as_deref()),
+        reason: Remark { code, text: text.to_owned() },
+        around: around(context),
+        warnings: vec![],
+    })))
 }
 
-#[derive(Serialize)]
+fn around(context: &Context) -> Around<'_> {
+    let provenance = context.provenance.as_ref();
+    Around {
+        time: provenance.map(|provenance| provenance.time.as_str()),
+        operator: provenance.and_then(|provenance| provenance.operator.as_deref()),
+        operator_remark: provenance.and_then(|provenance| provenance.remark.as_deref()),
+        inputs: provenance.map(inputs_json),
+        log: context.entry.as_ref().map(entry_json),
+    }
+}
+
+/// What a result file holds.
+#[derive(Serialize, JsonSchema)]
+#[serde(untagged)]
+enum ResultJson<'a> {
+    /// A measurement.
+    Measured(Box<Measured<'a>>),
+    /// A refusal.
+    Refused(Box<Refused<'a>>),
+}
+
+/// JSON Schema of the result, generated from the structs that are written; pretty-printed, ending with a line break.
+#[must_use]
+pub fn result_schema() -> String {
+    let schema = SchemaSettings::draft2020_12().for_serialize().into_generator().into_root_schema_for::<ResultJson<'_>>();
+    pretty(&schema)
+}
+
+#[derive(Serialize, JsonSchema)]
 struct Measured<'a> {
+    #[schemars(extend("const" = "spotrule.measurement/1"))]
     schema: &'static str,
     program: &'a Program,
+    #[schemars(extend("const" = "measured"))]
     status: &'static str,
     #[serde(rename = "sample")]
     sample_name: &'a str,
+    #[schemars(extend("enum" = ["transmission", "reflection"]))]
     mode: &'static str,
     #[serde(flatten)]
     sample: SampleJson,
@@ -86,40 +133,67 @@ struct Measured<'a> {
     rejected: Vec<RejectedJson<'a>>,
     parameters: Vec<ParameterJson<'a>>,
     fit: FitJson,
+    #[serde(skip_serializing_if = "Option::is_none")]
+    monte_carlo: Option<TrialsJson>,
     photos: Vec<PhotoJson<'a>>,
     warnings: Vec<Remark<'static>>,
+    #[serde(skip_serializing_if = "Option::is_none")]
+    limits: Option<LimitsJson>,
+    #[serde(flatten)]
+    around: Around<'a>,
     remark: &'static str,
 }
 
-#[derive(Serialize)]
+/// Who made it, when, from what, and where it is logged.
+#[derive(Serialize, JsonSchema)]
+struct Around<'a> {
+    #[serde(skip_serializing_if = "Option::is_none")]
+    time: Option<&'a str>,
+    #[serde(skip_serializing_if = "Option::is_none")]
+    operator: Option<&'a str>,
+    #[serde(skip_serializing_if = "Option::is_none")]
+    operator_remark: Option<&'a str>,
+    #[serde(skip_serializing_if = "Option::is_none")]
+    inputs: Option<InputsJson<'a>>,
+    #[serde(skip_serializing_if = "Option::is_none")]
+    log: Option<LogEntryJson<'a>>,
+}
+
+#[derive(Serialize, JsonSchema)]
 struct Refused<'a> {
+    #[schemars(extend("const" = "spotrule.measurement/1"))]
     schema: &'static str,
     program: &'a Program,
+    #[schemars(extend("const" = "refused"))]
     status: &'static str,
+    #[serde(rename = "sample", skip_serializing_if = "Option::is_none")]
+    sample_name: Option<&'a str>,
     reason: Remark<'a>,
+    #[serde(flatten)]
+    around: Around<'a>,
     warnings: Vec<Remark<'a>>,
 }
 
-#[derive(Serialize)]
+#[derive(Serialize, JsonSchema)]
 struct Remark<'a> {
     code: &'a str,
     text: String,
 }
 
-#[derive(Serialize)]
+#[derive(Serialize, JsonSchema)]
 struct Place {
     x: f64,
     y: f64,
 }
 
-#[derive(Serialize)]
+#[derive(Serialize, JsonSchema)]
 struct ZeroOrderJson {
     #[serde(flatten)]
     at: Place,
     seen: bool,
 }
 
-#[derive(Serialize)]
+#[derive(Serialize, JsonSchema)]
 struct OrderJson {
     photo: usize,
     h: i32,
@@ -134,7 +208,7 @@ struct OrderJson {
     clipped: bool,
 }
 
-#[derive(Serialize)]
+#[derive(Serialize, JsonSchema)]
 struct RejectedJson<'a> {
     photo: usize,
     #[serde(flatten)]
@@ -144,7 +218,7 @@ struct RejectedJson<'a> {
     detail: &'a str,
 }
 
-#[derive(Serialize)]
+#[derive(Serialize, JsonSchema)]
 struct ParameterJson<'a> {
     name: &'a str,
     unit: &'static str,
@@ -154,13 +228,13 @@ struct ParameterJson<'a> {
     u: f64,
 }
 
-#[derive(Serialize)]
+#[derive(Serialize, JsonSchema)]
 struct PriorJson {
     value: f64,
     u: f64,
 }
 
-#[derive(Serialize)]
+#[derive(Serialize, JsonSchema)]
 struct FitJson {
     chi2_reduced: Option<f64>,
     degrees_of_freedom: Option<f64>,
@@ -170,7 +244,7 @@ struct FitJson {
     dots_used: usize,
 }
 
-#[derive(Serialize)]
+#[derive(Serialize, JsonSchema)]
 struct PhotoJson<'a> {
     file: &'a str,
     width: usize,
@@ -263,7 +337,7 @@ fn warning_json(note: &Note) -> Remark<'static> {
 }
 
 /// These structs hold only text, integers and finite numbers under text keys: writing them cannot fail.
-fn pretty(result: &impl Serialize) -> String {
+pub(super) fn pretty(result: &impl Serialize) -> String {
     let mut text = serde_json::to_string_pretty(result).unwrap_or_default();
     text.push('\n');
     text
@@ -277,7 +351,7 @@ mod tests {
     use crate::report::example;
 
     fn parsed(measurement: &Measurement) -> Json {
-        serde_json::from_str(&json(measurement, &Program::this())).unwrap()
+        serde_json::from_str(&json(measurement, &Context::default(), &Program::this())).unwrap()
     }
 
     #[test]
@@ -331,7 +405,7 @@ mod tests {
     #[test]
     fn no_null_in_a_sound_measurement() {
         for measurement in [example::plane(), example::line()] {
-            assert!(!json(&measurement, &Program::this()).contains("null"));
+            assert!(!json(&measurement, &Context::default(), &Program::this()).contains("null"));
         }
     }
 
@@ -350,7 +424,7 @@ mod tests {
 
     #[test]
     fn a_refusal_gives_its_reason() {
-        let text = refused_json("too-few-spots", "7 spots carry an order, the fit needs 9", &Program::this());
+        let text = refused_json("too-few-spots", "7 spots carry an order, the fit needs 9", &Context::default(), &Program::this());
         let result: Json = serde_json::from_str(&text).unwrap();
         assert_eq!(result["status"], "refused");
         assert_eq!(result["reason"]["code"], "too-few-spots");

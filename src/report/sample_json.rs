@@ -1,5 +1,6 @@
 //! What one sample gives in the JSON result, as versioned structs of this room.
 
+use schemars::JsonSchema;
 use serde::Serialize;
 
 use super::{
@@ -14,14 +15,16 @@ const U_DIGITS: i32 = 6;
 /// Significant digits of a number without uncertainty.
 const NUMBER_DIGITS: usize = 12;
 
-#[derive(Debug, Serialize)]
+#[derive(Debug, Serialize, JsonSchema)]
 pub(super) struct SampleJson {
+    #[schemars(extend("enum" = ["line", "plane"]))]
     pattern: &'static str,
     pitch: Vec<ValueJson>,
     #[serde(skip_serializing_if = "Option::is_none")]
     lattice_angle: Option<ValueJson>,
     orientation: Option<ValueJson>,
     #[serde(skip_serializing_if = "Option::is_none")]
+    #[schemars(extend("enum" = ["oblique", "rectangular", "centred rectangular", "square", "hexagonal"]))]
     lattice_kind: Option<&'static str>,
     #[serde(skip_serializing_if = "Option::is_none")]
     lattice_kind_p_value: Option<f64>,
@@ -34,7 +37,7 @@ pub(super) struct SampleJson {
     budget: Vec<BudgetJson>,
 }
 
-#[derive(Debug, Serialize)]
+#[derive(Debug, Serialize, JsonSchema)]
 pub(super) struct ValueJson {
     value: f64,
     u: f64,
@@ -47,7 +50,7 @@ pub(super) struct ValueJson {
     degrees_of_freedom: Option<f64>,
 }
 
-#[derive(Debug, Serialize)]
+#[derive(Debug, Serialize, JsonSchema)]
 struct BudgetJson {
     source: String,
     share: Vec<f64>,

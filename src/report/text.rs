@@ -3,9 +3,12 @@
 use super::{
     budget_table::budget_table,
     columns::{Align, WIDTH, columns, paragraph, shortened},
+    context::{Context, LogEntry},
+    limits_text::limits_text,
     rounding::{concise, percent, rounded, significant},
+    trials::trials_text,
     units::{self, Unit},
-    words::{NO_CERTIFICATE, kind_name, mode_name, numbered, pattern_name, reason_counts},
+    words::{NO_CERTIFICATE, kind_name, mode_name, numbered, orientation_words, pattern_name, reason_counts},
 };
 use crate::measure::{FitSummary, Measurement, ParameterRow, SampleResult, Value};
 
@@ -17,16 +20,19 @@ const REASONS_SHOWN: usize = 5;
 
 /// The measurement as text for a terminal, ending with a line break.
 #[must_use]
-pub fn text(measurement: &Measurement) -> String {
+pub fn text(measurement: &Measurement, context: &Context) -> String {
     let sections = [
         headline(measurement),
         results(measurement),
+        limits_text(context.verdict.as_ref()),
         lattice_kind(&measurement.sample),
         evidence(measurement),
         budget(&measurement.sample),
+        trials_text(measurement),
         moved_parameters(&measurement.parameters),
         other_samples(&measurement.other_samples),
         notes(measurement),
+        logged(context),
         format!("{NO_CERTIFICATE}\n"),
     ];
     sections.into_iter().filter(|section| !section.is_empty()).collect::<Vec<_>>().join("\n")
@@ -69,16 +75,9 @@ fn results(measurement: &Measurement) -> String {
     for (i, density) in sample.row_spacing_m.iter().filter_map(|spacing_m| units::line_density_per_m(*spacing_m)).enumerate() {
         rows.push(relative_row(&numbered("line density", i, rows_of), density, units::LINES_PER_MILLIMETRE));
     }
-    rows.extend(sample.cell_area_m2.map(|area| relative_row("cell area", area, area_unit(sample))));
+    rows.extend(sample.cell_area_m2.map(|area| relative_row("cell area", area, units::for_area(sample))));
     let align = [Align::Left, Align::Right, Align::Right, Align::Right, Align::Right, Align::Right];
     columns(&rows, &align) + &explanation(measurement)
-}
-
-fn area_unit(sample: &SampleResult) -> Unit {
-    match sample.pitch_m.first() {
-        Some(pitch_m) if pitch_m.value >= 1e-3 => units::SQUARE_MILLIMETRE,
-        _ => units::SQUARE_MICROMETRE,
-    }
 }
 
 /// Name, value rounded to two digits of U, U, k, u.
@@ -105,15 +104,6 @@ fn explanation(measurement: &Measurement) -> String {
     let expanded = "U = k u is the expanded uncertainty: value - U to value + U holds the quantity with a probability of about 95 %. \
                     u is the standard uncertainty (one standard deviation).";
     paragraph("  ", expanded, WIDTH) + &paragraph("  ", &orientation_words(measurement), WIDTH)
-}
-
-fn orientation_words(measurement: &Measurement) -> String {
-    let first = match pattern_name(&measurement.sample) {
-        "line" => "the direction across the lines",
-        _ => "the first lattice vector (pitch 1)",
-    };
-    let axis = if measurement.fit.dots_used > 0 { "the X axis of the target" } else { "the photo's horizontal" };
-    format!("Orientation: {first} against {axis}, counter-clockwise for the viewer.")
 }
 
 fn lattice_kind(sample: &SampleResult) -> String {
@@ -230,6 +220,13 @@ fn notes(measurement: &Measurement) -> String {
     format!("Please note:\n{lines}")
 }
 
+/// The place in the log; with its hash a paper copy is a witness of the log.
+fn logged(context: &Context) -> String {
+    let line =
+        |entry: &LogEntry| paragraph("Logged: ", &format!("entry {} of {}, SHA-256 {}", entry.entry, entry.log, entry.sha256), WIDTH);
+    context.entry.as_ref().map(line).unwrap_or_default()
+}
+
 #[cfg(test)]
 mod tests {
     use super::*;
@@ -244,14 +241,14 @@ mod tests {
 
     #[test]
     fn every_line_fits_a_terminal() {
-        assert_fits(&text(&example::plane()));
-        assert_fits(&text(&example::line()));
+        assert_fits(&text(&example::plane(), &Context::default()));
+        assert_fits(&text(&example::line(), &Context::default()));
         assert_fits(&refusal_text("no-spots", &"a very long reason ".repeat(20)));
     }
 
     #[test]
     fn value_and_u_end_at_the_same_place() {
-        let report = text(&example::plane());
+        let report = text(&example::plane(), &Context::default());
         let line = report.lines().find(|line| line.trim_start().starts_with("pitch 1")).unwrap();
         let cells: Vec<&str> = line.split_whitespace().collect();
         assert_eq!(&cells[2..8], ["4.00031", "µm", "0.00086", "µm", "2.01", "0.00043"], "{line}");
@@ -260,14 +257,14 @@ mod tests {
 
     #[test]
     fn only_parameters_that_moved_are_named() {
-        let report = text(&example::plane());
+        let report = text(&example::plane(), &Context::default());
         assert!(report.contains("throw") && report.contains("moved by 3.5 u"), "{report}");
         assert!(!report.contains("fitted 632."), "the wavelength did not move:\n{report}");
     }
 
     #[test]
     fn ends_with_what_it_is_not() {
-        assert!(text(&example::line()).trim_end().ends_with(NO_CERTIFICATE));
+        assert!(text(&example::line(), &Context::default()).trim_end().ends_with(NO_CERTIFICATE));
     }
 
     #[test]
@@ -277,6 +274,6 @@ mod tests {
         broken.fit.rms_px = f64::NAN;
         broken.sample.budget[0].share = vec![];
         broken.parameters[0].prior = Some((f64::NAN, 0.0));
-        assert_fits(&text(&broken));
+        assert_fits(&text(&broken, &Context::default()));
     }
 }

@@ -1,6 +1,6 @@
 //! SI values to the units that people read. The only place of the room where a power of ten of a unit stands.
 
-use crate::measure::{ParameterUnit, Value};
+use crate::measure::{ParameterUnit, SampleResult, Value};
 
 /// A unit to show a value in.
 #[derive(Debug, Clone, Copy, PartialEq)]
@@ -44,6 +44,23 @@ pub(super) fn for_pitch(pitch_m: f64) -> Unit {
         p if p < 0.5e-6 => NANOMETRE,
         p if p >= 1e-3 => MILLIMETRE,
         _ => MICROMETRE,
+    }
+}
+
+/// µm², or mm² for coarse meshes.
+pub(super) fn for_area(sample: &SampleResult) -> Unit {
+    match sample.pitch_m.first() {
+        Some(pitch_m) if pitch_m.value >= 1e-3 => SQUARE_MILLIMETRE,
+        _ => SQUARE_MICROMETRE,
+    }
+}
+
+/// For uncertainties of pitches: one step below the unit of a pitch.
+pub(super) fn for_small_length(length_m: f64) -> Unit {
+    match length_m {
+        u if u < 0.5e-6 => NANOMETRE,
+        u if u < 0.5e-3 => MICROMETRE,
+        _ => MILLIMETRE,
     }
 }
 

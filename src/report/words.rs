@@ -4,7 +4,7 @@ use std::{cmp::Reverse, collections::BTreeMap};
 
 use crate::{
     bench::Mode,
-    measure::{LatticeKind, RejectedSpot, SampleResult},
+    measure::{LatticeKind, Measurement, RejectedSpot, SampleResult},
 };
 
 /// Said wherever a result is presented.
@@ -48,4 +48,14 @@ pub(super) fn reason_counts<'a>(spots: impl Iterator<Item = &'a RejectedSpot>) -
     let mut reasons: Vec<(&str, usize)> = counts.into_iter().collect();
     reasons.sort_by_key(|&(reason, count)| (Reverse(count), reason));
     reasons
+}
+
+/// What the orientation is measured from.
+pub(super) fn orientation_words(measurement: &Measurement) -> String {
+    let first = match pattern_name(&measurement.sample) {
+        "line" => "the direction across the lines",
+        _ => "the first lattice vector (pitch 1)",
+    };
+    let axis = if measurement.fit.dots_used > 0 { "the X axis of the target" } else { "the photo's horizontal" };
+    format!("Orientation: {first} against {axis}, counter-clockwise for the viewer.")
 }

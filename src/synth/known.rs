@@ -122,6 +122,7 @@ impl Scene {
             target,
             camera: bench::Camera { square_on_rad: pair(known.square_on_rad), ..bench::Camera::default() },
             photos: Vec::new(),
+            calibration: None,
         }
     }
 

@@ -70,6 +70,47 @@ pub enum TargetError {
          a printed face towards the camera cannot look like this: undo the mirroring of the photo, or turn the print's face to the camera"
     )]
     Mirrored,
+    /// No bright quadrilateral.
+    #[error(
+        "no sheet of paper seen: no bright region with four straight edges (the largest bright region takes {largest_percent:.0} % of the photo, \
+         5 % are needed); photograph the whole sheet, lit, on a darker ground, or state its corners as [target] marks"
+    )]
+    NoSheet {
+        /// Largest bright region, percent of the photo.
+        largest_percent: f64,
+    },
+    /// The sheet is there, but its edges cannot be followed.
+    #[error(
+        "the sheet's outline was found, but only {seen} of its edges can be followed ({needed} are needed); \
+         clear them of clips, tape and shadows, show them sharp, or state the corners as [target] marks"
+    )]
+    SheetEdgesHidden {
+        /// Edges seen.
+        seen: usize,
+        /// Edges needed.
+        needed: usize,
+    },
+    /// No evenly spaced lines.
+    #[error(
+        "no ruled paper seen: {parts} parts of the photo show evenly spaced lines clearly, {needed} are needed; \
+         show the ruling sharp over much of the frame and in even light, lines at least 8 px apart"
+    )]
+    NoRuling {
+        /// Parts of the photo that show lines.
+        parts: usize,
+        /// Parts needed.
+        needed: usize,
+    },
+    /// Lines too close for the photo.
+    #[error(
+        "the ruled lines are {period_px:.1} px apart, too fine to be told apart for certain ({least_px:.0} px are needed); photograph them closer"
+    )]
+    RulingTooFine {
+        /// Distance of the lines, px.
+        period_px: f64,
+        /// Least distance, px.
+        least_px: f64,
+    },
     /// The pitch of a target to be drawn is no positive number.
     #[error("a target needs a pitch above zero, not {pitch_mm} mm; 10 mm suits an A4 sheet")]
     PitchNotPositive {

@@ -1,6 +1,6 @@
-//! In: a photo of the printed dot target. Out: its dots, each with its place on the print. Also draws the print.
+//! In: a photo of the printed dot target, of a sheet or of ruled paper. Out: its dots, edges or lines, each with its place. Also draws the print.
 //! Must never know: the pattern, the sample, the bench.
-//! Start reading at [`read`] and [`Reading`]; for the print at [`Sheet`].
+//! Start reading at [`read`] and [`Reading`], [`read_outline`], [`read_ruling`]; for the print at [`Sheet`].
 //!
 //! ```text
 //!   o  o  o  o  o      dots at (i, j) pitches, X to the right, Y up as printed
@@ -15,12 +15,14 @@ mod error;
 mod grid;
 mod homography;
 mod marks;
+mod outline;
 mod paper;
 mod pdf;
 mod reading;
 mod refine;
 mod residuals;
 mod rim;
+mod ruling;
 mod sheet;
 mod svg;
 mod view;
@@ -36,8 +38,10 @@ mod painter;
 
 pub use error::TargetError;
 pub use homography::homography;
+pub use outline::{EdgePoint, Outline, read_outline};
 pub use pdf::pdf;
 pub use reading::{Dot, Marks, ReadOptions, Reading, read};
+pub use ruling::{Families, RuledPoint, Ruling, read_ruling};
 pub use sheet::{DOT_DIAMETER_PITCHES, MARK_DIAMETER_PITCHES, Paper, Sheet};
 pub use svg::svg;
 

@@ -1,0 +1,45 @@
+//! A measurement up to its solved problem: what measuring a sample and calibrating a bench have in common.
+
+use super::{
+    Inputs, Refusal, assemble, calibrated, cameras,
+    look::{self, Seen},
+    orders::Ordered,
+    scan, statement, strain, strays, zero_order,
+};
+use crate::{
+    Note,
+    bench::Bench,
+    fit::{Fit, Outliers, solve},
+};
+
+/// Photos looked at, spots with their orders, and the solved joint problem.
+#[derive(Debug)]
+pub(super) struct Fitted<'a> {
+    pub(super) inputs: &'a Inputs<'a>,
+    pub(super) seen: Seen,
+    pub(super) ordered: Vec<Ordered>,
+    pub(super) fit: Fit,
+    pub(super) notes: Vec<Note>,
+}
+
+/// Looks at the photos and solves the joint problem.
+pub(super) fn fitted<'a>(inputs: &'a Inputs<'a>, bench: &Bench) -> Result<Fitted<'a>, Refusal> {
+    let seen = look::look(inputs, bench)?;
+    let mut notes = calibrated::check(inputs, &seen, bench)?;
+    let targets: Vec<&str> = inputs.targets.iter().map(|file| file.name).collect();
+    let wavelengths_m = assemble::wavelengths_in_air(bench)?;
+    notes.extend(statement::capture_notes(&seen, bench, &wavelengths_m)?);
+    let cameras = cameras::cameras(&seen, bench, &targets)?;
+    let (cameras, ordered) = scan::order_all(&seen, bench, &cameras)?;
+    let joint = assemble::assemble(&seen, bench, &cameras, &ordered, &wavelengths_m);
+    statement::enough_spots(&joint)?;
+    let fit = solve(joint, Outliers::Rejected)?;
+    let (ordered, fit) = zero_order::best_zero_order(&seen, bench, &cameras, ordered, &wavelengths_m, fit)?;
+    let fit = strays::taken_in(&seen, bench, fit)?;
+    statement::regular_enough(&fit)?;
+    notes.extend(statement::numbering_notes(&ordered));
+    notes.extend(strain::strained_statements(bench, &fit));
+    notes.extend(strain::strained_calibration(bench, &fit));
+    notes.extend(strain::shifted_pattern(&fit));
+    Ok(Fitted { inputs, seen, ordered, fit, notes })
+}
