@@ -6,7 +6,8 @@ use super::{
     deciders,
     look::{self, Seen},
     orders::Ordered,
-    scan, statement, strain, strays, zero_order,
+    scan::{self, Stiffness},
+    statement, strain, strays, zero_order,
 };
 use crate::{
     Error, Note,
@@ -33,7 +34,8 @@ pub(super) fn fitted<'a>(inputs: &'a Inputs<'a>, bench: &Bench) -> Result<Fitted
     let wavelengths_m = assemble::wavelengths_in_air(bench)?;
     notes.extend(statement::capture_notes(&seen, bench, &wavelengths_m)?);
     let cameras = cameras::cameras(&seen, bench, &targets)?;
-    let (ordered, fit) = numbered(&seen, bench, &cameras, &wavelengths_m)?;
+    let (ordered, fit) = numbered(&seen, bench, &cameras, &wavelengths_m, Stiffness::Usual)
+        .or_else(|refusal| numbered(&seen, bench, &cameras, &wavelengths_m, Stiffness::Stiff).map_err(|_| refusal))?;
     notes.extend(statement::numbering_notes(&ordered));
     notes.extend(strain::strained_statements(bench, &fit));
     notes.extend(strain::strained_calibration(bench, &fit));
@@ -47,8 +49,9 @@ fn numbered(
     bench: &Bench,
     cameras: &Cameras,
     wavelengths_m: &[Quantity],
+    stiffness: Stiffness,
 ) -> Result<(Vec<Ordered>, Fit), Error> {
-    let (cameras, mut ordered) = scan::order_all(seen, bench, cameras)?;
+    let (cameras, mut ordered) = scan::order_all(seen, bench, cameras, stiffness)?;
     let solved = |ordered: &[Ordered]| -> Result<Fit, Error> {
         let joint = assemble::assemble(seen, bench, &cameras, ordered, wavelengths_m);
         statement::enough_spots(&joint)?;
