@@ -265,6 +265,13 @@ impl Draw {
         self.lay_dots(&mut scene.print, [0.0; 2]);
     }
 
+    /// Sets the print's marks to the upper right of the hole.
+    pub(crate) fn marks_beside_hole(&mut self, scene: &mut Scene) {
+        let beside = -(scene.screen.hole_radius_m + 1.5 * scene.print.pitch_m);
+        scene.print.zero_order_m = [beside, beside];
+        self.lay_dots(&mut scene.print, [0.0; 2]);
+    }
+
     fn light(&mut self) -> Light {
         Light {
             brightest_order: self.scaled(0.5, 25.0),

@@ -66,6 +66,8 @@ const FAR_OFF: f64 = 5.0;
 /// The true lattice is found when each value lies within this many u of it, or within `CLOSE` of the value.
 const INDEXED: f64 = 8.0;
 const CLOSE: f64 = 0.01;
+/// However wide u is: a net of index two differs by a factor √2 or more in some value.
+const NEXT_LATTICE: f64 = 0.3;
 
 /// The photos of a scene as files.
 pub(crate) struct Files {
@@ -176,5 +178,5 @@ fn pull(value: &Value, truth: f64, is_angle: bool) -> (Pull, bool) {
     let error = value.value - truth;
     let size = if is_angle { 1.0 } else { truth };
     let pull = Pull { is_angle, z: error / value.u, inside: error.abs() <= value.expanded(), relative_u: value.u / size };
-    (pull, error.abs() <= (INDEXED * value.u).min(0.05 * size).max(CLOSE * size))
+    (pull, error.abs() <= (INDEXED * value.u).min(NEXT_LATTICE * size).max(CLOSE * size))
 }
