@@ -2,14 +2,18 @@
 
 use super::{
     Inputs, Refusal, assemble, calibrated, cameras,
+    cameras::Cameras,
+    deciders,
     look::{self, Seen},
     orders::Ordered,
-    scan, statement, strain, strays, zero_order,
+    scan::{self, Stiffness},
+    statement, strain, strays, zero_order,
 };
 use crate::{
-    Note,
+    Error, Note,
     bench::Bench,
     fit::{Fit, Outliers, solve},
+    quantity::Quantity,
 };
 
 /// Photos looked at, spots with their orders, and the solved joint problem.
@@ -30,16 +34,36 @@ pub(super) fn fitted<'a>(inputs: &'a Inputs<'a>, bench: &Bench) -> Result<Fitted
     let wavelengths_m = assemble::wavelengths_in_air(bench)?;
     notes.extend(statement::capture_notes(&seen, bench, &wavelengths_m)?);
     let cameras = cameras::cameras(&seen, bench, &targets)?;
-    let (cameras, ordered) = scan::order_all(&seen, bench, &cameras)?;
-    let joint = assemble::assemble(&seen, bench, &cameras, &ordered, &wavelengths_m);
-    statement::enough_spots(&joint)?;
-    let fit = solve(joint, Outliers::Rejected)?;
-    let (ordered, fit) = zero_order::best_zero_order(&seen, bench, &cameras, ordered, &wavelengths_m, fit)?;
-    let fit = strays::taken_in(&seen, bench, fit)?;
-    statement::regular_enough(&fit)?;
+    let (ordered, fit) = numbered(&seen, bench, &cameras, &wavelengths_m, Stiffness::Usual)
+        .or_else(|refusal| numbered(&seen, bench, &cameras, &wavelengths_m, Stiffness::Stiff).map_err(|_| refusal))?;
     notes.extend(statement::numbering_notes(&ordered));
     notes.extend(strain::strained_statements(bench, &fit));
     notes.extend(strain::strained_calibration(bench, &fit));
     notes.extend(strain::shifted_pattern(&fit));
     Ok(Fitted { inputs, seen, ordered, fit, notes })
+}
+
+/// Orders for all spots, and the joint problem solved with them.
+fn numbered(
+    seen: &Seen,
+    bench: &Bench,
+    cameras: &Cameras,
+    wavelengths_m: &[Quantity],
+    stiffness: Stiffness,
+) -> Result<(Vec<Ordered>, Fit), Error> {
+    let (cameras, mut ordered) = scan::order_all(seen, bench, cameras, stiffness)?;
+    let solved = |ordered: &[Ordered]| -> Result<Fit, Error> {
+        let joint = assemble::assemble(seen, bench, &cameras, ordered, wavelengths_m);
+        statement::enough_spots(&joint)?;
+        Ok(solve(joint, Outliers::Rejected)?)
+    };
+    let mut fit = solved(&ordered)?;
+    if let Some(coarser) = deciders::coarser_numbering(bench, &ordered, &fit) {
+        fit = solved(&coarser)?;
+        ordered = coarser;
+    }
+    let (ordered, fit) = zero_order::best_zero_order(seen, bench, &cameras, ordered, wavelengths_m, fit)?;
+    let fit = strays::taken_in(seen, bench, fit)?;
+    statement::regular_enough(&fit)?;
+    Ok((ordered, fit))
 }

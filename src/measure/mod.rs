@@ -9,6 +9,7 @@ mod calibrate;
 mod calibrated;
 mod cameras;
 mod conclude;
+mod deciders;
 mod error;
 mod fitted;
 mod lens;

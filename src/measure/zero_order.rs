@@ -18,6 +18,8 @@ use crate::{
 
 /// Priors of the geometry strained beyond this chi-square (6 values, 1 in 1000 by chance) make us look for another zero order.
 const STRAIN: f64 = 22.0;
+/// Spots that scatter more than their own uncertainties by this factor make us look as well: a wrong zero order bends the rows.
+const SCATTER: f64 = 2.5;
 /// How many of the brightest spots are tried, and how many must lead before the choice is changed, nats.
 const CANDIDATES: usize = 8;
 const LEAD: f64 = 4.0;
@@ -31,7 +33,8 @@ pub(super) fn best_zero_order(
     wavelengths_m: &[Quantity],
     fit: Fit,
 ) -> Result<(Vec<Ordered>, Fit), FitError> {
-    if strain(&fit) < STRAIN {
+    let regular = fit.joint.spot_scale < SCATTER;
+    if strain(&fit) < STRAIN && regular {
         return Ok((ordered, fit));
     }
     let mut best = (score(seen, &fit, (0, 0)) - LEAD, ordered.clone(), fit.clone());

@@ -3,7 +3,7 @@
 use super::{
     SynthError,
     opening::Opening,
-    scene::{FileKind, Lattice, Scene},
+    scene::{FileKind, Lattice, Scene, SecondLattice},
 };
 use std::f64::consts::PI;
 
@@ -23,6 +23,7 @@ impl Scene {
             self.laser_bounds(),
             self.sample_bounds(),
             lattice_bounds(&self.sample.lattice),
+            self.sample.second.as_ref().map_or_else(Vec::new, second_bounds),
             opening_bounds(&self.sample.opening),
             self.screen_bounds(),
             self.print_bounds(),
@@ -45,6 +46,10 @@ impl Scene {
             ("beam.footprint_radius_m", self.beam.footprint_radius_m, 1e-6..=0.05, "between 1 µm and 5 cm"),
             ("beam.half_divergence_rad", self.beam.half_divergence_rad, 0.0..=0.05, "between 0 and 0.05 rad"),
         ];
+        if let Some(lobe) = &self.beam.second_lobe {
+            bounds.extend(lobe.apart_rad.map(|slope| ("beam.second_lobe.apart_rad", slope, -0.05..=0.05, "between -0.05 and 0.05 rad")));
+            bounds.push(("beam.second_lobe.share", lobe.share, 0.0..=1.0, FRACTION));
+        }
         for laser in &self.lasers {
             bounds.push(("laser.wavelength_m", laser.wavelength_m, 1e-7..=5e-6, "between 100 nm and 5 µm, in metres"));
             bounds.extend(laser.colour.map(|share| ("laser.colour", share, 0.0..=1.0, FRACTION)));
@@ -68,6 +73,7 @@ impl Scene {
             a,
             b,
             ("screen.throw_m", self.screen.throw_m, 1e-3..=100.0, "between 1 mm and 100 m"),
+            ("screen.hole_radius_m", self.screen.hole_radius_m, 0.0..=1.0, "between 0 and 1 m"),
             ("screen.texture", self.screen.texture, 0.0..=0.3, "between 0 and 0.3"),
         ];
         if let Some(sheet) = &self.screen.sheet {
@@ -136,10 +142,18 @@ impl Scene {
             ("sensor.black_level", sensor.black_level, 0.0..=0.5, "between 0 and 0.5"),
             ("stray.ghosts", f64::from(self.stray.ghosts), 0.0..=1000.0, "at most 1000"),
             ("stray.ghost_level", self.stray.ghost_level, 0.0..=1e3, "between 0 and 1000"),
+            ("stray.blobs", f64::from(self.stray.blobs), 0.0..=1000.0, "at most 1000"),
+            ("stray.blob_level", self.stray.blob_level, 0.0..=1e3, "between 0 and 1000"),
+            ("stray.glints", f64::from(self.stray.glints), 0.0..=100.0, "at most 100"),
+            ("stray.glint_level", self.stray.glint_level, 0.0..=1e3, "between 0 and 1000"),
             ("stray.hot_pixels", f64::from(self.stray.hot_pixels), 0.0..=1e5, "at most 100000"),
             ("stray.specks", f64::from(self.stray.specks), 0.0..=1e4, "at most 10000"),
         ];
         bounds.extend(sensor.white_balance.map(|gain| ("sensor.white_balance", gain, 1.0..=10.0, "between 1 and 10")));
+        if let Some(copy) = &self.stray.copy {
+            bounds.push(("stray.copy.share", copy.share, 0.0..=1.0, FRACTION));
+            bounds.extend(copy.shift_px.map(|shift| ("stray.copy.shift_px", shift, -1e4..=1e4, "within 10000 px")));
+        }
         if let Some(noise) = &sensor.noise {
             bounds.push(("sensor.noise.full_well_e", noise.full_well_e, 100.0..=1e7, "between 100 and 1e7 electrons"));
             bounds.push(("sensor.noise.read_noise_e", noise.read_noise_e, 0.0..=1e3, "between 0 and 1000 electrons"));
@@ -165,6 +179,12 @@ impl Scene {
         }
         bounds
     }
+}
+
+fn second_bounds(second: &SecondLattice) -> Vec<Bound> {
+    let mut bounds = lattice_bounds(&second.lattice);
+    bounds.push(("sample.second.power", second.power, 0.0..=1e3, "between 0 and 1000"));
+    bounds
 }
 
 fn lattice_bounds(lattice: &Lattice) -> Vec<Bound> {

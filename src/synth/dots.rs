@@ -22,6 +22,8 @@ pub(super) enum Ink {
 const DOT: f64 = 0.4;
 /// Diameter of a mark over the pitch.
 const MARK: f64 = 0.7;
+/// What little light comes back out of a hole.
+const HOLE_REFLECTANCE: f64 = 0.01;
 /// Dots that are marks: origin, X and handedness.
 const MARKS: [[i32; 2]; 3] = [[0, 0], [2, 0], [0, 1]];
 
@@ -39,6 +41,10 @@ pub(super) fn reflectance(scene: &Scene, ink: Ink) -> Vec<f32> {
     }
     let surface = Surface { camera: scene.camera(), sigma_px: scene.camera.lens.blur_px.hypot(12.0_f64.sqrt().recip()) };
     surface.shade_wall(scene, &mut plane, width);
+    if scene.screen.hole_radius_m > 0.0 {
+        let hole = DotPlace { centre_m: scene.print.zero_order_m, radius_m: scene.screen.hole_radius_m };
+        surface.print_dot(&hole, HOLE_REFLECTANCE, &mut plane, width, height);
+    }
     if ink == Ink::Printed {
         surface.print_dots(&scene.print, &mut plane, width, height);
     }

@@ -27,8 +27,8 @@ pub use opening::Opening;
 pub use orders::{Order, orders};
 pub use render::{RenderedPhoto, render_marked, render_pattern, render_target};
 pub use scene::{
-    Beam, CameraSetup, Dots, ExifData, FileFormat, FileKind, Glare, Laser, Lattice, Lens, Light, Print, Room, Sample, Scene, ScreenSetup,
-    Sensor, SensorColour, SensorNoise, Sheet, Speckle, Stray,
+    Beam, CameraSetup, Dots, ExifData, FileFormat, FileKind, Glare, Laser, Lattice, Lens, Light, PatternCopy, Print, Room, Sample, Scene,
+    ScreenSetup, SecondLattice, SecondLobe, Sensor, SensorColour, SensorNoise, Sheet, Speckle, Stray,
 };
 pub use truth::{Answer, OrderTruth, Truth};
 

@@ -1,6 +1,9 @@
 //! Which orders the scene shows, where, how large and how bright.
 
-use super::{scene::Scene, spot_shape::SpotShape};
+use super::{
+    scene::{Lattice, Scene},
+    spot_shape::SpotShape,
+};
 use crate::{
     frames::{PixelCovariance, PixelPoint},
     optics::{order_direction, screen_hit},
@@ -14,6 +17,8 @@ use std::f64::consts::PI;
 pub struct Order {
     /// Index of the laser.
     pub laser: usize,
+    /// 0, or 1 for the second lattice of the sample.
+    pub lattice: usize,
     /// Along `g1`.
     pub h: i32,
     /// Along `g2`; 0 for a line grating.
@@ -39,6 +44,8 @@ pub(super) enum Purpose {
     Ghosts,
     Specks,
     Redraw,
+    Blobs,
+    Glints,
 }
 
 /// Random numbers for one purpose; `part` tells rows or orders apart, so that nothing depends on the number of threads.
@@ -58,6 +65,8 @@ const FAINTEST: f64 = 1e-5;
 #[must_use]
 pub fn orders(scene: &Scene) -> Vec<Order> {
     let mut all: Vec<Order> = (0..scene.lasers.len()).flat_map(|laser| orders_of_laser(scene, laser)).collect();
+    // The zero order belongs to both lattices and is drawn once.
+    all.retain(|order| order.lattice == 0 || (order.h, order.k) != (0, 0));
     let brightest = all.iter().filter(|order| (order.h, order.k) != (0, 0)).map(|order| order.amplitude).fold(0.0, f64::max);
     for order in &mut all {
         order.amplitude = match (order.h, order.k) {
@@ -71,9 +80,31 @@ pub fn orders(scene: &Scene) -> Vec<Order> {
 }
 
 fn orders_of_laser(scene: &Scene, laser: usize) -> Vec<Order> {
+    let second = scene.sample.second.as_ref();
+    let mut all = orders_of_lattice(scene, laser, 0, &scene.sample.lattice);
+    all.extend(second.into_iter().flat_map(|second| orders_of_lattice(scene, laser, 1, &second.lattice)));
+    all
+}
+
+impl Scene {
+    /// Spatial frequency of an order in the sample plane, cycles per metre.
+    pub(super) fn frequency_per_m(&self, order: &Order) -> [f64; 2] {
+        let lattice =
+            if order.lattice == 0 { Some(&self.sample.lattice) } else { self.sample.second.as_ref().map(|second| &second.lattice) };
+        lattice.map_or([0.0; 2], |lattice| frequency(lattice, order.h, order.k))
+    }
+}
+
+fn frequency(lattice: &Lattice, h: i32, k: i32) -> [f64; 2] {
+    let (g1, g2) = lattice.reciprocal_per_m();
+    let (along1, along2, g2) = (f64::from(h), f64::from(k), g2.unwrap_or([0.0; 2]));
+    [along1 * g1[0] + along2 * g2[0], along1 * g1[1] + along2 * g2[1]]
+}
+
+fn orders_of_lattice(scene: &Scene, laser: usize, number: usize, lattice: &Lattice) -> Vec<Order> {
     let wavelength_m = scene.lasers[laser].wavelength_m;
-    let (g1, g2) = scene.sample.lattice.reciprocal_per_m();
-    let (a1, a2) = scene.sample.lattice.direct_m();
+    let (a1, a2) = lattice.direct_m();
+    let share = if number == 0 { 1.0 } else { scene.sample.second.as_ref().map_or(0.0, |second| second.power) };
     // λ (h g1 + k g2) has a length below 2, and h is its component along a1 over λ.
     let reach = |a: [f64; 2]| super::pixels::ceil_to_i32(2.0 * a[0].hypot(a[1]) / wavelength_m);
     let (h_max, k_max) = (reach(a1), a2.map_or(0, reach));
@@ -82,14 +113,12 @@ fn orders_of_laser(scene: &Scene, laser: usize) -> Vec<Order> {
     let mut found = Vec::new();
     for h in -h_max..=h_max {
         for k in -k_max..=k_max {
-            let (along1, along2) = (f64::from(h), f64::from(k));
-            let second = g2.unwrap_or([0.0; 2]);
-            let g = [along1 * g1[0] + along2 * second[0], along1 * g1[1] + along2 * second[1]];
+            let g = frequency(lattice, h, k);
             let Some(at) = finder.pixel(g) else { continue };
             let Some(shape) = shapes.of_order(wavelength_m, g) else { continue };
-            let power = envelope_along(scene, a1, g) * scatter(scene, h, k);
+            let power = share * envelope_along(scene, a1, g) * scatter(scene, number, h, k);
             let amplitude = power / (2.0 * PI * (shape.xx * shape.yy - shape.xy * shape.xy).sqrt());
-            found.push(Order { laser, h, k, at, shape, amplitude });
+            found.push(Order { laser, lattice: number, h, k, at, shape, amplitude });
         }
     }
     found
@@ -103,9 +132,9 @@ fn envelope_along(scene: &Scene, a1: [f64; 2], g: [f64; 2]) -> f64 {
 }
 
 /// Belongs to the sample: the same for an order in every photo.
-fn scatter(scene: &Scene, h: i32, k: i32) -> f64 {
+fn scatter(scene: &Scene, lattice: usize, h: i32, k: i32) -> f64 {
     let part = (u64::from(h.cast_unsigned()) << 32) | u64::from(k.cast_unsigned());
-    let uniform: f64 = random(scene.seed, Purpose::OrderScatter, part).random_range(-1.0..1.0);
+    let uniform: f64 = random(scene.seed.wrapping_add(lattice as u64), Purpose::OrderScatter, part).random_range(-1.0..1.0);
     1.0 + scene.sample.order_scatter * uniform
 }
 

@@ -4,13 +4,17 @@ use super::{
     SynthError,
     dots::{Ink, reflectance},
     field::Tile,
-    orders::{Order, orders},
+    orders::{Order, Purpose, orders, random},
     scene::{Scene, SensorColour},
     sensor::{channels, expose},
     spotlight::LaserLight,
     truth::{OrderTruth, Truth},
 };
-use crate::photo::{Exif, Photo};
+use crate::{
+    frames::PixelPoint,
+    photo::{Exif, Photo},
+};
+use rand::Rng;
 
 /// A photo, and what is true of it.
 #[derive(Debug, Clone)]
@@ -88,6 +92,7 @@ struct LightField<'a> {
     scene: &'a Scene,
     lasers: Vec<LaserLight>,
     reflectance: Vec<f32>,
+    glints: Vec<Glint>,
     room_level: f64,
     width: usize,
     height: usize,
@@ -101,13 +106,13 @@ impl<'a> LightField<'a> {
         let lasers = (0..lit).map(|laser| LaserLight::draw(scene, &setting.orders, laser, tile.as_ref())).collect();
         let reflectance = reflectance(scene, setting.ink);
         let (width, height) = (scene.file.width_px as usize, scene.file.height_px as usize);
-        Self { scene, lasers, reflectance, room_level: setting.room_level, width, height }
+        Self { scene, lasers, reflectance, glints: glints(scene), room_level: setting.room_level, width, height }
     }
 
     /// Light at a pixel in a channel, 1 clips: vignetting × (reflectance × (room + spots) + glare).
     fn level(&self, x: usize, y: usize, channel: usize) -> f64 {
         let paper = f64::from(self.reflectance[y * self.width + x]);
-        let mut level = paper * self.room(x, y, channel);
+        let mut level = paper * self.room(x, y, channel) + self.glint(x, y) * self.tint(channel);
         for (index, light) in self.lasers.iter().enumerate() {
             let (spots, glare) = light.at(x, y);
             level += self.response(index, channel) * (paper * spots + glare);
@@ -125,11 +130,22 @@ impl<'a> LightField<'a> {
     fn room(&self, x: usize, y: usize, channel: usize) -> f64 {
         let room = &self.scene.light.room;
         let (right, down) = (x as f64 / self.width as f64 - 0.5, y as f64 / self.height as f64 - 0.5);
-        let tint = match self.scene.sensor.colour {
-            SensorColour::Bayer => room.tint[channel],
+        self.room_level * self.tint(channel) * (1.0 + room.gradient[0] * right + room.gradient[1] * down).max(0.0)
+    }
+
+    fn tint(&self, channel: usize) -> f64 {
+        match self.scene.sensor.colour {
+            SensorColour::Bayer => self.scene.light.room.tint[channel],
             SensorColour::Mono => 1.0,
+        }
+    }
+
+    fn glint(&self, x: usize, y: usize) -> f64 {
+        let at = |glint: &Glint| {
+            let distance2 = (x as f64 - glint.at.x_px).powi(2) + (y as f64 - glint.at.y_px).powi(2);
+            glint.peak * (-0.5 * distance2 / glint.sigma_px.powi(2)).exp()
         };
-        self.room_level * tint * (1.0 + room.gradient[0] * right + room.gradient[1] * down).max(0.0)
+        self.glints.iter().map(at).sum()
     }
 
     fn vignetting(&self, x: usize, y: usize) -> f64 {
@@ -149,6 +165,25 @@ impl<'a> LightField<'a> {
             background: self.vignetting(x, y) * (paper * self.room(x, y, main) + glare),
         }
     }
+}
+
+/// A reflection of the room's light.
+struct Glint {
+    at: PixelPoint,
+    sigma_px: f64,
+    peak: f64,
+}
+
+fn glints(scene: &Scene) -> Vec<Glint> {
+    let glint = |number: u32| {
+        let mut generator = random(scene.seed, Purpose::Glints, u64::from(number));
+        let at = PixelPoint {
+            x_px: generator.random_range(0.0..f64::from(scene.file.width_px)),
+            y_px: generator.random_range(0.0..f64::from(scene.file.height_px)),
+        };
+        Glint { at, sigma_px: generator.random_range(3.0..12.0), peak: scene.stray.glint_level * generator.random_range(0.2..1.0) }
+    };
+    (0..scene.stray.glints).map(glint).collect()
 }
 
 fn main_channel(colour: [f64; 3]) -> usize {

@@ -63,6 +63,19 @@ pub struct Beam {
     pub footprint_radius_m: f64,
     /// 1/e² half-angle, rad.
     pub half_divergence_rad: f64,
+    /// A laser in two transverse modes: each spot is a pair; `None`: one lobe.
+    #[serde(default)]
+    pub second_lobe: Option<SecondLobe>,
+}
+
+/// The second of two lobes of a beam. The centroid of both stays on the chief ray.
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+#[serde(deny_unknown_fields)]
+pub struct SecondLobe {
+    /// From the first lobe to the second, as slopes of the incoming beam along x and y, rad.
+    pub apart_rad: [f64; 2],
+    /// Its share of the light.
+    pub share: f64,
 }
 
 /// The sample.
@@ -76,6 +89,9 @@ pub struct Sample {
     pub incidence_rad: [f64; 2],
     /// The repeat.
     pub lattice: Lattice,
+    /// A second lattice beside the first one in the same beam (two samples under one beam; without the orders that they make together).
+    #[serde(default)]
+    pub second: Option<SecondLattice>,
     /// The opening of one cell; decides the envelope of the orders.
     pub opening: Opening,
     /// Peak of the zero order over the brightest other order in the frame; 0 = beam stop or hole.
@@ -106,6 +122,16 @@ pub enum Lattice {
     },
 }
 
+/// A second lattice in the beam.
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+#[serde(deny_unknown_fields)]
+pub struct SecondLattice {
+    /// Its repeat.
+    pub lattice: Lattice,
+    /// Power of its orders over the power of the first lattice's orders at the same place.
+    pub power: f64,
+}
+
 /// Where the screen stands.
 #[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
 #[serde(deny_unknown_fields)]
@@ -119,6 +145,9 @@ pub struct ScreenSetup {
     pub seen_from: Side,
     /// A sheet on a darker wall; `None`: the screen fills the frame.
     pub sheet: Option<Sheet>,
+    /// Radius of a hole in the screen for the zero order, m; 0: none. What falls into it is gone, so set `sample.zero_order_factor` to 0 as well.
+    #[serde(default)]
+    pub hole_radius_m: f64,
     /// Relative standard deviation of the paper's reflectance.
     pub texture: f64,
 }
@@ -296,6 +325,16 @@ pub struct Stray {
     pub ghosts: u32,
     /// Peak of the brightest ghost.
     pub ghost_level: f64,
+    /// A faint copy of the whole pattern, as the back of a window or a plate throws it; `None`: none.
+    pub copy: Option<PatternCopy>,
+    /// Number of wide soft patches of laser light, 3 to 8 times as wide as an order.
+    pub blobs: u32,
+    /// Peak of the brightest soft patch.
+    pub blob_level: f64,
+    /// Number of reflections of the room's light.
+    pub glints: u32,
+    /// Peak of the brightest reflection.
+    pub glint_level: f64,
     /// Number of hot pixels.
     pub hot_pixels: u32,
     /// Number of dark specks on the paper.
@@ -304,8 +343,18 @@ pub struct Stray {
 
 impl Default for Stray {
     fn default() -> Self {
-        Self { ghosts: 0, ghost_level: 0.2, hot_pixels: 0, specks: 0 }
+        Self { ghosts: 0, ghost_level: 0.2, copy: None, blobs: 0, blob_level: 0.1, glints: 0, glint_level: 0.5, hot_pixels: 0, specks: 0 }
     }
+}
+
+/// A faint copy of the pattern, shifted in the photo.
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+#[serde(deny_unknown_fields)]
+pub struct PatternCopy {
+    /// Share of each order's light.
+    pub share: f64,
+    /// Right and down, px.
+    pub shift_px: [f64; 2],
 }
 
 /// The photo file.

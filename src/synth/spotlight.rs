@@ -4,7 +4,8 @@ use super::{
     field::Tile,
     orders::{Order, Purpose, random},
     pixels::{covered, single},
-    scene::{Glare, Scene},
+    scene::{Glare, Scene, SecondLobe},
+    spot_shape::SpotShape,
 };
 use crate::frames::{PixelCovariance, PixelPoint};
 use rand::Rng;
@@ -68,24 +69,67 @@ fn blobs(scene: &Scene, orders: &[Order], laser: usize) -> Vec<Blob> {
             Blob { at: order.at, shape: order.shape, amplitude: order.amplitude, speckle_at }
         })
         .collect();
+    if let Some(lobe) = &scene.beam.second_lobe {
+        blobs = pairs(scene, orders, laser, &blobs, lobe);
+    }
+    if let Some(copy) = &scene.stray.copy {
+        let shifted = |blob: &Blob| Blob {
+            at: PixelPoint { x_px: blob.at.x_px + copy.shift_px[0], y_px: blob.at.y_px + copy.shift_px[1] },
+            amplitude: blob.amplitude * copy.share,
+            ..*blob
+        };
+        blobs.extend_from_within(..);
+        let half = blobs.len() / 2;
+        blobs[half..].iter_mut().for_each(|blob| *blob = shifted(blob));
+    }
     if laser == 0
         && let Some(model) = blobs.first().copied()
     {
-        blobs.extend((0..scene.stray.ghosts).map(|ghost| ghost_like(scene, &model, u64::from(ghost))));
+        blobs.extend((0..scene.stray.ghosts).map(|number| stray_like(scene, &model, Strays::GHOSTS, u64::from(number))));
+        blobs.extend((0..scene.stray.blobs).map(|number| stray_like(scene, &model, Strays::BLOBS, u64::from(number))));
     }
     blobs
 }
 
-/// A stray reflection: a spot one to three times as wide as an order, anywhere.
-fn ghost_like(scene: &Scene, model: &Blob, number: u64) -> Blob {
-    let mut generator = random(scene.seed, Purpose::Ghosts, number);
+/// Each spot as a pair whose centroid is the spot's place.
+fn pairs(scene: &Scene, orders: &[Order], laser: usize, blobs: &[Blob], lobe: &SecondLobe) -> Vec<Blob> {
+    let rays = SpotShape::new(scene);
+    let own = orders.iter().filter(|order| order.laser == laser);
+    let lobes = own.zip(blobs).flat_map(|(order, blob)| {
+        let frequency = scene.frequency_per_m(order);
+        [(-lobe.share, 1.0 - lobe.share), (1.0 - lobe.share, lobe.share)].map(|(along, share)| {
+            let ray = [along * lobe.apart_rad[0], along * lobe.apart_rad[1], 0.0, 0.0];
+            let [x_px, y_px] = rays.pixel_of_ray(scene.lasers[laser].wavelength_m, frequency, ray)?;
+            Some(Blob { at: PixelPoint { x_px, y_px }, amplitude: blob.amplitude * share, ..*blob })
+        })
+    });
+    lobes.flatten().collect()
+}
+
+/// A family of stray light: how much wider than an order (variance), its random numbers, its level.
+struct Strays {
+    widening: std::ops::Range<f64>,
+    purpose: Purpose,
+    level: fn(&Scene) -> f64,
+}
+
+impl Strays {
+    /// Stray reflections: one to three times as wide as an order.
+    const GHOSTS: Self = Self { widening: 1.0..9.0, purpose: Purpose::Ghosts, level: |scene| scene.stray.ghost_level };
+    /// Soft patches.
+    const BLOBS: Self = Self { widening: 9.0..64.0, purpose: Purpose::Blobs, level: |scene| scene.stray.blob_level };
+}
+
+/// A spot of stray light anywhere.
+fn stray_like(scene: &Scene, model: &Blob, family: Strays, number: u64) -> Blob {
+    let mut generator = random(scene.seed, family.purpose, number);
     let at = PixelPoint {
         x_px: generator.random_range(0.0..f64::from(scene.file.width_px)),
         y_px: generator.random_range(0.0..f64::from(scene.file.height_px)),
     };
-    let widening: f64 = generator.random_range(1.0..9.0);
+    let widening: f64 = generator.random_range(family.widening);
     let shape = PixelCovariance { xx: model.shape.xx * widening, xy: model.shape.xy * widening, yy: model.shape.yy * widening };
-    let amplitude = scene.stray.ghost_level * generator.random_range(0.2..1.0);
+    let amplitude = (family.level)(scene) * generator.random_range(0.2..1.0);
     Blob { at, shape, amplitude, speckle_at: [generator.random_range(0..4096_u16).into(), generator.random_range(0..4096_u16).into()] }
 }
 

@@ -69,6 +69,8 @@ fn reduced(mut a: [f64; 2], mut b: [f64; 2]) -> ([f64; 2], [f64; 2]) {
 #[derive(Serialize)]
 struct OrderLine {
     laser: usize,
+    #[serde(skip_serializing_if = "is_first")]
+    lattice: usize,
     h: i32,
     k: i32,
     x_px: f64,
@@ -76,6 +78,11 @@ struct OrderLine {
     shape_px2: [f64; 3],
     peak: f64,
     background: f64,
+}
+
+#[expect(clippy::trivially_copy_pass_by_ref, reason = "the signature that serde calls")]
+fn is_first(lattice: &usize) -> bool {
+    *lattice == 0
 }
 
 impl Truth {
@@ -100,10 +107,11 @@ impl Truth {
 
 impl OrderLine {
     fn new(truth: &OrderTruth) -> Self {
-        let Order { laser, h, k, at, shape, .. } = truth.order;
+        let Order { laser, lattice, h, k, at, shape, .. } = truth.order;
         let round = |value: f64, digits: f64| (value * digits).round() / digits;
         Self {
             laser,
+            lattice,
             h,
             k,
             x_px: round(at.x_px, 1e5),

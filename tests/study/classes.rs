@@ -6,12 +6,12 @@ use rand_chacha::ChaCha8Rng;
 use spotrule::{
     bench::Mode,
     frames::Side,
-    synth::{Dots, FileKind, Lattice, Opening, Scene, SensorColour, Speckle, Stated},
+    synth::{Dots, FileKind, Lattice, Opening, Scene, SecondLobe, SensorColour, Speckle, Stated},
 };
 use std::f64::consts::PI;
 
 /// Name and meaning of each class.
-pub(crate) const CLASSES: [(&str, &str); 15] = [
+pub(crate) const CLASSES: [(&str, &str); 17] = [
     ("line", "line grating"),
     ("square", "square mesh"),
     ("hexagonal", "hexagonal film"),
@@ -21,12 +21,14 @@ pub(crate) const CLASSES: [(&str, &str); 15] = [
     ("slanted", "camera 20° to 35° off, lens distortion"),
     ("tilted", "screen tilted by 5° to 12°"),
     ("clipped", "heavy clipping, strong speckle"),
-    ("ghosts", "ghosts, specks, hot pixels"),
+    ("ghosts", "ghosts, soft patches, glints, specks, hot pixels"),
     ("dark", "underexposed, JPEG quality 70"),
     ("wide", "orders up to 45°, sample turned"),
     ("bare", "no target, wide angles"),
     ("deep", "16-bit linear, mono"),
     ("marked", "dots in the photo of the pattern"),
+    ("hole", "zero order in a hole of the screen"),
+    ("lobes", "laser in two modes: every spot a pair"),
 ];
 
 /// Share of the demo's size, so that a study takes minutes.
@@ -139,6 +141,7 @@ fn particular(scene: &mut Scene, draw: &mut Draw, class: &str) {
         }
         "ghosts" => {
             scene.stray.ghosts = draw.0.random_range(3..10);
+            (scene.stray.blobs, scene.stray.glints) = (draw.0.random_range(1..4), draw.0.random_range(1..4));
             (scene.stray.hot_pixels, scene.stray.specks) = (20, 20);
         }
         "dark" => {
@@ -152,6 +155,11 @@ fn particular(scene: &mut Scene, draw: &mut Draw, class: &str) {
             scene.sensor.colour = SensorColour::Mono;
         }
         "marked" => scene.print.dots = Dots::InPattern,
+        "hole" => (scene.screen.hole_radius_m, scene.sample.zero_order_factor) = (0.003, 0.0),
+        "lobes" => {
+            let apart_rad = [draw.signed(5e-4, 1.2e-3), draw.signed(5e-4, 1.2e-3)];
+            scene.beam.second_lobe = Some(SecondLobe { apart_rad, share: draw.between(0.2, 0.5) });
+        }
         _ => {}
     }
     if class == "marked" {
