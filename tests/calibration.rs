@@ -503,7 +503,7 @@ fn a_bench_is_calibrated_and_used_on_the_command_line() {
     let (code, _, errors) = spotrule(folder.path(), &["measure", "reference.jpg", "--bench", "bench-calibrated.toml"]);
     assert!(code == Some(2) && errors.contains("count twice"), "{errors}");
     let text = std::fs::read_to_string(at("bench-calibrated.toml")).unwrap();
-    assert!(text.contains(&sha256(&bench.reference)) && text.contains("5.00000(50)") || text.contains("5.0000(5)"), "{text}");
+    assert!(text.contains(&sha256_hex(&bench.reference)) && text.contains("5.00000(50)") || text.contains("5.0000(5)"), "{text}");
     std::fs::write(at("bench-calibrated.toml"), text.replacen("u = 0.", "u = 0.0", 1)).unwrap();
     let (code, out, errors) = spotrule(folder.path(), &measure);
     assert!(code == Some(2) && errors.contains("was changed after it was written"), "{errors}");

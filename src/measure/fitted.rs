@@ -34,14 +34,21 @@ pub(super) fn fitted<'a>(inputs: &'a Inputs<'a>, bench: &Bench) -> Result<Fitted
     let wavelengths_m = assemble::wavelengths_in_air(bench)?;
     notes.extend(statement::capture_notes(&seen, bench, &wavelengths_m)?);
     let cameras = cameras::cameras(&seen, bench, &targets)?;
-    let (ordered, fit) = numbered(&seen, bench, &cameras, &wavelengths_m, Stiffness::Usual)
-        .or_else(|refusal| numbered(&seen, bench, &cameras, &wavelengths_m, Stiffness::Stiff).map_err(|_| refusal))?;
+    let (ordered, fit) = numbered(&seen, bench, &cameras, &wavelengths_m, Stiffness::Usual).or_else(|refusal| {
+        match seen.patterns.iter().all(|pattern| pattern.spots.spots.len() <= FEW_SPOTS) {
+            true => numbered(&seen, bench, &cameras, &wavelengths_m, Stiffness::Stiff).map_err(|_| refusal),
+            false => Err(refusal),
+        }
+    })?;
     notes.extend(statement::numbering_notes(&ordered));
     notes.extend(strain::strained_statements(bench, &fit));
     notes.extend(strain::strained_calibration(bench, &fit));
     notes.extend(strain::shifted_pattern(&fit));
     Ok(Fitted { inputs, seen, ordered, fit, notes })
 }
+
+/// So many spots show their lattice under any mapping; fewer are given a second try.
+const FEW_SPOTS: usize = 60;
 
 /// Orders for all spots, and the joint problem solved with them.
 fn numbered(

@@ -53,18 +53,25 @@ pub(super) fn order_spots(
     let mut next = 0;
     while let Some(&zero) = hypotheses.get(next) {
         next += 1;
-        let free = order_about(spots, rough, zero, Zero::Open, roughness, on_screen);
-        let proposed = free.as_ref().ok().and_then(|free| Some((free.rough.pixel(free.indexed.zero)?, free.indexed.evidence)));
+        let free = match order_about(spots, rough, zero, Zero::Open, roughness, on_screen) {
+            Ok(free) => free,
+            // Where no lattice is seen with the zero order open, none is with it here.
+            Err(error) => {
+                refusal = refusal.or(Some(error));
+                continue;
+            }
+        };
+        let proposed = free.rough.pixel(free.indexed.zero).map(|place| (place, free.indexed.evidence));
         let agrees = proposed.is_some_and(|(place, _)| place.distance_px(zero) < SAME_PLACE_PX);
         if agrees && proposed.is_some_and(|(_, e)| e.zero_lead > SURE_ZERO && e.log_evidence > SURE_EVIDENCE) {
-            return free;
+            return Ok(free);
         }
         if let Some((place, _)) = proposed.filter(|_| hypotheses.len() < MOST_HYPOTHESES)
             && hypotheses.iter().all(|known| known.distance_px(place) >= SAME_PLACE_PX)
         {
             hypotheses.insert(next, place);
         }
-        match if agrees { free } else { order_about(spots, rough, zero, Zero::Here, roughness, on_screen) } {
+        match if agrees { Ok(free) } else { order_about(spots, rough, zero, Zero::Here, roughness, on_screen) } {
             Ok(ordered) => {
                 let evidence = ordered.indexed.evidence;
                 let total = evidence.log_evidence + evidence.zero_score.clamp(-ZERO_SAY, ZERO_SAY);
